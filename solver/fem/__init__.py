@@ -1,0 +1,1 @@
+"""Finite elements: reference shapes, volume and boundary terms, linear algebra."""

@@ -1,0 +1,1 @@
+"""Surfaces and the tetrahedra that fill them."""

@@ -1,0 +1,1 @@
+"""The heat problem put together from its terms and solved."""
