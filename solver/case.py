@@ -245,7 +245,7 @@ def _read_convection(entry: Entry) -> Convection:
     for key in CORRELATION_NEEDS.get(name, ()):
         entry[key]
     fluid = entry["fluid"].text() if "fluid" in entry else "air"
-    return Convection(ambient, correlation=name, fluid=fluid, **lengths)  # type: ignore[arg-type]
+    return Convection(ambient, correlation=name, fluid=fluid, **lengths)
 
 
 def _read_radiation(entry: Entry) -> Radiation:

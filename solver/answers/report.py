@@ -1,0 +1,196 @@
+"""What is said about a solved field: each tag's and part's temperatures and watts, and the balance."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+
+from ..fem.mesh import CELL_EDGES, Mesh, smallest_dihedral
+from ..fem.reference import shape_functions
+from ..fem.volume import cell_means, gradients_at
+from ..materials import Material
+from ..physics.conduction import conductivity_tensor
+from ..physics.laws import Linear
+from ..physics.problem import CONVECTION, RADIATION, SOURCE, Patch, Problem, held_nodes
+from ..physics.steady import Solution, heat_through
+from ..result import FORMAT, Field, Summary
+
+HELD = "held"
+
+
+def summary(problem: Problem, solution: Solution) -> Summary:
+    """``summary.json`` but for the seconds of the stages that are not the solver's."""
+    mesh, temperature = problem.mesh, solution.temperature
+    entering = heat_by_term(problem, solution)
+    released = problem.heat_density * np.bincount(mesh.cell_part, problem.shape.volume, len(problem.case.parts))
+    parts = [_part_report(problem, temperature, index, heat) for index, heat in enumerate(released.tolist())]
+    tags = [
+        _tag_report(problem, temperature, patch, split)
+        for patch, split in zip(problem.patches, entering, strict=True)
+        if patch is not problem.patches[-1] or len(patch.facets)
+    ]
+    return {
+        "format": FORMAT,
+        "title": problem.case.title,
+        "state": "solved",
+        "hottest": _extreme(problem, temperature, int(temperature.argmax())),
+        "coldest": _extreme(problem, temperature, int(temperature.argmin())),
+        "tags": tags,
+        "parts": parts,
+        "contacts": [],
+        "balance": balance([*(heat for split in entering for heat in split.values()), *released.tolist()]),
+        "error_estimate": None,
+        "mesh": {
+            "nodes": len(mesh.nodes),
+            "cells": len(mesh.cells),
+            "order": mesh.order,
+            "smallest_dihedral_degrees": smallest_dihedral(mesh),
+        },
+        "solver": {
+            "method": solution.method,
+            "steps": solution.steps,
+            "iterations": solution.iterations,
+            "relative_residual": solution.relative_residual,
+        },
+        "warnings": warnings(problem),
+    }
+
+
+def heat_by_term(problem: Problem, solution: Solution) -> list[dict[str, float]]:
+    """W that enters each patch by each of its terms; what enters at held nodes is their consistent reaction."""
+    nodes, _, shares = held_nodes(problem)
+    reactions = solution.reaction[nodes] @ shares
+    entering = heat_through(problem, solution.temperature)
+    for patch, split, reaction in zip(problem.patches, entering, reactions.tolist(), strict=True):
+        if patch.held is not None:
+            split[HELD] = reaction
+    return entering
+
+
+def balance(heats: list[float]) -> dict[str, float]:
+    """The sums of all heat that enters and all that leaves (W), and their gap as a share of what enters."""
+    entering = sum(heat for heat in heats if heat > 0)
+    leaving = sum(heat for heat in heats if heat < 0)
+    gap = abs(entering + leaving) / entering if entering > 0 else abs(leaving)
+    return {"in": entering, "out": leaving, "relative_gap": gap}
+
+
+def _extreme(problem: Problem, temperature: np.ndarray, node: int) -> dict[str, Any]:
+    cell = np.flatnonzero((problem.mesh.cells == node).any(axis=1))[0]
+    return {
+        "temperature": float(temperature[node]),
+        "at": problem.mesh.nodes[node].tolist(),
+        "part": problem.case.parts[problem.mesh.cell_part[cell]].name,
+    }
+
+
+def _tag_report(problem: Problem, temperature: np.ndarray, patch: Patch, split: dict[str, float]) -> dict[str, Any]:
+    points = patch.points
+    on_faces = temperature[problem.mesh.boundary[patch.facets]]
+    empty = not len(patch.facets)
+    return {
+        "name": patch.name,
+        "area": patch.area,
+        "mean": None if empty else float(points.weight @ (points.shape @ temperature) / patch.area),
+        "min": None if empty else float(on_faces.min()),
+        "max": None if empty else float(on_faces.max()),
+        "heat": sum(split.values()),
+        "film": _mean_film(patch),
+        "split": {kind: split.get(kind, 0.0) for kind in (CONVECTION, RADIATION, SOURCE, HELD)},
+    }
+
+
+def _mean_film(patch: Patch) -> float | None:
+    law = patch.laws.get(CONVECTION)
+    return law.coefficient if isinstance(law, Linear) else None
+
+
+def _part_report(problem: Problem, temperature: np.ndarray, index: int, heat: float) -> dict[str, Any]:
+    mesh, part = problem.mesh, problem.case.parts[index]
+    mine = mesh.cell_part == index
+    volumes = problem.shape.volume[mine]
+    volume = float(volumes.sum())
+    inside = temperature[np.unique(mesh.cells[mine])]
+    surface = sum(
+        float(patch.points.weight[mesh.boundary_part[patch.points.facet] == index].sum()) for patch in problem.patches
+    )
+    density = part.material.density
+    return {
+        "name": part.name,
+        "material": part.material.name,
+        "volume": volume,
+        "area": surface,
+        "mass": None if density is None else density * volume,
+        "mean": float(volumes @ cell_means(mesh, temperature)[mine] / volume),
+        "min": float(inside.min()),
+        "max": float(inside.max()),
+        "heat": heat,
+    }
+
+
+def warnings(problem: Problem) -> list[str]:
+    """What a designer should know though the case was solved, a sentence each."""
+    _, _, shares = held_nodes(problem)
+    held = [index for index, patch in enumerate(problem.patches) if patch.held is not None]
+    found = []
+    for index, first in enumerate(held):
+        for second in held[index + 1 :]:
+            one, other = problem.patches[first], problem.patches[second]
+            if one.held != other.held and ((shares[:, first] > 0) & (shares[:, second] > 0)).any():
+                found.append(
+                    f"The tags '{one.name}' and '{other.name}' hold different temperatures and meet: "
+                    "the mean holds where they do."
+                )
+    return found
+
+
+def field(problem: Problem, solution: Solution) -> Field:
+    """``field.npz``: the temperatures on their mesh, and the heat flux at cells and nodes."""
+    mesh = problem.mesh
+    at_cells, at_nodes = heat_flux(problem, solution.temperature)
+    return Field(
+        nodes=mesh.nodes,
+        cells=mesh.cells,
+        cell_part=mesh.cell_part,
+        temperature=solution.temperature,
+        boundary=mesh.boundary,
+        boundary_tag=mesh.boundary_tag,
+        boundary_part=mesh.boundary_part,
+        boundary_face=mesh.boundary_face,
+        heat_flux=at_nodes,
+        cell_heat_flux=at_cells,
+    )
+
+
+def heat_flux(problem: Problem, temperature: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """(M, 3) W/m2 at the middle of each cell, and (N, 3) at the nodes: the volume-weighted mean of the cells there."""
+    mesh, shape = problem.mesh, problem.shape
+    materials = [part.material for part in problem.case.parts]
+    middle = np.full((1, 4), 0.25)
+    in_middle = temperature[mesh.cells] @ shape_functions(middle, mesh.order)[0]
+    at_cells = _fourier(mesh, materials, gradients_at(mesh, shape, temperature, middle)[0], in_middle)
+    at_nodes, weight = np.zeros_like(mesh.nodes), np.zeros(len(mesh.nodes))
+    for local, point in enumerate(_local_nodes(mesh.order)):
+        nodes = mesh.cells[:, local]
+        gradient = gradients_at(mesh, shape, temperature, point[None])[0]
+        flux = shape.volume[:, None] * _fourier(mesh, materials, gradient, temperature[nodes])
+        weight += np.bincount(nodes, shape.volume, len(weight))
+        at_nodes += np.stack([np.bincount(nodes, along, len(weight)) for along in flux.T], axis=1)
+    return at_cells, at_nodes / weight[:, None]
+
+
+def _local_nodes(order: int) -> np.ndarray:
+    """(n, 4) barycentric coordinates of an element's own nodes."""
+    corners = np.eye(4)
+    return corners if order == 1 else np.concatenate([corners, corners[CELL_EDGES].mean(axis=1)])
+
+
+def _fourier(mesh: Mesh, materials: list[Material], gradient: np.ndarray, temperature: np.ndarray) -> np.ndarray:
+    """(M, 3) W/m2: -K grad T of each cell's own material."""
+    flux = np.empty_like(gradient)
+    for index, material in enumerate(materials):
+        mine = mesh.cell_part == index
+        tensor = conductivity_tensor(material, temperature[mine])
+        flux[mine] = -np.einsum("mij,mj->mi", tensor, gradient[mine])
+    return flux

@@ -1,0 +1,114 @@
+"""The command line: ``fluxface solve`` and ``fluxface check``."""
+
+from __future__ import annotations
+
+import argparse
+import json
+import sys
+from collections.abc import Callable, Sequence
+from pathlib import Path
+
+from .case import read_case
+from .errors import Trouble
+from .result import Summary, write_result
+
+BAR_LENGTH = 30
+ZERO_CELSIUS = 273.15
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """The exit code; on failure the last line of stderr is JSON, as the contract gives it."""
+    options = _parser().parse_args(arguments)
+    try:
+        options.run(options)
+    except Trouble as trouble:
+        return _failed(trouble)
+    except MemoryError:
+        return _failed(Trouble("limits", "There is not enough memory for this case.", "Choose a larger size."))
+    return 0
+
+
+def _failed(trouble: Trouble) -> int:
+    print(trouble.as_json(), file=sys.stderr)
+    return trouble.exit_code
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(prog="fluxface", description="How hot a part gets.")
+    commands = parser.add_subparsers(required=True, metavar="COMMAND")
+    solving = commands.add_parser("solve", help="solve a case folder and write its result folder")
+    solving.add_argument("case", type=Path, metavar="CASE", help="the case folder")
+    solving.add_argument("--out", type=Path, metavar="RESULT", help="the result folder (default: CASE/result)")
+    solving.add_argument("--progress", choices=PROGRESS, default="bar", help="how progress is told on stdout")
+    solving.set_defaults(run=_solve)
+    checking = commands.add_parser("check", help="check the geometry and inputs of a case folder, without solving")
+    checking.add_argument("case", type=Path, metavar="CASE", help="the case folder")
+    checking.add_argument("--json", action="store_true", help="tell the measures as JSON")
+    checking.set_defaults(run=_check)
+    return parser
+
+
+def _solve(options: argparse.Namespace) -> None:
+    case = read_case(options.case)
+    # What solves is slow to import; a malformed case is told at once.
+    from . import pipeline
+
+    solved = pipeline.solve(case, PROGRESS[options.progress])
+    out = options.out or options.case / "result"
+    try:
+        write_result(solved.summary, solved.field, out)
+    except OSError as error:
+        raise Trouble(
+            "limits", f"The result cannot be written to {out}: {error.strerror}.", "Free some space or choose a place."
+        ) from error
+    PROGRESS[options.progress]("write", 1.0, f"result in {out}")
+    if options.progress == "bar":
+        print(_told(solved.summary))
+
+
+def _check(options: argparse.Namespace) -> None:
+    case = read_case(options.case)
+    from . import pipeline
+
+    measures = pipeline.checked_summary(case, pipeline.check(case))
+    if options.json:
+        print(json.dumps({"state": "sound", **measures}))
+        return
+    for part in measures["parts"]:
+        size = " x ".join(f"{1e3 * extent:.4g}" for extent in part["size"])
+        print(f"{part['name']}: {size} mm, {1e6 * part['volume']:.4g} cm3, {1e4 * part['area']:.4g} cm2")
+    for tag in measures["tags"]:
+        print(f"  {tag['name']}: {1e4 * tag['area']:.4g} cm2")
+    print("The case is sound.")
+
+
+def _told(summary: Summary) -> str:
+    """The result in a few lines, in degrees Celsius and watts."""
+    lines = [""]
+    for end in ("hottest", "coldest"):
+        lines.append(f"{end:8} {summary[end]['temperature'] - ZERO_CELSIUS:8.2f} °C   on '{summary[end]['part']}'")
+    lines.append(f"\n{'tag':20} {'cm2':>9} {'mean °C':>9} {'min °C':>9} {'max °C':>9} {'W in':>10}")
+    for tag in summary["tags"]:
+        degrees = [tag[key] - ZERO_CELSIUS if tag[key] is not None else float("nan") for key in ("mean", "min", "max")]
+        shown = " ".join(f"{degree:9.2f}" for degree in degrees)
+        lines.append(f"{tag['name'][:20]:20} {1e4 * tag['area']:9.3f} {shown} {tag['heat']:10.4f}")
+    balance = summary["balance"]
+    lines.append(f"\nin {balance['in']:.4f} W, out {-balance['out']:.4f} W, gap {balance['relative_gap']:.1e}")
+    lines += [f"Note: {warning}" for warning in summary["warnings"]]
+    return "\n".join(lines)
+
+
+def _bar(stage: str, fraction: float, text: str) -> None:
+    filled = round(BAR_LENGTH * fraction)
+    print(f"{stage:9} [{'#' * filled}{'.' * (BAR_LENGTH - filled)}] {text}", flush=True)
+
+
+def _json(stage: str, fraction: float, text: str) -> None:
+    print(json.dumps({"stage": stage, "fraction": fraction, "text": text}), flush=True)
+
+
+def _none(stage: str, fraction: float, text: str) -> None:
+    pass
+
+
+PROGRESS: dict[str, Callable[[str, float, str], None]] = {"bar": _bar, "json": _json, "none": _none}

@@ -1,0 +1,73 @@
+"""Boundary terms of the weak form: surface integrals over triangles by quadrature in the parent triangle.
+
+A set of quadrature points holds the rows of shape functions as one sparse matrix S (P, N). With the weights w, the
+surface Jacobian in them, everything else follows: the load of a flux q is S' (w q), the matrix of a film is
+S' diag(w h) S, and the temperature at the points is S T. Nodes off the faces have no column in S: exactly zero.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import csr_array, diags_array, vstack
+
+from .reference import quadrature, shape_functions, shape_gradients
+
+
+@dataclass(frozen=True)
+class SurfacePoints:
+    """facet: (P,) triangle of each point. weight: (P,) m2. shape: (P, N) shape functions of the triangle's nodes."""
+
+    facet: np.ndarray
+    weight: np.ndarray
+    shape: csr_array
+
+    @property
+    def area(self) -> float:
+        return float(self.weight.sum())
+
+
+def surface_jacobian(corners: np.ndarray, points: np.ndarray) -> np.ndarray:
+    """(B, P) |dx/dxi x dx/deta| of the map from the parent triangle, m2; corners (B, 3, 3), points (P, 3)."""
+    tangents = np.einsum("pai,bak->bpik", shape_gradients(points, 1), corners)
+    return np.linalg.norm(np.cross(tangents[:, :, 0], tangents[:, :, 1]), axis=-1)
+
+
+def points_at(
+    boundary: np.ndarray, facet: np.ndarray, barycentric: np.ndarray, weight: np.ndarray, size: int
+) -> SurfacePoints:
+    """Points given one by one: facet (P,) into boundary (B, 3 or 6), barycentric (P, 3), weight (P,) m2."""
+    values = shape_functions(barycentric, 1 if boundary.shape[1] == 3 else 2)
+    starts = np.arange(len(facet) + 1) * boundary.shape[1]
+    return SurfacePoints(
+        facet, weight, csr_array((values.ravel(), boundary[facet].ravel(), starts), (len(facet), size))
+    )
+
+
+def face_points(nodes: np.ndarray, boundary: np.ndarray, facets: np.ndarray, degree: int) -> SurfacePoints:
+    """A rule of ``degree`` on each of the triangles ``facets`` (K,) of boundary (B, 3 or 6); nodes (N, 3) m."""
+    points, weights = quadrature(2, degree)
+    # The parent triangle has area 1/2, and the weights sum to 1.
+    weight = 0.5 * weights * surface_jacobian(nodes[boundary[facets, :3]], points)
+    barycentric = np.tile(points, (len(facets), 1))
+    return points_at(boundary, np.repeat(facets, len(points)), barycentric, weight.ravel(), len(nodes))
+
+
+def both(first: SurfacePoints, second: SurfacePoints) -> SurfacePoints:
+    """The points of two sets as one."""
+    return SurfacePoints(
+        np.concatenate([first.facet, second.facet]),
+        np.concatenate([first.weight, second.weight]),
+        csr_array(vstack([first.shape, second.shape])),
+    )
+
+
+def flux_load(points: SurfacePoints, flux: np.ndarray | float) -> np.ndarray:
+    """(N,) W: the integral of N_a times flux, (P,) or uniform, W/m2."""
+    return points.shape.T @ (points.weight * flux)
+
+
+def film_matrix(points: SurfacePoints, coefficient: np.ndarray | float) -> csr_array:
+    """(N, N) W/K: the integral of N_a N_b times a coefficient, (P,) or uniform, W/(m2 K)."""
+    return csr_array(points.shape.T @ diags_array(points.weight * coefficient) @ points.shape)

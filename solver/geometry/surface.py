@@ -1,0 +1,148 @@
+"""Closed triangulated surfaces: measures, welding, and whether they bound a solid."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+from scipy.spatial import cKDTree
+
+from ..case import Surface
+from ..errors import Trouble
+
+# Vertices nearer than this share of the part's diagonal are one: far below any modelled feature, far above the
+# rounding of single-precision coordinates. Common practice, no source.
+WELD_TOLERANCE = 1e-6
+
+
+def triangle_corners(surface: Surface) -> np.ndarray:
+    """(F, 3, 3) corner positions, m."""
+    return surface.vertices[surface.triangles]
+
+
+def area_vectors(corners: np.ndarray) -> np.ndarray:
+    """(F, 3) m2: along each triangle's normal, as long as its area; corners (F, 3, 3)."""
+    return 0.5 * np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
+
+
+def areas(corners: np.ndarray) -> np.ndarray:
+    """(F,) m2."""
+    return np.linalg.norm(area_vectors(corners), axis=1)
+
+
+def enclosed_volume(corners: np.ndarray) -> float:
+    """m3 within outward-oriented triangles (F, 3, 3), by the divergence theorem."""
+    local = corners - corners.reshape(-1, 3).mean(axis=0)
+    return float(np.einsum("fi,fi->", local[:, 0], np.cross(local[:, 1], local[:, 2])) / 6.0)
+
+
+def diagonal(vertices: np.ndarray) -> float:
+    """m, of the bounding box."""
+    return float(np.linalg.norm(np.ptp(vertices, axis=0)))
+
+
+def winding_numbers(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
+    """(P,) how often the triangles (F, 3, 3) wind about each point (P, 3): 1 inside a solid, 0 outside or in a cavity.
+
+    Van Oosterom & Strackee, IEEE Trans. Biomed. Eng. 30 (1983) 125: the solid angle of a plane triangle.
+    """
+    to = corners[None] - points[:, None, None]
+    a, b, c = to[:, :, 0], to[:, :, 1], to[:, :, 2]
+    la, lb, lc = (np.linalg.norm(side, axis=-1) for side in (a, b, c))
+    numerator = np.einsum("pfi,pfi->pf", a, np.cross(b, c))
+    dot = [np.einsum("pfi,pfi->pf", u, v) for u, v in ((a, b), (b, c), (c, a))]
+    denominator = la * lb * lc + dot[0] * lc + dot[1] * la + dot[2] * lb
+    return np.arctan2(numerator, denominator).sum(axis=1) / (2.0 * np.pi)
+
+
+def one_part(surface: Surface, part: int) -> Surface:
+    """The triangles of one part, with only the vertices that they use."""
+    mine = surface.part == part
+    used, triangles = np.unique(surface.triangles[mine], return_inverse=True)
+    return Surface(
+        vertices=surface.vertices[used],
+        triangles=triangles.reshape(-1, 3).astype(np.int32),
+        part=surface.part[mine],
+        tag=surface.tag[mine],
+        face=surface.face[mine],
+    )
+
+
+def weld(surface: Surface) -> Surface:
+    """Vertices within WELD_TOLERANCE made one; triangles that collapse by it are dropped."""
+    tolerance = WELD_TOLERANCE * diagonal(surface.vertices)
+    near = cKDTree(surface.vertices).query_pairs(tolerance, output_type="ndarray")
+    if len(near):
+        count = len(surface.vertices)
+        graph = coo_array((np.ones(len(near), bool), (near[:, 0], near[:, 1])), shape=(count, count))
+        _, group = connected_components(graph, directed=False)
+        _, first = np.unique(group, return_index=True)
+        vertices, triangles = surface.vertices[first], group[surface.triangles].astype(np.int32)
+    else:
+        vertices, triangles = surface.vertices, surface.triangles
+    a, b, c = triangles.T
+    whole = (a != b) & (b != c) & (c != a)
+    return Surface(vertices, triangles[whole], surface.part[whole], surface.tag[whole], surface.face[whole])
+
+
+def check_bounds_solid(surface: Surface, name: str) -> None:
+    """Find the triangles of one part, already welded, to bound a solid.
+
+    Raises Trouble of kind "geometry" that names the faces and the places.
+    """
+    if not len(surface.triangles):
+        raise Trouble("geometry", f"'{name}' has no faces with an area.", "Give it a body with a volume.")
+    starts, ends = surface.triangles.ravel(), np.roll(surface.triangles, -1, axis=1).ravel()
+    low, high = np.minimum(starts, ends).astype(np.int64), np.maximum(starts, ends)
+    _, edge, uses = np.unique(low * len(surface.vertices) + high, return_inverse=True, return_counts=True)
+    turns = np.bincount(edge, weights=np.where(starts < ends, 1.0, -1.0))
+    owner = np.repeat(np.arange(len(surface.triangles)), 3)
+    open_sides = (uses % 2 == 1)[edge]
+    if open_sides.any():
+        raise _edge_trouble(
+            surface,
+            owner[open_sides],
+            starts[open_sides],
+            ends[open_sides],
+            f"The surface of '{name}' is open: {np.count_nonzero(uses % 2)} edges do not have a face on both sides.",
+            "Close the holes there (select the edges and fill) and run again.",
+        )
+    flipped = (turns != 0)[edge]
+    if flipped.any():
+        raise _edge_trouble(
+            surface,
+            owner[flipped],
+            starts[flipped],
+            ends[flipped],
+            f"Some faces of '{name}' point inwards: {np.count_nonzero(turns)} edges join faces of unlike direction.",
+            "Recalculate the normals to the outside and run again.",
+        )
+    volume = enclosed_volume(triangle_corners(surface))
+    flat = 1e-12 * diagonal(surface.vertices) ** 3
+    if abs(volume) <= flat:
+        raise Trouble("geometry", f"'{name}' encloses no volume.", "Give it a thickness, or check its scale.")
+    if volume < 0:
+        raise Trouble(
+            "geometry",
+            f"The surface of '{name}' is inside out.",
+            "Recalculate the normals to the outside and run again.",
+        )
+
+
+def _edge_trouble(
+    surface: Surface, owner: np.ndarray, starts: np.ndarray, ends: np.ndarray, message: str, mend: str
+) -> Trouble:
+    middles = 0.5 * (surface.vertices[starts] + surface.vertices[ends])
+    return Trouble("geometry", message, mend, np.unique(surface.face[owner]).tolist(), middles.tolist())
+
+
+def centred(surface: Surface) -> tuple[Surface, np.ndarray, float]:
+    """The surface moved to its centre and scaled to unit diagonal; the centre (3,) m and the diagonal m.
+
+    Far from the origin, or very small, a predicate's tolerances would otherwise decide.
+    """
+    centre = 0.5 * (surface.vertices.min(axis=0) + surface.vertices.max(axis=0))
+    scale = diagonal(surface.vertices)
+    return replace(surface, vertices=(surface.vertices - centre) / scale), centre, scale

@@ -1,0 +1,124 @@
+"""The heat problem of a case on a mesh: which terms act where."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+from ..case import Case, Tag
+from ..errors import Trouble
+from ..fem.boundary import SurfacePoints, face_points
+from ..fem.mesh import Mesh
+from ..fem.volume import Geometry, geometry
+from .laws import Law, Linear, Radiating
+
+# The terms of a tag, as the result splits them.
+SOURCE, CONVECTION, RADIATION = "source", "convection", "radiation"
+
+
+@dataclass(frozen=True)
+class Patch:
+    """The exposed faces of one tag: quadrature points on them and the laws that act there, by kind.
+
+    facets: (K,) boundary triangles. held: K, or None.
+    """
+
+    name: str
+    facets: np.ndarray
+    points: SurfacePoints
+    laws: Mapping[str, Law]
+    held: float | None
+
+    @property
+    def area(self) -> float:
+        return self.points.area
+
+
+@dataclass(frozen=True)
+class Problem:
+    """heat_density: (P,) W/m3 of each part. patches: one for each tag of the case, then the untagged faces."""
+
+    case: Case
+    mesh: Mesh
+    shape: Geometry
+    heat_density: np.ndarray
+    patches: tuple[Patch, ...]
+
+
+def put_together(case: Case, mesh: Mesh) -> Problem:
+    """Raises Trouble of kind "case" for a tag that carries terms and has no faces."""
+    shape = geometry(mesh)
+    volumes = np.bincount(mesh.cell_part, shape.volume, len(case.parts))
+    heat = np.array([part.heat for part in case.parts]) / volumes + [part.heat_density for part in case.parts]
+    tags = [*enumerate(case.tags), (-1, case.untagged)]
+    return Problem(case, mesh, shape, heat, tuple(_patch(mesh, number, tag) for number, tag in tags))
+
+
+def _patch(mesh: Mesh, number: int, tag: Tag) -> Patch:
+    facets = np.flatnonzero(mesh.boundary_tag == number)
+    points = face_points(mesh.nodes, mesh.boundary, facets, 2 * mesh.order)
+    return Patch(tag.name, facets, points, laws_of(tag, points.area), tag.temperature)
+
+
+def laws_of(tag: Tag, area: float) -> dict[str, Law]:
+    """The laws of a tag whose faces measure ``area`` (m2); a total heat is spread over just that."""
+    laws: dict[str, Law] = {}
+    if tag.heat and not area:
+        raise Trouble("case", f"The tag '{tag.name}' has a heat and no faces.", "Give it faces or remove its heat.")
+    source = tag.heat_flux + (tag.heat / area if tag.heat else 0.0)
+    if source:
+        laws[SOURCE] = Linear(source=source)
+    if tag.convection and tag.convection.coefficient is not None:
+        laws[CONVECTION] = Linear(coefficient=tag.convection.coefficient, ambient=tag.convection.ambient)
+    if tag.radiation:
+        laws[RADIATION] = Radiating(tag.radiation.emissivity, tag.radiation.ambient)
+    return laws
+
+
+def held_nodes(problem: Problem) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The nodes on faces of held temperature: (H,) numbers, (H,) K, and (H, T) each tag's share in them.
+
+    Where held tags of different temperatures meet, the mean holds there.
+    """
+    mesh = problem.mesh
+    shares = np.zeros((len(mesh.nodes), len(problem.patches)))
+    for index, patch in enumerate(problem.patches):
+        if patch.held is not None:
+            shares[np.unique(mesh.boundary[patch.facets]), index] = 1.0
+    nodes = np.flatnonzero(shares.any(axis=1))
+    shares = shares[nodes] / shares[nodes].sum(axis=1, keepdims=True)
+    held = np.array([patch.held or 0.0 for patch in problem.patches])
+    return nodes, shares @ held, shares
+
+
+def check_sheds_heat(problem: Problem) -> None:
+    """Find each connected body to have a face that fixes its temperature.
+
+    Raises Trouble of kind "adrift" that names the part otherwise.
+    """
+    mesh = problem.mesh
+    count = len(mesh.nodes)
+    starts, ends = mesh.cells[:, :1], mesh.cells[:, 1:]
+    links = np.broadcast_to(starts, ends.shape).ravel(), ends.ravel()
+    _, body = connected_components(coo_array((np.ones(ends.size, bool), links), shape=(count, count)), directed=False)
+    fixed = np.zeros(body.max() + 1, bool)
+    for patch in problem.patches:
+        if patch.held is not None or any(law.sheds for law in patch.laws.values()):
+            fixed[body[mesh.boundary[patch.facets].ravel()]] = True
+    if not fixed.all():
+        first = mesh.cells[~fixed[body[mesh.cells[:, 0]]]][0, 0]
+        part = mesh.cell_part[np.flatnonzero(mesh.cells[:, 0] == first)[0]]
+        raise adrift(problem.case.parts[part].name, mesh.nodes[first])
+
+
+def adrift(name: str, point: np.ndarray) -> Trouble:
+    return Trouble(
+        "adrift",
+        f"Nothing carries heat away from '{name}', so its temperature is undetermined.",
+        "Give some of its faces air (convection), radiation, or a held temperature.",
+        points=[point.tolist()],
+    )
