@@ -212,6 +212,15 @@ def revolved(profile: Sequence[Sequence[float]], around: int) -> Surface:
     return surface_of(surface.vertices[used], triangles.reshape(-1, 3), face[whole])
 
 
+def polar(surface: Surface) -> Surface:
+    """A surface given in (radius m, angle rad, height m), say by :func:`blocks`, bent to the sector that it describes.
+
+    Triangles on the axis collapse there; welding drops them.
+    """
+    radius, angle, height = surface.vertices.T
+    return replace(surface, vertices=np.stack([radius * np.cos(angle), radius * np.sin(angle), height], axis=1))
+
+
 def cylinder(radius: float, height: float, around: int) -> Surface:
     """A faceted cylinder on the z axis, from z = 0 upwards, its corners on the radius (m)."""
     return revolved([(0, 0), (radius, 0), (radius, height), (0, height)], around)
