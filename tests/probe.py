@@ -8,12 +8,11 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
-from scipy.spatial import cKDTree
-
 from fluxface.solver.case import Case, write_case
 from fluxface.solver.command_line import main
 from fluxface.solver.fem.reference import shape_functions
 from fluxface.solver.result import Field, Summary, read_field, read_summary
+from scipy.spatial import cKDTree
 
 ZERO_CELSIUS = 273.15  # K
 CANDIDATES = 200

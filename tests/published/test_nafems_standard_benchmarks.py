@@ -10,14 +10,13 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from fluxface.solver.case import Accuracy, Case, Convection, Part, Radiation, Tag
+from fluxface.solver.materials import Material
 from probe import ZERO_CELSIUS, solved
 from scipy.constants import Stefan_Boltzmann
 from scipy.optimize import brentq
 from series import FilmCooledStrip
 from shapes import blocks, box, facing, tagged
-
-from fluxface.solver.case import Accuracy, Case, Convection, Part, Radiation, Tag
-from fluxface.solver.materials import Material
 
 
 @pytest.mark.parametrize("order", [1, 2])
