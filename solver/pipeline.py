@@ -60,11 +60,18 @@ def _check_tags(case: Case) -> None:
 
 
 def _check_ways_out(case: Case, surfaces: list[Surface]) -> None:
-    """A part none of whose faces fixes its temperature is found before it is meshed."""
+    """Parts in contact none of whose faces fixes a temperature are found before they are meshed."""
     fixing = [_fixes_temperature(tag) for tag in (*case.tags, case.untagged)]
-    for part, surface in zip(case.parts, surfaces, strict=True):
-        if not any(fixing[tag] for tag in np.unique(surface.tag)):
-            raise adrift(part.name, surface.vertices.mean(axis=0))
+    fixed = {index for index, surface in enumerate(surfaces) if any(fixing[tag] for tag in np.unique(surface.tag))}
+    reached: set[int] = set()
+    while reached != fixed:
+        reached = set(fixed)
+        for contact in case.contacts:
+            if reached & set(contact.parts):
+                fixed |= set(contact.parts)
+    for index, part in enumerate(case.parts):
+        if index not in fixed:
+            raise adrift(part.name, surfaces[index].vertices.mean(axis=0))
 
 
 def _fixes_temperature(tag: Tag) -> bool:

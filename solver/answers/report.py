@@ -11,6 +11,7 @@ from ..fem.reference import shape_functions
 from ..fem.volume import cell_means, gradients_at
 from ..materials import Material
 from ..physics.conduction import conductivity_tensor
+from ..physics.contact import Bond, Conductance
 from ..physics.laws import Linear
 from ..physics.problem import CONVECTION, RADIATION, SOURCE, Patch, Problem, held_nodes
 from ..physics.steady import Solution, heat_through
@@ -38,7 +39,7 @@ def summary(problem: Problem, solution: Solution) -> Summary:
         "coldest": _extreme(problem, temperature, int(temperature.argmin())),
         "tags": tags,
         "parts": parts,
-        "contacts": [],
+        "contacts": [_contact_report(problem, temperature, contact) for contact in problem.contacts],
         "balance": balance([*(heat for split in entering for heat in split.values()), *released.tolist()]),
         "error_estimate": None,
         "mesh": {
@@ -129,6 +130,18 @@ def _part_report(problem: Problem, temperature: np.ndarray, index: int, heat: fl
     }
 
 
+def _contact_report(problem: Problem, temperature: np.ndarray, contact: Conductance | Bond) -> dict[str, Any]:
+    """Area, mean drop and heat, both counted from the first part to the second."""
+    joint = contact.joint
+    weight = joint.first.points.weight
+    return {
+        "parts": [problem.case.parts[side.part].name for side in (joint.first, joint.second)],
+        "area": joint.area,
+        "drop": float(weight @ (joint.jump @ temperature) / joint.area),
+        "heat": float(weight @ contact.heat_across(temperature)),
+    }
+
+
 def warnings(problem: Problem) -> list[str]:
     """What a designer should know though the case was solved, a sentence each."""
     _, _, shares = held_nodes(problem)
@@ -149,18 +162,29 @@ def field(problem: Problem, solution: Solution) -> Field:
     """``field.npz``: the temperatures on their mesh, and the heat flux at cells and nodes."""
     mesh = problem.mesh
     at_cells, at_nodes = heat_flux(problem, solution.temperature)
+    shown = ~bonded_faces(problem)
     return Field(
         nodes=mesh.nodes,
         cells=mesh.cells,
         cell_part=mesh.cell_part,
         temperature=solution.temperature,
-        boundary=mesh.boundary,
-        boundary_tag=mesh.boundary_tag,
-        boundary_part=mesh.boundary_part,
-        boundary_face=mesh.boundary_face,
+        boundary=mesh.boundary[shown],
+        boundary_tag=mesh.boundary_tag[shown],
+        boundary_part=mesh.boundary_part[shown],
+        boundary_face=mesh.boundary_face[shown],
         heat_flux=at_nodes,
         cell_heat_flux=at_cells,
     )
+
+
+def bonded_faces(problem: Problem) -> np.ndarray:
+    """(B,) whether a boundary triangle lies wholly within bonds, and so bounds nothing."""
+    bonded = np.zeros(len(problem.mesh.boundary), bool)
+    for contact in problem.contacts:
+        if isinstance(contact, Bond):
+            for side in (contact.joint.first, contact.joint.second):
+                bonded[side.points.facet] = True
+    return bonded & problem.joined
 
 
 def heat_flux(problem: Problem, temperature: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

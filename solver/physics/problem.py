@@ -11,9 +11,10 @@ from scipy.sparse.csgraph import connected_components
 
 from ..case import Case, Tag
 from ..errors import Trouble
-from ..fem.boundary import SurfacePoints, face_points
+from ..fem.boundary import SurfacePoints, both, face_points
 from ..fem.mesh import Mesh
 from ..fem.volume import Geometry, geometry
+from .contact import Bond, Conductance, Covered, crossing, joints, piece_points, wholly_covered
 from .laws import Law, Linear, Radiating
 
 # The terms of a tag, as the result splits them.
@@ -40,13 +41,18 @@ class Patch:
 
 @dataclass(frozen=True)
 class Problem:
-    """heat_density: (P,) W/m3 of each part. patches: one for each tag of the case, then the untagged faces."""
+    """heat_density: (P,) W/m3 of each part. patches: one for each tag of the case, then the untagged faces.
+
+    contacts: one for each contact of the case. joined: (B,) boundary triangles that lie wholly within contacts.
+    """
 
     case: Case
     mesh: Mesh
     shape: Geometry
     heat_density: np.ndarray
     patches: tuple[Patch, ...]
+    contacts: tuple[Conductance | Bond, ...]
+    joined: np.ndarray
 
 
 def put_together(case: Case, mesh: Mesh) -> Problem:
@@ -54,13 +60,29 @@ def put_together(case: Case, mesh: Mesh) -> Problem:
     shape = geometry(mesh)
     volumes = np.bincount(mesh.cell_part, shape.volume, len(case.parts))
     heat = np.array([part.heat for part in case.parts]) / volumes + [part.heat_density for part in case.parts]
+    met, covered = joints(case, mesh)
+    joined = wholly_covered(mesh, covered)
     tags = [*enumerate(case.tags), (-1, case.untagged)]
-    return Problem(case, mesh, shape, heat, tuple(_patch(mesh, number, tag) for number, tag in tags))
+    return Problem(
+        case=case,
+        mesh=mesh,
+        shape=shape,
+        heat_density=heat,
+        patches=tuple(_patch(mesh, number, tag, covered, joined) for number, tag in tags),
+        contacts=tuple(crossing(mesh, shape, joint, case) for joint in met),
+        joined=joined,
+    )
 
 
-def _patch(mesh: Mesh, number: int, tag: Tag) -> Patch:
-    facets = np.flatnonzero(mesh.boundary_tag == number)
+def _patch(mesh: Mesh, number: int, tag: Tag, covered: Covered, joined: np.ndarray) -> Patch:
+    exposed = (mesh.boundary_tag == number) & ~joined
+    facets = np.flatnonzero(exposed)
     points = face_points(mesh.nodes, mesh.boundary, facets, 2 * mesh.order)
+    hidden = exposed[covered.facet]
+    if hidden.any():
+        # A face partly in contact: the integral over all of it, less that over the pieces in contact.
+        pieces = piece_points(mesh, covered.facet[hidden], covered.corners[hidden], -covered.area[hidden])
+        points = both(points, pieces)
     return Patch(tag.name, facets, points, laws_of(tag, points.area), tag.temperature)
 
 
@@ -68,7 +90,11 @@ def laws_of(tag: Tag, area: float) -> dict[str, Law]:
     """The laws of a tag whose faces measure ``area`` (m2); a total heat is spread over just that."""
     laws: dict[str, Law] = {}
     if tag.heat and not area:
-        raise Trouble("case", f"The tag '{tag.name}' has a heat and no faces.", "Give it faces or remove its heat.")
+        raise Trouble(
+            "case",
+            f"The tag '{tag.name}' has a heat, and all its faces lie within contacts.",
+            "Give the heat to the part, or tag faces that are exposed.",
+        )
     source = tag.heat_flux + (tag.heat / area if tag.heat else 0.0)
     if source:
         laws[SOURCE] = Linear(source=source)
@@ -103,8 +129,12 @@ def check_sheds_heat(problem: Problem) -> None:
     mesh = problem.mesh
     count = len(mesh.nodes)
     starts, ends = mesh.cells[:, :1], mesh.cells[:, 1:]
-    links = np.broadcast_to(starts, ends.shape).ravel(), ends.ravel()
-    _, body = connected_components(coo_array((np.ones(ends.size, bool), links), shape=(count, count)), directed=False)
+    across = [contact.joint for contact in problem.contacts]
+    one = [np.broadcast_to(starts, ends.shape).ravel(), *(mesh.boundary[j.first.points.facet, 0] for j in across)]
+    other = [ends.ravel(), *(mesh.boundary[j.second.points.facet, 0] for j in across)]
+    links = np.concatenate(one), np.concatenate(other)
+    graph = coo_array((np.ones(len(links[0]), bool), links), shape=(count, count))
+    _, body = connected_components(graph, directed=False)
     fixed = np.zeros(body.max() + 1, bool)
     for patch in problem.patches:
         if patch.held is not None or any(law.sheds for law in patch.laws.values()):

@@ -23,6 +23,7 @@ from ..fem.boundary import SurfacePoints, film_matrix, flux_load
 from ..fem.linear_algebra import LinearSolver, midside_interpolation
 from ..fem.volume import heat_load
 from .conduction import TabledConduction, constant_conduction, is_constant, tabled_conduction
+from .contact import Bond, Conductance
 from .laws import Law, Linear, flux_and_slope
 from .problem import Problem, held_nodes
 
@@ -71,11 +72,11 @@ class System:
     reference: float
     matrix: csr_array
     load: np.ndarray
-    nonlinear: tuple[NonlinearSurface | TabledConduction, ...]
+    nonlinear: tuple[NonlinearSurface | TabledConduction | Bond, ...]
 
     @property
     def symmetric(self) -> bool:
-        return not any(isinstance(term, TabledConduction) for term in self.nonlinear)
+        return all(isinstance(term, NonlinearSurface) for term in self.nonlinear)
 
     def residual_and_tangent(self, rise: np.ndarray) -> tuple[list[np.ndarray], csr_array]:
         """Residual (N,) W of the linear terms and of each nonlinear one, and the tangent (N, N) W/K of all."""
@@ -89,7 +90,7 @@ def assembled(problem: Problem, reference: float) -> System:
     mesh, parts = problem.mesh, problem.case.parts
     matrix = constant_conduction(mesh, problem.shape, [part.material for part in parts])
     load = heat_load(mesh, problem.shape, problem.heat_density[mesh.cell_part])
-    nonlinear: list[NonlinearSurface | TabledConduction] = [
+    nonlinear: list[NonlinearSurface | TabledConduction | Bond] = [
         tabled_conduction(mesh, problem.shape, index, f"the conductivity of '{part.name}'", part.material)
         for index, part in enumerate(parts)
         if not is_constant(part.material)
@@ -101,6 +102,11 @@ def assembled(problem: Problem, reference: float) -> System:
                 load = load + flux_load(patch.points, law.flux(np.full(1, reference), patch.facets[:1]))
             else:
                 nonlinear.append(NonlinearSurface(f"the {kind} of '{patch.name}'", patch.points, law))
+    for contact in problem.contacts:
+        if isinstance(contact, Conductance) or contact.is_constant:
+            matrix = matrix + contact.residual_and_tangent(np.zeros(len(mesh.nodes)))[1]
+        else:
+            nonlinear.append(contact)
     return System(reference, matrix, load, tuple(nonlinear))
 
 
