@@ -79,6 +79,8 @@ def _check(options: argparse.Namespace) -> None:
         print(f"{part['name']}: {size} mm, {1e6 * part['volume']:.4g} cm3, {1e4 * part['area']:.4g} cm2")
     for tag in measures["tags"]:
         print(f"  {tag['name']}: {1e4 * tag['area']:.4g} cm2")
+    for pair in measures["touching"]:
+        print(f"  {' and '.join(pair['parts'])} touch over {1e4 * pair['area']:.4g} cm2")
     print("The case is sound.")
 
 
@@ -94,6 +96,7 @@ def _told(summary: Summary) -> str:
         lines.append(f"{tag['name'][:20]:20} {1e4 * tag['area']:9.3f} {shown} {tag['heat']:10.4f}")
     balance = summary["balance"]
     lines.append(f"\nin {balance['in']:.4f} W, out {-balance['out']:.4f} W, gap {balance['relative_gap']:.1e}")
+    lines += summary["where_heat_goes"]
     lines += [f"Note: {warning}" for warning in summary["warnings"]]
     return "\n".join(lines)
 

@@ -13,10 +13,12 @@ from .answers import report
 from .case import Case, Surface, Tag
 from .errors import Trouble
 from .fem.mesh import Mesh, joined, quadratic
+from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.surface import areas, check_bounds_solid, diagonal, enclosed_volume, one_part, triangle_corners, weld
 from .geometry.tetrahedra import fill
 from .physics import steady
-from .physics.problem import adrift, check_sheds_heat, put_together
+from .physics.film import film_law
+from .physics.problem import adrift, check_sheds_heat, faces, put_together
 from .result import Field, Summary
 
 # stage, fraction of it, text
@@ -44,7 +46,48 @@ def check(case: Case) -> list[Surface]:
         check_bounds_solid(surface, part.name)
         surfaces.append(surface)
     _check_ways_out(case, surfaces)
+    _check_apart(case, surfaces)
+    for index, tag in enumerate(case.tags):
+        if tag.convection and tag.convection.correlation and index in case.surface.tag:
+            tagged = case.surface.triangles[case.surface.tag == index]
+            film_law(tag.convection, faces(case.surface.vertices, tagged, case))
     return surfaces
+
+
+def _check_apart(case: Case, surfaces: list[Surface]) -> None:
+    """Find no two solids to run through each other."""
+    for crossing in crossing_parts(*_all_corners(surfaces)):
+        first, second = (case.parts[index].name for index in crossing.parts)
+        raise Trouble(
+            "geometry",
+            f"'{first}' and '{second}' run through each other.",
+            "Move one of them, or cut it with the other (a boolean difference does).",
+            points=crossing.points.tolist(),
+        )
+
+
+def _all_corners(surfaces: list[Surface]) -> tuple[np.ndarray, np.ndarray]:
+    """The corners (F, 3, 3) of all parts' triangles and their parts (F,)."""
+    counts = [len(surface.triangles) for surface in surfaces]
+    return np.concatenate([triangle_corners(surface) for surface in surfaces]), np.repeat(range(len(counts)), counts)
+
+
+def touching(case: Case, surfaces: list[Surface]) -> list[dict[str, Any]]:
+    """The pairs of parts that touch, found by themselves, and the area (m2) over which they do."""
+    return [
+        {"parts": [case.parts[i].name, case.parts[j].name], "area": area}
+        for i, j, area in touching_parts(*_all_corners(surfaces))
+    ]
+
+
+def _unnamed_contacts(case: Case, surfaces: list[Surface]) -> list[str]:
+    named = [{case.parts[index].name for index in contact.parts} for contact in case.contacts]
+    return [
+        f"'{pair['parts'][0]}' and '{pair['parts'][1]}' touch over {1e4 * pair['area']:.3g} cm2 "
+        "and exchange no heat there, as no contact names them."
+        for pair in touching(case, surfaces)
+        if set(pair["parts"]) not in named
+    ]
 
 
 def _check_extent(surface: Surface, name: str) -> None:
@@ -99,6 +142,7 @@ def checked_summary(case: Case, surfaces: list[Surface]) -> dict[str, Any]:
             {"name": tag.name, "area": float(area)}
             for tag, area in zip((*case.tags, case.untagged), tag_area, strict=True)
         ],
+        "touching": touching(case, surfaces),
     }
 
 
@@ -136,6 +180,7 @@ def solve(case: Case, progress: Progress = lambda stage, fraction, text: None) -
     progress("write", 0.0, "summing up")
     summary = report.summary(problem, solution)
     field = report.field(problem, solution)
+    summary["warnings"] += _unnamed_contacts(case, surfaces)
     ended = time.perf_counter()
     summary["seconds"] = {
         "mesh": meshed - began,

@@ -12,10 +12,11 @@ from ..fem.volume import cell_means, gradients_at
 from ..materials import Material
 from ..physics.conduction import conductivity_tensor
 from ..physics.contact import Bond, Conductance
-from ..physics.laws import Linear
+from ..physics.laws import Correlated, Linear
 from ..physics.problem import CONVECTION, RADIATION, SOURCE, Patch, Problem, held_nodes
 from ..physics.steady import Solution, heat_through
 from ..result import FORMAT, Field, Summary
+from .sentences import where_heat_goes
 
 HELD = "held"
 
@@ -31,6 +32,7 @@ def summary(problem: Problem, solution: Solution) -> Summary:
         for patch, split in zip(problem.patches, entering, strict=True)
         if patch is not problem.patches[-1] or len(patch.facets)
     ]
+    balanced = balance([*(heat for split in entering for heat in split.values()), *released.tolist()])
     return {
         "format": FORMAT,
         "title": problem.case.title,
@@ -40,7 +42,8 @@ def summary(problem: Problem, solution: Solution) -> Summary:
         "tags": tags,
         "parts": parts,
         "contacts": [_contact_report(problem, temperature, contact) for contact in problem.contacts],
-        "balance": balance([*(heat for split in entering for heat in split.values()), *released.tolist()]),
+        "balance": balanced,
+        "where_heat_goes": where_heat_goes(tags, parts, balanced["in"]),
         "error_estimate": None,
         "mesh": {
             "nodes": len(mesh.nodes),
@@ -54,7 +57,7 @@ def summary(problem: Problem, solution: Solution) -> Summary:
             "iterations": solution.iterations,
             "relative_residual": solution.relative_residual,
         },
-        "warnings": warnings(problem),
+        "warnings": [*warnings(problem), *_film_remarks(problem, temperature)],
     }
 
 
@@ -97,13 +100,17 @@ def _tag_report(problem: Problem, temperature: np.ndarray, patch: Patch, split: 
         "min": None if empty else float(on_faces.min()),
         "max": None if empty else float(on_faces.max()),
         "heat": sum(split.values()),
-        "film": _mean_film(patch),
+        "film": _mean_film(patch, temperature),
         "split": {kind: split.get(kind, 0.0) for kind in (CONVECTION, RADIATION, SOURCE, HELD)},
     }
 
 
-def _mean_film(patch: Patch) -> float | None:
+def _mean_film(patch: Patch, temperature: np.ndarray) -> float | None:
+    """W/(m2 K), the mean over the area; None where there is no film."""
     law = patch.laws.get(CONVECTION)
+    if isinstance(law, Correlated):
+        points = patch.points
+        return float(points.weight @ law.coefficient(points.shape @ temperature, points.facet) / patch.area)
     return law.coefficient if isinstance(law, Linear) else None
 
 
@@ -156,6 +163,16 @@ def warnings(problem: Problem) -> list[str]:
                     "the mean holds where they do."
                 )
     return found
+
+
+def _film_remarks(problem: Problem, temperature: np.ndarray) -> list[str]:
+    return [
+        f"The film of '{patch.name}': {remark}"
+        for patch in problem.patches
+        for law in patch.laws.values()
+        if isinstance(law, Correlated)
+        for remark in law.remarks(patch.points.shape @ temperature, patch.points.facet)
+    ]
 
 
 def field(problem: Problem, solution: Solution) -> Field:

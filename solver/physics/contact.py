@@ -18,6 +18,7 @@ from ..fem.mesh import CELL_FACES, Mesh
 from ..fem.reference import quadrature, shape_gradients
 from ..fem.volume import Geometry
 from ..geometry.overlap import Overlap, covered_area, default_gap, overlap
+from ..geometry.surface import area_vectors, areas
 from ..materials import Material, Table
 from .conduction import is_constant, principal_axes, principal_values
 from .laws import STEP
@@ -69,7 +70,7 @@ def joints(case: Case, mesh: Mesh) -> tuple[list[Joint], Covered]:
 
     Raises Trouble of kind "geometry" for a contact between parts that do not touch.
     """
-    found, facets, corners, areas = [], [], [], []
+    found, facets, corners, measures = [], [], [], []
     for contact in case.contacts:
         sides = [np.flatnonzero(mesh.boundary_part == part) for part in contact.parts]
         one, other = (mesh.nodes[mesh.boundary[side, :3]] for side in sides)
@@ -87,10 +88,10 @@ def joints(case: Case, mesh: Mesh) -> tuple[list[Joint], Covered]:
         found.append(_joint(mesh, contact, first, second, pieces))
         facets += [first, second]
         corners += [pieces.first_barycentric, pieces.second_barycentric]
-        areas += [pieces.area, pieces.area]
+        measures += [pieces.area, pieces.area]
     if not found:
         return [], Covered(np.zeros(0, int), np.zeros((0, 3, 3)), np.zeros(0))
-    return found, Covered(np.concatenate(facets), np.concatenate(corners), np.concatenate(areas))
+    return found, Covered(np.concatenate(facets), np.concatenate(corners), np.concatenate(measures))
 
 
 def _joint(mesh: Mesh, contact: Contact, first: np.ndarray, second: np.ndarray, pieces: Overlap) -> Joint:
@@ -103,8 +104,7 @@ def _joint(mesh: Mesh, contact: Contact, first: np.ndarray, second: np.ndarray, 
 
 def _side(mesh: Mesh, part: int, facet: np.ndarray, corners: np.ndarray, area: np.ndarray, outward: float) -> Side:
     points = piece_points(mesh, facet, corners, area)
-    triangle = mesh.nodes[mesh.boundary[points.facet, :3]]
-    normal = np.cross(triangle[:, 1] - triangle[:, 0], triangle[:, 2] - triangle[:, 0])
+    normal = area_vectors(mesh.nodes[mesh.boundary[points.facet, :3]])
     return Side(part, points, outward * normal / np.linalg.norm(normal, axis=1, keepdims=True))
 
 
@@ -118,8 +118,7 @@ def piece_points(mesh: Mesh, facet: np.ndarray, corners: np.ndarray, area: np.nd
 
 def wholly_covered(mesh: Mesh, covered: Covered) -> np.ndarray:
     """(B,) whether a boundary triangle lies in contact all over."""
-    corners = mesh.nodes[mesh.boundary[:, :3]]
-    area = 0.5 * np.linalg.norm(np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]), axis=1)
+    area = areas(mesh.nodes[mesh.boundary[:, :3]])
     return covered_area(covered.facet, covered.area, len(area)) > WHOLLY * area
 
 
@@ -254,9 +253,7 @@ def boundary_cells(mesh: Mesh) -> np.ndarray:
 
 def _area_per_volume(mesh: Mesh, shape: Geometry, side: Side, cells: np.ndarray) -> np.ndarray:
     """(P,) 1/m: the boundary triangle's area over its cell's volume."""
-    triangle = mesh.nodes[mesh.boundary[side.points.facet, :3]]
-    area = 0.5 * np.linalg.norm(np.cross(triangle[:, 1] - triangle[:, 0], triangle[:, 2] - triangle[:, 0]), axis=1)
-    return area / shape.volume[cells[side.points.facet]]
+    return areas(mesh.nodes[mesh.boundary[side.points.facet, :3]]) / shape.volume[cells[side.points.facet]]
 
 
 def _normal_slopes(

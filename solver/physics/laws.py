@@ -11,6 +11,8 @@ from typing import Protocol
 
 import numpy as np
 
+from .film import FilmLaw
+
 STEFAN_BOLTZMANN = 5.670374419e-8  # W/(m2 K4), exact in the SI of 2019 to these digits: CODATA 2018
 STEP = 1e-30
 
@@ -57,6 +59,29 @@ class Radiating:
         # Odd below zero, where only an iterate can stray: the law then still falls as the surface warms.
         fourth = np.where(temperature.real < 0, -(temperature**4), temperature**4)
         return self.emissivity * STEFAN_BOLTZMANN * (self.ambient**4 - fourth)
+
+
+@dataclass(frozen=True)
+class Correlated:
+    """A film whose coefficient follows from a correlation; place: (B,) each boundary triangle's place in the film's."""
+
+    film: FilmLaw
+    place: np.ndarray
+
+    @property
+    def sheds(self) -> bool:
+        return True
+
+    def coefficient(self, temperature: np.ndarray, facet: np.ndarray) -> np.ndarray:
+        """(P,) W/(m2 K)."""
+        return self.film.coefficient(temperature, self.place[facet])
+
+    def flux(self, temperature: np.ndarray, facet: np.ndarray) -> np.ndarray:
+        return self.coefficient(temperature, facet) * (self.film.ambient - temperature)
+
+    def remarks(self, temperature: np.ndarray, facet: np.ndarray) -> list[str]:
+        """A sentence for each number outside the correlation's range."""
+        return self.film.remarks(temperature, self.place[facet])
 
 
 def flux_and_slope(law: Law, temperature: np.ndarray, facet: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

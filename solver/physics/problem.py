@@ -14,8 +14,11 @@ from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, both, face_points
 from ..fem.mesh import Mesh
 from ..fem.volume import Geometry, geometry
+from ..geometry.surface import area_vectors
 from .contact import Bond, Conductance, Covered, crossing, joints, piece_points, wholly_covered
-from .laws import Law, Linear, Radiating
+from .film import film_law
+from .laws import Correlated, Law, Linear, Radiating
+from .patch import Patch as Faces
 
 # The terms of a tag, as the result splits them.
 SOURCE, CONVECTION, RADIATION = "source", "convection", "radiation"
@@ -68,13 +71,13 @@ def put_together(case: Case, mesh: Mesh) -> Problem:
         mesh=mesh,
         shape=shape,
         heat_density=heat,
-        patches=tuple(_patch(mesh, number, tag, covered, joined) for number, tag in tags),
+        patches=tuple(_patch(case, mesh, number, tag, covered, joined) for number, tag in tags),
         contacts=tuple(crossing(mesh, shape, joint, case) for joint in met),
         joined=joined,
     )
 
 
-def _patch(mesh: Mesh, number: int, tag: Tag, covered: Covered, joined: np.ndarray) -> Patch:
+def _patch(case: Case, mesh: Mesh, number: int, tag: Tag, covered: Covered, joined: np.ndarray) -> Patch:
     exposed = (mesh.boundary_tag == number) & ~joined
     facets = np.flatnonzero(exposed)
     points = face_points(mesh.nodes, mesh.boundary, facets, 2 * mesh.order)
@@ -83,11 +86,11 @@ def _patch(mesh: Mesh, number: int, tag: Tag, covered: Covered, joined: np.ndarr
         # A face partly in contact: the integral over all of it, less that over the pieces in contact.
         pieces = piece_points(mesh, covered.facet[hidden], covered.corners[hidden], -covered.area[hidden])
         points = both(points, pieces)
-    return Patch(tag.name, facets, points, laws_of(tag, points.area), tag.temperature)
+    return Patch(tag.name, facets, points, _laws(case, mesh, tag, facets, points.area), tag.temperature)
 
 
-def laws_of(tag: Tag, area: float) -> dict[str, Law]:
-    """The laws of a tag whose faces measure ``area`` (m2); a total heat is spread over just that."""
+def _laws(case: Case, mesh: Mesh, tag: Tag, facets: np.ndarray, area: float) -> dict[str, Law]:
+    """The laws of a tag on its exposed boundary triangles ``facets``; a total heat spreads over their ``area`` (m2)."""
     laws: dict[str, Law] = {}
     if tag.heat and not area:
         raise Trouble(
@@ -100,9 +103,21 @@ def laws_of(tag: Tag, area: float) -> dict[str, Law]:
         laws[SOURCE] = Linear(source=source)
     if tag.convection and tag.convection.coefficient is not None:
         laws[CONVECTION] = Linear(coefficient=tag.convection.coefficient, ambient=tag.convection.ambient)
-    if tag.radiation:
+    elif tag.convection and len(facets):
+        place = np.zeros(len(mesh.boundary), np.int64)
+        place[facets] = np.arange(len(facets))
+        laws[CONVECTION] = Correlated(film_law(tag.convection, faces(mesh.nodes, mesh.boundary[facets], case)), place)
+    if tag.radiation and len(facets):
         laws[RADIATION] = Radiating(tag.radiation.emissivity, tag.radiation.ambient)
     return laws
+
+
+def faces(nodes: np.ndarray, triangles: np.ndarray, case: Case) -> Faces:
+    """What a correlation may know of triangles (K, 3 or 6) over nodes (N, 3) m."""
+    corners = nodes[triangles[:, :3]]
+    vectors = area_vectors(corners)
+    areas = np.linalg.norm(vectors, axis=1)
+    return Faces(corners, vectors / areas[:, None], areas, np.array(case.gravity))
 
 
 def held_nodes(problem: Problem) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
