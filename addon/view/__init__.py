@@ -1,0 +1,52 @@
+"""How a result is seen: the result object in its colours, the legend, and the picture."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+
+import bpy
+
+from . import settings
+from .result_object import build_results, part_of, remove_result, result_of
+from .settings import draw_settings, material_of, refresh, settings_of
+
+__all__ = [
+    "clear", "draw_settings", "has_result", "part_of", "register", "show", "unregister",
+]  # fmt: skip
+
+
+def show(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], result_folder: Path) -> list[bpy.types.Object]:
+    """Show the result on its parts (in the order of the case): one result object each, replacing an older one.
+
+    A part that is being edited stays in sight, and its result waits behind the switch between the two.
+    Raises Trouble when the result cannot be read or does not fit the parts; what was shown is still shown then.
+    """
+    results = build_results(scene, parts, result_folder, material_of(scene))
+    refresh(scene)
+    settings_of(scene).showing = "RESULT" if all(part.mode == "OBJECT" for part in parts) else "PART"
+    return results
+
+
+def has_result(part: bpy.types.Object) -> bool:
+    return result_of(part) is not None
+
+
+def clear(part: bpy.types.Object) -> None:
+    """Remove the part's result object, if there is one, and bring the part back in sight."""
+    result = result_of(part)
+    if result is None:
+        return
+    scenes = part.users_scene
+    remove_result(result)
+    for scene in scenes:
+        settings.reveal(scene, part)
+        refresh(scene)
+
+
+def register() -> None:
+    settings.register()
+
+
+def unregister() -> None:
+    settings.unregister()

@@ -1,0 +1,155 @@
+"""The result object: the solved boundary of a part as a mesh of its own, child of the part."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+
+import bpy
+import numpy as np
+
+from ...solver.errors import Trouble
+from ...solver.result import Field, read_field
+from ..units import metres_per_unit
+from .material import TEMPERATURE
+from .scale import Scale
+
+MARK = "fluxface_result"
+COLOUR = "temperature_colour"
+
+# A 6-node triangle (mid-sides 01 12 20) as four, so that a temperature quadratic over it is seen as such.
+QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
+
+
+def result_of(part: bpy.types.Object) -> bpy.types.Object | None:
+    """The part's result object, or None."""
+    return next((child for child in part.children if child.get(MARK)), None)
+
+
+def part_of(object_: bpy.types.Object) -> bpy.types.Object:
+    """The part whose result ``object_`` is, or ``object_`` itself if it is no result."""
+    return object_.parent if object_.get(MARK) and object_.parent else object_
+
+
+def results_in(scene: bpy.types.Scene) -> list[bpy.types.Object]:
+    return [object_ for object_ in scene.objects if object_.get(MARK) and object_.parent]
+
+
+def build_results(
+    scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], folder: Path, material: bpy.types.Material
+) -> list[bpy.types.Object]:
+    """One result object for each part, in their order, lying exactly on it; an older one takes the new mesh.
+
+    Raises Trouble when the result cannot be read or does not fit the parts; nothing is changed then.
+    """
+    field = read_field(folder)
+    _check(field, len(parts))
+    for layer in scene.view_layers:
+        layer.update()
+    return [_build_result(scene, part, *_surface_of(field, index), material) for index, part in enumerate(parts)]
+
+
+def _check(field: Field, parts: int) -> None:
+    solved = int(field.boundary_part.max(initial=-1)) + 1
+    if solved != parts:
+        raise Trouble("case", f"The result has {solved} parts and {parts} are to be shown.", "Run again.")
+    if field.boundary.min(initial=0) < 0 or field.boundary.max(initial=-1) >= len(field.nodes):
+        raise Trouble("case", "The result's boundary names nodes that are not there.", "Run again.")
+    if not (np.isfinite(field.nodes).all() and np.isfinite(field.temperature).all()):
+        raise Trouble("case", "The result holds temperatures or places that are not numbers.", "Run again.")
+
+
+def _surface_of(field: Field, part: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The part's own boundary: places (P, 3) m, triangles (T, 3), temperature (P,) K."""
+    faces = field.boundary[field.boundary_part == part]
+    if faces.shape[1] == 6:
+        faces = faces[:, QUARTERS].reshape(-1, 3)
+    used, triangles = np.unique(faces, return_inverse=True)
+    return field.nodes[used], triangles.reshape(-1, 3), field.temperature[used]
+
+
+def _build_result(
+    scene: bpy.types.Scene,
+    part: bpy.types.Object,
+    places: np.ndarray,
+    triangles: np.ndarray,
+    temperature: np.ndarray,
+    material: bpy.types.Material,
+) -> bpy.types.Object:
+    matrix = np.array(part.matrix_world)
+    world = places / metres_per_unit(scene)
+    local = np.linalg.solve(matrix[:3, :3], (world - matrix[:3, 3]).T).T
+    if np.linalg.det(matrix[:3, :3]) < 0:  # a mirrored part turns its faces over, and these are outward in the world
+        triangles = triangles[:, ::-1]
+    mesh = mesh_of(f"{part.name} temperature", local, triangles)
+    mesh.attributes.new(TEMPERATURE, "FLOAT", "POINT").data.foreach_set("value", temperature.astype(np.float32))
+    mesh.materials.append(material)
+    result = result_of(part) or _new_result(part, mesh)
+    stale, result.data = result.data, mesh
+    _drop(stale)
+    return result
+
+
+def mesh_of(name: str, places: np.ndarray, triangles: np.ndarray) -> bpy.types.Mesh:
+    """A mesh of ``places`` (P, 3) in the host's units and ``triangles`` (T, 3)."""
+    mesh = bpy.data.meshes.new(name)
+    mesh.vertices.add(len(places))
+    mesh.vertices.foreach_set("co", places.astype(np.float32).ravel())
+    mesh.loops.add(triangles.size)
+    mesh.loops.foreach_set("vertex_index", triangles.astype(np.int32).ravel())
+    mesh.polygons.add(len(triangles))
+    mesh.polygons.foreach_set("loop_start", np.arange(0, triangles.size, 3, dtype=np.int32))
+    mesh.update(calc_edges=True)
+    return mesh
+
+
+def _new_result(part: bpy.types.Object, mesh: bpy.types.Mesh) -> bpy.types.Object:
+    """A child at the part's own place, so that it goes where the part goes and nowhere else."""
+    result = bpy.data.objects.new(mesh.name, mesh)
+    result[MARK] = True
+    part.users_collection[0].objects.link(result)
+    result.parent = part
+    result.lock_location = result.lock_rotation = result.lock_scale = (True, True, True)
+    return result
+
+
+def remove_result(result: bpy.types.Object) -> None:
+    mesh = result.data
+    bpy.data.objects.remove(result)
+    _drop(mesh)
+
+
+def _drop(mesh: bpy.types.Mesh) -> None:
+    if mesh.users == 0:
+        bpy.data.meshes.remove(mesh)
+
+
+def temperatures(result: bpy.types.Object) -> np.ndarray:
+    """(P,) kelvin at the vertices of a result object."""
+    values = np.empty(len(result.data.vertices), dtype=np.float32)
+    result.data.attributes[TEMPERATURE].data.foreach_get("value", values)
+    return values
+
+
+def places_and_triangles(result: bpy.types.Object) -> tuple[np.ndarray, np.ndarray]:
+    """World places (P, 3) in the host's units and outward triangles (T, 3) of a result object."""
+    mesh, matrix = result.data, np.array(result.matrix_world)
+    places = np.empty(3 * len(mesh.vertices), dtype=np.float32)
+    mesh.vertices.foreach_get("co", places)
+    mesh.calc_loop_triangles()
+    triangles = np.empty(3 * len(mesh.loop_triangles), dtype=np.int32)
+    mesh.loop_triangles.foreach_get("vertices", triangles)
+    world = places.reshape(-1, 3).astype(np.float64) @ matrix[:3, :3].T + matrix[:3, 3]
+    triangles = triangles.reshape(-1, 3)
+    return world, triangles if np.linalg.det(matrix[:3, :3]) > 0 else triangles[:, ::-1]
+
+
+def colour(result: bpy.types.Object, scale: Scale) -> None:
+    """Give the vertices the scale's colours, which is what Solid shading shows."""
+    mesh = result.data
+    attribute = mesh.color_attributes.get(COLOUR) or mesh.color_attributes.new(COLOUR, "FLOAT_COLOR", "POINT")
+    colours = np.ones((len(mesh.vertices), 4), dtype=np.float32)
+    colours[:, :3] = scale.colours(temperatures(result))
+    attribute.data.foreach_set("color", colours.ravel())
+    mesh.color_attributes.active_color = attribute
+    mesh.update()

@@ -1,0 +1,94 @@
+"""The scale: which temperatures the colours span, and how temperatures are written."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from .colours import ColourMap, colours_at
+
+# A part of one temperature still gets a scale: half a kelvin to either side.
+LEAST_SPAN = 1e-3
+SPAN_OF_ONE_TEMPERATURE = 1.0
+
+
+@dataclass(frozen=True)
+class Unit:
+    """symbol: as written after a number. kelvin_per_degree: K. zero: kelvin at zero degrees."""
+
+    symbol: str
+    kelvin_per_degree: float
+    zero: float
+
+    def degrees(self, kelvin: float) -> float:
+        return (kelvin - self.zero) / self.kelvin_per_degree
+
+    def kelvin(self, degrees: float) -> float:
+        return degrees * self.kelvin_per_degree + self.zero
+
+    def text(self, kelvin: float) -> str:
+        """As in ``61.3 °C``."""
+        return f"{number(self.degrees(kelvin), 1)} {self.symbol}"
+
+
+def number(value: float, decimals: int) -> str:
+    """With a true minus sign, and never minus zero."""
+    text = f"{value:.{decimals}f}"
+    return f"{0:.{decimals}f}" if float(text) == 0 else text.replace("-", "−")
+
+
+@dataclass(frozen=True)
+class Tick:
+    """fraction: place along the scale, 0..1. label: the number in the scale's unit."""
+
+    fraction: float
+    label: str
+    temperature: float
+
+
+@dataclass(frozen=True)
+class Scale:
+    """low, high: kelvin, where the colours begin and end. unit: of what is written."""
+
+    low: float
+    high: float
+    unit: Unit
+    colour_map: ColourMap
+
+    def fractions(self, temperature: np.ndarray) -> np.ndarray:
+        """Where temperatures (K, any shape) lie on the scale; 0 is low and 1 is high."""
+        return (temperature - self.low) / (self.high - self.low)
+
+    def colours(self, temperature: np.ndarray) -> np.ndarray:
+        """Linear-light colours (N, 3) of temperatures (N,) in kelvin."""
+        return colours_at(self.colour_map, self.fractions(temperature))
+
+    def ticks(self, most: int = 8) -> tuple[Tick, ...]:
+        """Round numbers of the unit within the scale, two at least and about ``most`` at most."""
+        first, last = self.unit.degrees(self.low), self.unit.degrees(self.high)
+        step = round_step((last - first) / most)
+        decimals = max(0, -math.floor(math.log10(step) + 1e-9))
+        numbers = np.arange(math.ceil(first / step - 1e-9), math.floor(last / step + 1e-9) + 1) * step
+        return tuple(
+            Tick((value - first) / (last - first), number(value, decimals), self.unit.kelvin(value))
+            for value in numbers.tolist()
+        )
+
+
+def spanning(coldest: float, hottest: float, unit: Unit, colour_map: ColourMap) -> Scale:
+    """The scale from ``coldest`` to ``hottest`` (K), widened about its middle where the two are as good as one."""
+    if hottest - coldest < LEAST_SPAN:
+        middle, half = 0.5 * (coldest + hottest), 0.5 * SPAN_OF_ONE_TEMPERATURE
+        return Scale(middle - half, middle + half, unit, colour_map)
+    return Scale(coldest, hottest, unit, colour_map)
+
+
+def round_step(least: float) -> float:
+    """The smallest of 1, 2 or 5 times a power of ten that is no less than ``least``.
+
+    P. S. Heckbert, Nice numbers for graph labels, Graphics Gems (1990), from memory.
+    """
+    power = 10.0 ** math.floor(math.log10(least))
+    return next(nice * power for nice in (1.0, 2.0, 5.0, 10.0) if nice * power >= least * (1 - 1e-9))

@@ -1,0 +1,201 @@
+"""How results are shown in a scene: colour map, range, legend, part or result; and keeping what is shown up to date."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import bpy
+from bpy.props import BoolProperty, EnumProperty, FloatProperty, PointerProperty, StringProperty
+
+from ..host import redraw
+from ..units import TEMPERATURE_UNITS
+from .colours import DEFAULT_MAP, colour_maps
+from .material import paint
+from .result_object import colour, part_of, results_in, temperatures
+from .scale import Scale, Unit, spanning
+
+TRUE_TRANSFORM = "Standard"
+
+
+def _range_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
+    # The automatic range is written into the same two numbers, and is no change of the designer's.
+    if settings.range == "LOCKED":
+        refresh(settings.id_data)
+
+
+def _refreshed(settings: ViewSettings, _context: bpy.types.Context) -> None:
+    refresh(settings.id_data)
+
+
+def _showing_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
+    apply_showing(settings.id_data)
+
+
+class ViewSettings(bpy.types.PropertyGroup):
+    """On the scene as ``fluxface_view``. Temperatures are kelvin and are drawn in the scene's unit."""
+
+    showing: EnumProperty(
+        name="Show",
+        description="What stands in the scene: the part to be worked on, or its temperatures",
+        items=(
+            ("PART", "Part", "Show the parts, to be worked on; results are hidden"),
+            ("RESULT", "Temperatures", "Show the results; the parts beneath them are hidden"),
+        ),
+        default="RESULT",
+        update=_showing_changed,
+    )
+    colour_map: EnumProperty(
+        name="Colours",
+        description="Published maps, even to the eye and safe for colour-blind eyes; the coldest is the darkest",
+        items=[(m.name, m.looks, m.name) for m in colour_maps().values() if m.kind == "sequential"],
+        default=DEFAULT_MAP,
+        update=_refreshed,
+    )
+    range: EnumProperty(
+        name="Range",
+        description="Which temperatures the colours span",
+        items=(
+            ("AUTOMATIC", "Automatic", "From the coldest to the hottest surface of all results in the scene"),
+            ("LOCKED", "Locked", "From one given temperature to another, so that runs can be compared by eye"),
+        ),
+        default="AUTOMATIC",
+        update=_refreshed,
+    )
+    low: FloatProperty(
+        name="From", description="Temperature of the first colour", subtype="TEMPERATURE", unit="TEMPERATURE",
+        min=0.0, default=293.15, update=_range_changed,
+    )  # fmt: skip
+    high: FloatProperty(
+        name="To", description="Temperature of the last colour", subtype="TEMPERATURE", unit="TEMPERATURE",
+        min=0.0, default=333.15, update=_range_changed,
+    )  # fmt: skip
+    legend: BoolProperty(
+        name="Legend", description="Draw the legend in the 3D view", default=True, update=lambda _self, _c: redraw()
+    )
+    coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
+    hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")
+    material: PointerProperty(type=bpy.types.Material, options={"HIDDEN"})
+    solid_colour: StringProperty(options={"HIDDEN"}, description="What Solid shading showed before the result")
+
+
+def settings_of(scene: bpy.types.Scene) -> ViewSettings:
+    return scene.fluxface_view
+
+
+def material_of(scene: bpy.types.Scene) -> bpy.types.Material:
+    """The one material of all results in the scene, made when there is none."""
+    settings = settings_of(scene)
+    if settings.material is None:
+        settings.material = bpy.data.materials.new("Temperature")
+    return settings.material
+
+
+def scale_of(scene: bpy.types.Scene) -> Scale:
+    """The scale that the results in the scene are shown by."""
+    settings = settings_of(scene)
+    unit = Unit(*TEMPERATURE_UNITS[scene.unit_settings.temperature_unit])
+    return spanning(settings.low, settings.high, unit, colour_maps()[settings.colour_map])
+
+
+def refresh(scene: bpy.types.Scene) -> None:
+    """Bring range, material and vertex colours in line with the settings and with the results in the scene."""
+    fields = [(result, temperatures(result)) for result in results_in(scene)]
+    fields = [(result, field) for result, field in fields if field.size]
+    if not fields:
+        return
+    settings = settings_of(scene)
+    settings.coldest = min(float(field.min()) for _, field in fields)
+    settings.hottest = max(float(field.max()) for _, field in fields)
+    if settings.range == "AUTOMATIC":
+        settings.low, settings.high = settings.coldest, settings.hottest
+    scale = scale_of(scene)
+    paint(material_of(scene), scale)
+    for result, _ in fields:
+        colour(result, scale)
+    redraw()
+
+
+def apply_showing(scene: bpy.types.Scene) -> None:
+    """Hide the parts beneath their results or the results over their parts; other objects stay as they are."""
+    showing = settings_of(scene).showing
+    for result in results_in(scene):
+        _hide(scene, result, showing == "PART")
+        _hide(scene, part_of(result), showing == "RESULT")
+    _colour_solid_views(settings_of(scene))
+
+
+def reveal(scene: bpy.types.Scene, part: bpy.types.Object) -> None:
+    _hide(scene, part, False)
+
+
+def _hide(scene: bpy.types.Scene, object_: bpy.types.Object, hidden: bool) -> None:
+    object_.hide_render = hidden
+    for layer in scene.view_layers:
+        if object_.name in layer.objects:
+            object_.hide_set(hidden, view_layer=layer)
+
+
+def _colour_solid_views(settings: ViewSettings) -> None:
+    """Solid shading takes colours from the attribute while results show, and from where it did before otherwise."""
+    for shading in _shadings():
+        if settings.showing == "RESULT" and shading.color_type != "VERTEX":
+            settings.solid_colour, shading.color_type = shading.color_type, "VERTEX"
+        elif settings.showing == "PART" and shading.color_type == "VERTEX" and settings.solid_colour:
+            shading.color_type = settings.solid_colour
+
+
+def _shadings() -> Iterator[bpy.types.View3DShading]:
+    for screen in bpy.data.screens:
+        for area in screen.areas:
+            yield from (space.shading for space in area.spaces if space.type == "VIEW_3D")
+
+
+def draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
+    """The settings as rows of ``layout``."""
+    settings = settings_of(scene)
+    layout.row().prop(settings, "showing", expand=True)
+    column = layout.column()
+    column.use_property_split, column.use_property_decorate = True, False
+    column.prop(settings, "colour_map")
+    column.row().prop(settings, "range", expand=True)
+    ends = column.column(align=True)
+    ends.enabled = settings.range == "LOCKED"
+    ends.prop(settings, "low")
+    ends.prop(settings, "high")
+    column.prop(settings, "legend")
+    if settings.range == "LOCKED" and settings.low >= settings.high:
+        layout.label(text="From is not below To, so one kelvin is shown.", icon="ERROR")
+    elif settings.range == "LOCKED" and (settings.coldest < settings.low or settings.hottest > settings.high):
+        unit = scale_of(scene).unit
+        beyond = f"{unit.text(settings.coldest)} to {unit.text(settings.hottest)}"
+        layout.label(text=f"Some surfaces lie beyond the range: {beyond}.", icon="INFO")
+    if scene.view_settings.view_transform != TRUE_TRANSFORM:
+        warning = layout.column(align=True)
+        warning.label(text=f"{scene.view_settings.view_transform} shifts the colours outside Solid.", icon="INFO")
+        warning.operator(ShowTrueColours.bl_idname)
+
+
+class ShowTrueColours(bpy.types.Operator):
+    bl_idname = "fluxface.show_true_colours"
+    bl_label = "Show True Colours"
+    bl_description = "Set the scene's view transform to Standard, so that colours are those of the legend"
+    bl_options = {"REGISTER", "UNDO"}
+
+    def execute(self, context: bpy.types.Context) -> set[str]:
+        context.scene.view_settings.view_transform = TRUE_TRANSFORM
+        context.scene.view_settings.look = "None"
+        context.scene.view_settings.exposure, context.scene.view_settings.gamma = 0.0, 1.0
+        return {"FINISHED"}
+
+
+register_classes, unregister_classes = bpy.utils.register_classes_factory((ViewSettings, ShowTrueColours))
+
+
+def register() -> None:
+    register_classes()
+    bpy.types.Scene.fluxface_view = PointerProperty(type=ViewSettings)
+
+
+def unregister() -> None:
+    del bpy.types.Scene.fluxface_view
+    unregister_classes()
