@@ -119,7 +119,10 @@ def _cylinder_crossflow(convection: Convection, faces: Patch) -> Regime:
 
 
 def _natural(convection: Convection, faces: Patch) -> Regime:
-    """Each face by its own slope; lengths measured on the faces of like slope together, or as given for all."""
+    """Each face by its own slope; lengths measured on the faces of like slope together, or as given for all.
+
+    Every face is judged as if it stood free: air that chokes between close fins is what the fin channel is for.
+    """
     if convection.length is None:
         run, breadth = _lengths_by_slope(faces)
     else:
