@@ -17,22 +17,25 @@ from .reference import quadrature, shape_functions, shape_gradients
 
 @dataclass(frozen=True)
 class Geometry:
-    """volume: (M,) m3. gradients: (M, 3, 3) rows are the gradients of the parent coordinates xi_1..3, 1/m."""
+    """volume: (M,) m3. gradients: (3, 3, M) 1/m, of parent coordinate xi_i (axis 0) along world axis k (axis 1)."""
 
     volume: np.ndarray
     gradients: np.ndarray
 
 
 def geometry(mesh: Mesh) -> Geometry:
-    corners = mesh.nodes[mesh.cells[:, :4]]
-    columns = np.swapaxes(corners[:, 1:] - corners[:, :1], 1, 2)
-    return Geometry(volume=np.linalg.det(columns) / 6.0, gradients=np.linalg.inv(columns))
+    """The affine maps of all cells: the gradients are the rows of the inverse Jacobian, by cofactors."""
+    corners = np.ascontiguousarray(mesh.nodes.T)[:, mesh.cells[:, :4]]
+    a, b, c = (corners[:, :, local] - corners[:, :, 0] for local in (1, 2, 3))
+    cofactors = np.stack([np.cross(u, v, axis=0) for u, v in ((b, c), (c, a), (a, b))])
+    jacobian = np.einsum("km,km->m", a, cofactors[0])
+    return Geometry(volume=jacobian / 6.0, gradients=cofactors / jacobian)
 
 
 def metric(shape: Geometry, conductivity: np.ndarray) -> np.ndarray:
     """(3, 3, M) W/K: V grad(xi_i) . K grad(xi_j); conductivity (M, 3, 3) W/(m K)."""
-    flux = np.einsum("mik,mkl->mil", shape.gradients, conductivity)
-    return np.einsum("mil,mjl,m->ijm", flux, shape.gradients, shape.volume, optimize=True)
+    flux = np.einsum("ikm,mkl->ilm", shape.gradients, conductivity)
+    return np.einsum("ilm,jlm->ijm", flux, shape.gradients) * shape.volume
 
 
 def conduction_blocks(order: int, metrics: np.ndarray) -> np.ndarray:
@@ -72,4 +75,4 @@ def cell_means(mesh: Mesh, nodal: np.ndarray) -> np.ndarray:
 def gradients_at(mesh: Mesh, shape: Geometry, nodal: np.ndarray, points: np.ndarray) -> np.ndarray:
     """(P, M, 3) gradient of a nodal field (N,) at barycentric points (P, 4) of every cell."""
     along = np.einsum("pai,ma->pmi", shape_gradients(points, mesh.order), nodal[mesh.cells], optimize=True)
-    return np.einsum("pmi,mij->pmj", along, shape.gradients)
+    return np.einsum("pmi,ijm->pmj", along, shape.gradients)

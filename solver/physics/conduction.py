@@ -53,7 +53,7 @@ def constant_conduction(mesh: Mesh, shape: Geometry, materials: list[Material]) 
 class TabledConduction:
     """The conduction of one part whose conductivity depends on temperature.
 
-    cells: (C, n). volume: (C,). along: (C, 3, 3) m: slope of parent coordinate j along principal axis p.
+    cells: (C, n). volume: (C,) m3. along: (3, 3, C) 1/m, slope along principal axis p (axis 0) of parent coordinate j.
     """
 
     name: str
@@ -73,7 +73,7 @@ class TabledConduction:
             values = shape_functions(point, self.order)[0]
             slopes = shape_gradients(point, self.order)[0]
             stepped = principal_values(self.material, local @ values + 1j * STEP)
-            towards = np.einsum("ai,cpi->apc", slopes, self.along)
+            towards = np.einsum("aj,pjc->apc", slopes, self.along)
             gradient = np.einsum("apc,ca->pc", towards, local)
             mass = weight * self.volume
             flux = mass * stepped.real * gradient
@@ -89,5 +89,5 @@ class TabledConduction:
 
 def tabled_conduction(mesh: Mesh, shape: Geometry, part: int, name: str, material: Material) -> TabledConduction:
     mine = mesh.cell_part == part
-    along = np.einsum("pk,cjk->cpj", principal_axes(material), shape.gradients[mine])
+    along = np.einsum("pk,jkc->pjc", principal_axes(material), shape.gradients[:, :, mine])
     return TabledConduction(name, material, mesh.order, mesh.cells[mine], shape.volume[mine], along)

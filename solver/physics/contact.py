@@ -263,9 +263,9 @@ def _normal_slopes(
     cell = cells[side.points.facet]
     position = _positions(mesh, side.points)
     origin = mesh.nodes[mesh.cells[cell, 0]]
-    parent = np.einsum("pij,pj->pi", shape.gradients[cell], position - origin)
+    parent = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], position - origin)
     barycentric = np.concatenate([1.0 - parent.sum(axis=1, keepdims=True), parent], axis=1)
-    gradients = np.einsum("pai,pij->paj", shape_gradients(barycentric, mesh.order), shape.gradients[cell])
+    gradients = np.einsum("pai,ijp->paj", shape_gradients(barycentric, mesh.order), shape.gradients[:, :, cell])
     starts = np.arange(len(cell) + 1) * mesh.cells.shape[1]
     return tuple(
         csr_array(

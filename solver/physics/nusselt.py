@@ -144,7 +144,9 @@ def cylinder_crossflow(reynolds: np.ndarray, prandtl: np.ndarray) -> np.ndarray:
 
 VERTICAL_PLATE = Formula("vertical plates", vertical_plate, "Rayleigh", (0.1, 1e12))
 INCLINED_PLATE = Formula("inclined plates", inclined_plate, "Rayleigh", (0.0, 1e13))
-LEVEL_PLATE_FREE = Formula("level plates that let the fluid rise or fall away", level_plate_free, "Rayleigh", (1e4, 1e11))
+LEVEL_PLATE_FREE = Formula(
+    "level plates that let the fluid rise or fall away", level_plate_free, "Rayleigh", (1e4, 1e11)
+)
 LEVEL_PLATE_TRAPPED = Formula("level plates that hold the fluid back", level_plate_trapped, "Rayleigh", (1e5, 1e10))
 HORIZONTAL_CYLINDER = Formula("horizontal cylinders", horizontal_cylinder, "Rayleigh", (0.0, 1e12))
 # Published for Pr of about 0.7 and more; warm air, at 0.68 to 0.7, is meant to be covered.
