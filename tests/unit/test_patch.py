@@ -16,14 +16,17 @@ from fluxface.solver import pipeline
 from fluxface.solver.case import Convection, Surface, Tag
 from fluxface.solver.fem.boundary import SurfacePoints, face_points, film_matrix, flux_load
 from fluxface.solver.fem.mesh import Mesh
-from fluxface.solver.fem.volume import assemble, conduction_blocks, geometry, heat_load, metric
+from fluxface.solver.fem.volume import geometry, heat_load
 from fluxface.solver.materials import Material
+from fluxface.solver.physics.conduction import constant_conduction
 from scipy.sparse.linalg import splu
 from shapes import box, centres_and_normals, hull, irregular_solid, moved, rotation, tagged
 
 both_orders = pytest.mark.parametrize("order", [1, 2])
 
-TENSOR = np.array([[40.0, 6.0, -3.0], [6.0, 25.0, 4.0], [-3.0, 4.0, 12.0]])  # W/(m K), invented
+AXES = rotation((1.0, 0.4, 0.1), 29.0)
+LAMINATE = Material("invented laminate", (60.0, 20.0, 5.0), axes=tuple(map(tuple, AXES)))
+TENSOR = AXES.T @ np.diag(LAMINATE.conductivity) @ AXES  # W/(m K)
 GRADIENT = np.array([310.0, -170.0, 440.0])  # K/m
 CURVATURE = np.array([[900.0, 250.0, 0.0], [250.0, -400.0, 610.0], [0.0, 610.0, 1500.0]])  # K/m2
 FILM = 35.0  # W/(m2 K)
@@ -52,8 +55,7 @@ def temperatures_with_mixed_faces(mesh: Mesh, field: Field, slope: Field, heat_d
     kind = mesh.boundary_face % 3
     size = len(mesh.nodes)
     shape = geometry(mesh)
-    tensors = np.broadcast_to(TENSOR, (len(mesh.cells), 3, 3))
-    matrix = assemble(mesh.cells, conduction_blocks(mesh.order, metric(shape, tensors)), size)
+    matrix = constant_conduction(mesh, shape, [LAMINATE])
     load = heat_load(mesh, shape, np.full(len(mesh.cells), heat_density))
 
     def points_and_flux(of_kind: int) -> tuple[SurfacePoints, np.ndarray, np.ndarray]:
@@ -105,12 +107,11 @@ def test_a_quadratic_field_is_not_held_by_linear_elements() -> None:
 LEAN = rotation((0.2, 1.0, -0.5), 63.0)
 ALONG = LEAN[:, 2]
 DROP = 900.0  # K/m along ALONG
-AXES = rotation((1.0, 0.4, 0.1), 29.0)
 HEIGHT = 0.04
 
 
 def leaning_frustum() -> Surface:
-    """Between two unlike polygons in parallel planes, its axis along ALONG: foot 0, head 1, each side a tag from 2 on."""
+    """Between unlike polygons in parallel planes, its axis along ALONG: foot 0, head 1, each side a tag from 2 on."""
     lower = [(0, 0, 0), (0.06, -0.01, 0), (0.08, 0.03, 0), (0.03, 0.07, 0), (-0.02, 0.04, 0)]
     upper = [(0.01, 0.01, HEIGHT), (0.07, 0.0, HEIGHT), (0.05, 0.05, HEIGHT)]
     solid = moved(hull(np.array(lower + upper)), turn=LEAN, shift=(0.3, -0.2, 1.1))
@@ -126,16 +127,14 @@ def leaning_frustum() -> Surface:
 def test_a_linear_field_through_the_case(order: int, upper: str) -> None:
     """Foot held, head in air or held, each side with the flux of the field through it; orthotropic, axes askew."""
     solid = leaning_frustum()
-    material = Material("invented laminate", (60.0, 20.0, 5.0), axes=tuple(map(tuple, AXES)))
-    tensor = AXES.T @ np.diag(material.conductivity) @ AXES
     foot = (solid.vertices @ ALONG).min()
 
     def field(x: np.ndarray) -> np.ndarray:
         return 400.0 - DROP * (x @ ALONG - foot)
 
-    into = centres_and_normals(solid)[1] @ tensor @ (-DROP * ALONG)
+    into = centres_and_normals(solid)[1] @ TENSOR @ (-DROP * ALONG)
     head, film = 400.0 - DROP * HEIGHT, 80.0
-    air = Convection(head + float(ALONG @ tensor @ (-DROP * ALONG)) / film, film)
+    air = Convection(head + float(ALONG @ TENSOR @ (-DROP * ALONG)) / film, film)
     head_terms = {"convection": air} if upper == "convection" else {"temperature": head}
     sides = np.argsort(solid.tag)[np.count_nonzero(solid.tag < 2) :]
     tags = [
@@ -143,10 +142,10 @@ def test_a_linear_field_through_the_case(order: int, upper: str) -> None:
         Tag("head", **head_terms),
         *(Tag(f"side {side}", heat_flux=into[side]) for side in sides),
     ]
-    case = case_of(solid, tags, material=material, order=order, size=0.015)
+    case = case_of(solid, tags, material=LAMINATE, order=order, size=0.015)
     solved = pipeline.solve(case)
     np.testing.assert_allclose(solved.field.temperature, field(solved.field.nodes), rtol=1e-9)
-    exact = tensor @ (DROP * ALONG)
+    exact = TENSOR @ (DROP * ALONG)
     for flux in (solved.field.cell_heat_flux, solved.field.heat_flux):
         np.testing.assert_allclose(flux, np.broadcast_to(exact, flux.shape), rtol=0, atol=1e-8 * np.abs(exact).max())
 
