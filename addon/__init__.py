@@ -1,1 +1,18 @@
-"""The 3D suite's side of Fluxface."""
+"""The 3D suite's side of Fluxface: what it registers, and nothing else."""
+
+from __future__ import annotations
+
+from . import jobs, operators, panels, properties, upkeep, view
+
+ROOMS = (properties, view, operators, panels, upkeep)
+
+
+def register() -> None:
+    for room in ROOMS:
+        room.register()
+
+
+def unregister() -> None:
+    jobs.stop_all()
+    for room in reversed(ROOMS):
+        room.unregister()

@@ -1,0 +1,205 @@
+"""The solver as a subprocess: started, watched without waiting, and ended with all it started."""
+
+from __future__ import annotations
+
+import atexit
+import contextlib
+import importlib.util
+import json
+import os
+import queue
+import shutil
+import signal
+import subprocess
+import sys
+import threading
+from collections import deque
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import IO
+
+from ..solver import errors
+from ..solver.errors import EXIT_CODES, Trouble
+
+# What the solver imports and the host may keep where only the host's own interpreter looks.
+LIBRARIES = ("numpy", "scipy", "tetgen", "pyamg")
+SOLVER = Path(errors.__file__).parent
+STDERR_LINES = 50
+SECONDS_TO_END = 5.0
+
+
+@dataclass(frozen=True)
+class Progress:
+    """stage: a word of the contract. fraction: 0..1 of that stage."""
+
+    stage: str
+    fraction: float
+    text: str
+
+
+@dataclass(frozen=True)
+class Ending:
+    """trouble: None = solved. cancelled: ended by us, so that there is nothing to complain of."""
+
+    trouble: Trouble | None = None
+    cancelled: bool = False
+
+
+class Job:
+    """One run of the solver's command line; every method returns at once."""
+
+    def __init__(self, command: Sequence[str], environment: dict[str, str] | None = None) -> None:
+        """Raises Trouble when the program cannot be started."""
+        self._cancelled = False
+        self._lines: queue.SimpleQueue[str] = queue.SimpleQueue()
+        self._stderr: deque[str] = deque(maxlen=STDERR_LINES)
+        self.progress = Progress("mesh", 0.0, "Starting")
+        try:
+            self._process = subprocess.Popen(
+                command, env=environment, stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=subprocess.PIPE,
+                text=True, encoding="utf-8", errors="replace", **_own_group(),
+            )  # fmt: skip
+        except OSError as error:
+            raise Trouble(
+                "limits",
+                f"The solver could not be started: {error.strerror}.",
+                "Install the add-on again from its package.",
+            ) from error
+        _live.add(self)
+        self._readers = (
+            _reader(self._process.stdout, self._lines.put),
+            _reader(self._process.stderr, self._stderr.append),
+        )
+
+    def poll(self) -> Ending | None:
+        """Take in what the solver has said since the last call; the ending once there is one."""
+        code = self._process.poll()
+        ended = code is not None and not any(reader.is_alive() for reader in self._readers)
+        while not self._lines.empty():
+            self.progress = _progress(self._lines.get()) or self.progress
+        if not ended:
+            return None
+        self._process.stdin.close()
+        _live.discard(self)
+        if self._cancelled:
+            return Ending(cancelled=True)
+        return Ending() if code == 0 else Ending(_trouble(code, self._stderr))
+
+    def cancel(self) -> None:
+        """End the solver and all it started; a second call does nothing more."""
+        self._cancelled = True
+        _kill(self._process)
+
+    def wait(self) -> None:
+        """Return when the solver has ended, or after SECONDS_TO_END."""
+        with contextlib.suppress(subprocess.TimeoutExpired):
+            self._process.wait(SECONDS_TO_END)
+
+
+# The processes that must not outlive the host; no other code reads it.
+_live: set[Job] = set()
+
+
+@atexit.register
+def stop_all() -> None:
+    """End every job that still runs."""
+    for job in list(_live):
+        job.cancel()
+        job.wait()
+        _live.discard(job)
+
+
+def solve(case: Path, result: Path) -> Job:
+    """Start the solver on a case folder.
+
+    Raises Trouble when it or one of its libraries is missing.
+    """
+    return Job(command("solve", str(case), "--out", str(result), "--progress", "json"), environment())
+
+
+def command(*arguments: str) -> list[str]:
+    """The solver's command line; -P keeps what lies in the working folder from being imported."""
+    return [sys.executable, "-P", str(Path(__file__).with_name("solver_process.py")), SOLVER.name, *arguments]
+
+
+def environment(libraries: Iterable[str] = LIBRARIES) -> dict[str, str]:
+    """The host's environment, with the folders of the solver and of its libraries where Python looks first.
+
+    Raises Trouble when a library is missing.
+    """
+    folders = [str(SOLVER.parent)]
+    for library in libraries:
+        found = importlib.util.find_spec(library)
+        if found is None or not found.origin:
+            raise Trouble(
+                "limits", f"The solver's library '{library}' is missing.", "Install the add-on again from its package."
+            )
+        folders.append(str(Path(found.origin).parent.parent))
+    inherited = os.environ.get("PYTHONPATH")
+    path = os.pathsep.join(dict.fromkeys([*folders, *([inherited] if inherited else [])]))
+    return {**os.environ, "PYTHONPATH": path, "PYTHONIOENCODING": "utf-8", "PYTHONDONTWRITEBYTECODE": "1"}
+
+
+def clear_remains(result: Path) -> None:
+    """After an end in mid-writing: put an older result back in its place and remove half-written ones."""
+    for beside in result.parent.glob(f".{result.name}-*"):
+        stale = beside / "stale"
+        if stale.exists() and not result.exists():
+            stale.rename(result)
+        shutil.rmtree(beside, ignore_errors=True)
+
+
+def _reader(stream: IO[str], take) -> threading.Thread:
+    def read() -> None:
+        for line in stream:
+            take(line.rstrip("\n"))
+        stream.close()
+
+    thread = threading.Thread(target=read, daemon=True)
+    thread.start()
+    return thread
+
+
+def _progress(line: str) -> Progress | None:
+    """A line of progress; whatever a library prints among them is none."""
+    try:
+        said = json.loads(line)
+        return Progress(str(said["stage"]), float(said["fraction"]), str(said["text"]))
+    except (ValueError, KeyError, TypeError):
+        return None
+
+
+def _trouble(code: int, stderr: Iterable[str]) -> Trouble:
+    """What the solver said on its last line; if it said nothing of the kind, that it broke off."""
+    lines = [line for line in stderr if line.strip()]
+    try:
+        said = json.loads(lines[-1])
+        where = said["where"]
+        return Trouble(said["kind"], said["message"], said["mend"], where["faces"], where["points"])
+    except (IndexError, ValueError, KeyError, TypeError):
+        pass
+    if code < 0 or code not in EXIT_CODES.values():
+        detail = f" Its last words: {lines[-1].strip()}" if lines and code > 0 else ""
+        return Trouble(
+            "limits",
+            f"The solver was stopped before it was done.{detail}",
+            "Run again; if it happens again, give a coarser mesh: memory may not suffice.",
+        )
+    return Trouble("limits", "The solver failed without saying why.", "Run again.")
+
+
+def _own_group() -> dict:
+    if sys.platform == "win32":
+        return {"creationflags": subprocess.CREATE_NEW_PROCESS_GROUP | subprocess.CREATE_NO_WINDOW}
+    return {"start_new_session": True}
+
+
+def _kill(process: subprocess.Popen) -> None:
+    if process.poll() is not None:
+        return
+    if sys.platform == "win32":
+        subprocess.run(["taskkill", "/T", "/F", "/PID", str(process.pid)], capture_output=True, check=False)
+    else:
+        with contextlib.suppress(ProcessLookupError):
+            os.killpg(process.pid, signal.SIGKILL)

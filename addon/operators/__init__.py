@@ -1,0 +1,17 @@
+"""What the designer can do: each operator calls plain functions and tells what went wrong."""
+
+from __future__ import annotations
+
+from . import contacts, materials, running, tagging
+
+ROOMS = (tagging, materials, contacts, running)
+
+
+def register() -> None:
+    for room in ROOMS:
+        room.register()
+
+
+def unregister() -> None:
+    for room in reversed(ROOMS):
+        room.unregister()

@@ -1,0 +1,132 @@
+"""Run, cancel, look at the place of a trouble, and render the picture."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+
+import bpy
+import numpy as np
+from bpy.props import StringProperty
+from mathutils import Vector
+
+from ...solver.errors import Trouble
+from .. import running, study, tags, view
+from ..units import metres_per_unit
+from .telling import TellsTrouble
+
+
+class RunSolver(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.run"
+    bl_label = "Run"
+    bl_description = "Solve for the temperatures of the part; work can go on meanwhile"
+    # The undo step is made when the result is there.
+    bl_options = {"REGISTER"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if context.window_manager.fluxface.running:
+            cls.poll_message_set("The solver is running")
+            return False
+        return True
+
+    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
+        if bpy.app.background:
+            return self.execute(context)
+        try:
+            running.watch(running.start(context))
+        except Trouble as trouble:
+            self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
+            return {"CANCELLED"}
+        return {"FINISHED"}
+
+    def act(self, context: bpy.types.Context) -> None:
+        run = running.start(context)
+        trouble = running.finish(run, running.wait(run))
+        if trouble:
+            raise trouble
+
+
+class CancelRun(bpy.types.Operator):
+    bl_idname = "fluxface.cancel"
+    bl_label = "Cancel"
+    bl_description = "Stop the solver; the result shown so far stays"
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if not context.window_manager.fluxface.running:
+            cls.poll_message_set("The solver is not running")
+            return False
+        return True
+
+    def execute(self, context: bpy.types.Context) -> set[str]:
+        context.window_manager.fluxface.cancelled = True
+        return {"FINISHED"}
+
+
+class ShowPlace(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.show_place"
+    bl_label = "Show the Place"
+    bl_description = "Put the 3D cursor at the trouble and select the faces it names"
+    bl_options = {"REGISTER", "UNDO"}
+
+    def act(self, context: bpy.types.Context) -> None:
+        members = study.parts(context)
+        left = study.outcome(context.scene, members)
+        faces, points = (np.array(json.loads(text or "[]")) for text in (left.faces, left.points))
+        if len(points):
+            context.scene.cursor.location = Vector(points[0] / metres_per_unit(context.scene))
+        named = [part for part in members if f"'{part.name}'" in left.message] or members
+        if len(faces):
+            _select(context, named[0], faces.astype(int))
+
+
+def _select(context: bpy.types.Context, part: bpy.types.Object, faces: np.ndarray) -> None:
+    """In edit mode; faces are numbered as modifiers left them, so those that the mesh does not have are left out."""
+    if context.mode != "OBJECT":
+        bpy.ops.object.mode_set(mode="OBJECT")
+    view.settings_of(context.scene).showing = "PART"
+    part.hide_set(False)
+    context.view_layer.objects.active = part
+    bpy.ops.object.mode_set(mode="EDIT")
+    context.tool_settings.mesh_select_mode = (False, False, True)
+    bpy.ops.mesh.select_all(action="DESELECT")
+    chosen = np.isin(np.arange(len(tags.read(part.data))), faces)
+    tags.select(part.data, chosen)
+
+
+class RenderPicture(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.render_picture"
+    bl_label = "Render Picture"
+    bl_description = "Render the part in its temperatures with the legend, and save it as PNG"
+
+    filepath: StringProperty(name="Picture", subtype="FILE_PATH")
+    filter_glob: StringProperty(default="*.png", options={"HIDDEN"})
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        try:
+            shown = all(view.has_result(part) for part in study.parts(context))
+        except Trouble:
+            shown = False
+        if not shown:
+            cls.poll_message_set("There is no result yet: press Run first")
+        return shown
+
+    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
+        self.filepath = self.filepath or str(_picture(context))
+        context.window_manager.fileselect_add(self)
+        return {"RUNNING_MODAL"}
+
+    def act(self, context: bpy.types.Context) -> None:
+        path = Path(bpy.path.abspath(self.filepath)) if self.filepath else _picture(context)
+        made = view.render_picture(context.scene, study.parts(context), path.with_suffix(".png"))
+        self.report({"INFO"}, f"Picture saved as {made}")
+
+
+def _picture(context: bpy.types.Context) -> Path:
+    folder = study.folder(context.scene, study.parts(context))
+    return folder.with_name(f"{folder.name}.png")
+
+
+register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace, RenderPicture))

@@ -1,0 +1,131 @@
+"""Tags and the faces they are given."""
+
+from __future__ import annotations
+
+import bpy
+import numpy as np
+from bpy.props import StringProperty
+
+from ...solver.errors import Trouble
+from .. import study, tags, upkeep, view
+from .telling import TellsTrouble
+
+
+def _meshes(context: bpy.types.Context) -> list[bpy.types.Mesh]:
+    """Those in edit mode, or else the active one."""
+    things = context.objects_in_mode_unique_data if context.mode == "EDIT_MESH" else [context.active_object]
+    return [thing.data for thing in things if thing.type == "MESH"]
+
+
+def _selections(context: bpy.types.Context) -> list[tuple[bpy.types.Mesh, np.ndarray]]:
+    """Meshes with the faces selected on them.
+
+    Raises Trouble when no face is selected.
+    """
+    found = [(mesh, tags.selected(mesh)) for mesh in _meshes(context)]
+    if not any(faces.any() for _, faces in found):
+        raise Trouble("case", "No faces are selected.", "Select faces in edit mode.")
+    return found
+
+
+def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Mesh, np.ndarray]], uid: int) -> None:
+    for mesh, faces in selections:
+        if faces.any():
+            tags.give(mesh, faces, uid)
+            tags.keep_copies(context.scene, mesh)
+    upkeep.refresh()
+
+
+class _OnPart(TellsTrouble):
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        thing = context.active_object
+        if thing is None or thing.type != "MESH" or context.mode not in ("OBJECT", "EDIT_MESH"):
+            cls.poll_message_set("Make the part the active object, in object or edit mode")
+            return False
+        if view.part_of(thing) != thing:
+            cls.poll_message_set("This is a result: switch to the part to tag its faces")
+            return False
+        if thing.data.library is not None:
+            cls.poll_message_set("The part is linked from another file; tag it there")
+            return False
+        return True
+
+
+class _OnTag(_OnPart):
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if tags.active(context.scene) is None:
+            cls.poll_message_set("There is no tag yet")
+            return False
+        return super().poll(context)
+
+
+class NewTag(_OnPart, bpy.types.Operator):
+    bl_idname = "fluxface.tag_new"
+    bl_label = "New Tag"
+    bl_description = "Make a tag and give it the selected faces"
+
+    name: StringProperty(name="Name", default="face tag")
+
+    def act(self, context: bpy.types.Context) -> None:
+        selections = _selections(context)
+        study.restore_tags(context.scene)
+        _give(context, selections, tags.new(context.scene, self.name).uid)
+
+
+class GiveToTag(_OnTag, bpy.types.Operator):
+    bl_idname = "fluxface.tag_give"
+    bl_label = "Give Faces"
+    bl_description = "Give the selected faces to the active tag; a face is in one tag at most"
+
+    def act(self, context: bpy.types.Context) -> None:
+        _give(context, _selections(context), tags.active(context.scene).uid)
+
+
+class TakeFromTags(_OnPart, bpy.types.Operator):
+    bl_idname = "fluxface.tag_take"
+    bl_label = "Untag Faces"
+    bl_description = "Take the selected faces out of whichever tag they are in"
+
+    def act(self, context: bpy.types.Context) -> None:
+        _give(context, _selections(context), 0)
+
+
+class SelectTag(_OnTag, bpy.types.Operator):
+    bl_idname = "fluxface.tag_select"
+    bl_label = "Select Faces"
+    bl_description = "Select the faces of the active tag, in edit mode"
+
+    def act(self, context: bpy.types.Context) -> None:
+        uid = tags.active(context.scene).uid
+        view.settings_of(context.scene).showing = "PART"
+        if context.mode != "EDIT_MESH":
+            bpy.ops.object.mode_set(mode="EDIT")
+        context.tool_settings.mesh_select_mode = (False, False, True)
+        bpy.ops.mesh.select_all(action="DESELECT")
+        for mesh in _meshes(context):
+            tags.select(mesh, tags.read(mesh) == uid)
+
+
+class DeleteTag(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.tag_delete"
+    bl_label = "Delete Tag"
+    bl_description = "Delete the active tag; its faces stay, untagged"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if tags.active(context.scene) is None:
+            cls.poll_message_set("There is no tag yet")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        tags.delete(context.scene, tags.active(context.scene).uid)
+        upkeep.refresh()
+
+
+register, unregister = bpy.utils.register_classes_factory((NewTag, GiveToTag, TakeFromTags, SelectTag, DeleteTag))

@@ -1,0 +1,18 @@
+"""The sidebar of the 3D view: what is shown of parts, tags, runs and results."""
+
+from __future__ import annotations
+
+from . import contacts, part, result, run, study, tags
+
+# In the order of the work.
+ROOMS = (study, part, tags, contacts, run, result)
+
+
+def register() -> None:
+    for room in ROOMS:
+        room.register()
+
+
+def unregister() -> None:
+    for room in reversed(ROOMS):
+        room.unregister()

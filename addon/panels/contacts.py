@@ -1,0 +1,54 @@
+"""Where the parts of a collection lie against each other."""
+
+from __future__ import annotations
+
+import bpy
+
+from .sidebar import Sidebar, fields, paragraph
+
+FIELDS = {
+    "CONDUCTANCE": ("conductance",),
+    "RESISTANCE": ("resistance",),
+    "FILLER": ("thickness", "conductivity"),
+    "BONDED": (),
+}
+
+
+class ContactList(bpy.types.UIList):
+    bl_idname = "FLUXFACE_UL_contacts"
+
+    def draw_item(self, _context, layout, _settings, contact, _icon, _active, _property, _index) -> None:
+        pair = " / ".join(side.name if side else "?" for side in (contact.first, contact.second))
+        split = layout.split(factor=0.65)
+        split.label(text=pair)
+        end = split.row()
+        end.alignment = "RIGHT"
+        end.label(text=contact.bl_rna.properties["crossing"].enum_items[contact.crossing].name)
+
+
+class ContactsPanel(Sidebar, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_contacts"
+    bl_label = "Contacts"
+    bl_options = {"DEFAULT_CLOSED"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        return context.scene.fluxface.collection is not None
+
+    def draw(self, context: bpy.types.Context) -> None:
+        layout, settings = self.layout, context.scene.fluxface
+        row = layout.row()
+        row.template_list("FLUXFACE_UL_contacts", "", settings, "contacts", settings, "active_contact", rows=2)
+        buttons = row.column(align=True)
+        buttons.operator("fluxface.contact_add", text="", icon="ADD")
+        buttons.operator("fluxface.contact_remove", text="", icon="REMOVE")
+        if not 0 <= settings.active_contact < len(settings.contacts):
+            paragraph(context, layout, "Parts exchange no heat until a contact says how.", "INFO")
+            return
+        contact = settings.contacts[settings.active_contact]
+        column = fields(layout)
+        for key in ("first", "second", "crossing", *FIELDS[contact.crossing], "gap"):
+            column.prop(contact, key)
+
+
+register, unregister = bpy.utils.register_classes_factory((ContactList, ContactsPanel))

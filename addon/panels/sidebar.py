@@ -1,0 +1,48 @@
+"""What all panels share: their place, and text in the width there is."""
+
+from __future__ import annotations
+
+import textwrap
+
+import bpy
+
+# Pixels of a usual letter and of what stands beside the text, at the host's scale of one.
+LETTER, BESIDE = 6.2, 36.0
+NARROWEST = 20
+
+
+class Sidebar:
+    bl_space_type = "VIEW_3D"
+    bl_region_type = "UI"
+    bl_category = "Fluxface"
+
+
+def paragraph(context: bpy.types.Context, layout: bpy.types.UILayout, text: str, icon: str = "NONE") -> None:
+    """Text over as many lines as the width of the sidebar asks for; the host cuts off longer labels."""
+    column = layout.column(align=True)
+    column.scale_y = 0.8
+    icon_width = 0.0 if icon == "NONE" else 20.0
+    width = context.region.width / context.preferences.system.ui_scale - BESIDE - icon_width
+    lines = textwrap.wrap(text, max(NARROWEST, int(width / LETTER)))
+    for number, line in enumerate(lines):
+        if icon == "NONE":
+            column.label(text=line)
+        else:
+            column.label(text=line, icon=icon if number == 0 else "BLANK1")
+
+
+def pair(layout: bpy.types.UILayout, name: str, value: str, icon: str = "NONE") -> None:
+    """A name at the left and its value at the right."""
+    row = layout.row()
+    row.label(text=name, icon=icon)
+    end = row.row()
+    end.alignment = "RIGHT"
+    end.label(text=value)
+
+
+def fields(layout: bpy.types.UILayout) -> bpy.types.UILayout:
+    """A column of fields with their names in front."""
+    column = layout.column()
+    column.use_property_split = True
+    column.use_property_decorate = False
+    return column

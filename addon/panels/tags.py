@@ -1,0 +1,152 @@
+"""The scene's tags, which faces they have, and what they carry."""
+
+from __future__ import annotations
+
+import json
+
+import bpy
+
+from ...solver.errors import Trouble
+from ...solver.materials import library
+from .. import study, tags, words
+from ..cases import FILM_NEEDS
+from ..properties import Terms
+from ..units import area_text, metres_per_unit
+from .sidebar import Sidebar, fields, paragraph
+
+
+def areas(context: bpy.types.Context) -> dict[int, float]:
+    """m² of each tag on the parts of the present study."""
+    try:
+        members = study.parts(context)
+    except Trouble:
+        return {}
+    total: dict[int, float] = {}
+    square = metres_per_unit(context.scene) ** 2
+    for part in members:
+        for uid, area in json.loads(part.fluxface.areas or "{}").items():
+            total[int(uid)] = total.get(int(uid), 0.0) + square * area
+    return total
+
+
+class TagList(bpy.types.UIList):
+    bl_idname = "FLUXFACE_UL_tags"
+
+    def draw_item(self, context, layout, _settings, tag, _icon, _active, _property, _index) -> None:
+        split = layout.split(factor=0.5)
+        row = split.row(align=True)
+        swatch = row.row()
+        swatch.ui_units_x = 0.7
+        swatch.prop(tag, "colour", text="")
+        row.prop(tag, "name", text="", emboss=False)
+        end = split.row()
+        end.alignment = "RIGHT"
+        end.label(text=words.carries(context.scene, tag) or "insulated")
+
+
+class TagsPanel(Sidebar, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_tags"
+    bl_label = "Face Tags"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        layout, settings = self.layout, context.scene.fluxface
+        row = layout.row()
+        row.template_list("FLUXFACE_UL_tags", "", settings, "tags", settings, "active_tag", rows=3)
+        buttons = row.column(align=True)
+        buttons.operator("fluxface.tag_new", text="", icon="ADD")
+        buttons.operator("fluxface.tag_delete", text="", icon="REMOVE")
+        tag = tags.active(context.scene)
+        if tag is None:
+            paragraph(context, layout, "Select faces in edit mode and press + to make a tag of them.", "INFO")
+            return
+        row = layout.row(align=True)
+        row.operator("fluxface.tag_give")
+        row.operator("fluxface.tag_take")
+        row.operator("fluxface.tag_select")
+        area = areas(context).get(tag.uid)
+        told = f"{area_text(context.scene, area)} on the part" if area else "no faces on the part yet"
+        layout.label(text=f"{tag.name}: {told}")
+        draw_terms(context, layout, tag)
+
+
+class UntaggedPanel(Sidebar, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_untagged"
+    bl_parent_id = "FLUXFACE_PT_tags"
+    bl_label = "All Other Faces"
+    bl_options = {"DEFAULT_CLOSED"}
+
+    def draw(self, context: bpy.types.Context) -> None:
+        untagged = context.scene.fluxface.untagged
+        told = words.carries(context.scene, untagged)
+        paragraph(context, self.layout, f"Faces without a tag: {told or 'insulated'}.")
+        draw_terms(context, self.layout, untagged)
+
+
+def draw_terms(context: bpy.types.Context, layout: bpy.types.UILayout, terms: Terms) -> None:
+    """A switch for each term and, under it, its fields while it is on."""
+    if message := words.clash(terms):
+        paragraph(context, layout, message, "ERROR")
+    column = layout.column()
+    for switch, draw in TERMS:
+        column.prop(terms, switch)
+        if getattr(terms, switch):
+            draw(context, fields(column), terms)
+
+
+def _draw_heat(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
+    column.prop(terms, "heat", text="Total (W)")
+
+
+def _draw_heat_flux(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
+    column.prop(terms, "heat_flux", text="Flux (W/m²)")
+
+
+def _draw_convection(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
+    column.prop(terms, "film")
+    if terms.film == "COEFFICIENT":
+        column.prop(terms, "coefficient", text="W/m²K")
+    else:
+        column.prop(terms, "fluid")
+        for key in FILM_NEEDS.get(terms.film, ()):
+            column.prop(terms, key)
+    column.prop(terms, "ambient")
+
+
+def _draw_radiation(context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
+    row = column.row(align=True)
+    row.prop(terms, "emissivity")
+    if terms == tags.active(context.scene):
+        row.menu("FLUXFACE_MT_finishes", text="", icon="DOWNARROW_HLT")
+    column.prop(terms, "surroundings", text="Walls at")
+
+
+def _draw_temperature(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
+    column.prop(terms, "temperature")
+
+
+TERMS = (
+    ("use_heat", _draw_heat),
+    ("use_heat_flux", _draw_heat_flux),
+    ("use_convection", _draw_convection),
+    ("use_radiation", _draw_radiation),
+    ("use_temperature", _draw_temperature),
+)
+
+
+class FinishesMenu(bpy.types.Menu):
+    bl_idname = "FLUXFACE_MT_finishes"
+    bl_label = "Finish"
+    bl_description = "Emissivity of a usual finish of the part's material"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        part = study.active_part(context)
+        row = library().get(part.fluxface.material.name) if part else None
+        if row is None:
+            self.layout.label(text="Choose a library material first")
+            return
+        for finish, emissivity in row.emissivity.items():
+            text = f"{row.material.name}, {finish}: {emissivity:g}"
+            self.layout.operator("fluxface.emissivity_use", text=text).emissivity = emissivity
+
+
+register, unregister = bpy.utils.register_classes_factory((TagList, FinishesMenu, TagsPanel, UntaggedPanel))

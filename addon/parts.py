@@ -1,0 +1,137 @@
+"""The evaluated geometry of modelled objects, with its tags, in metres and world axes."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from dataclasses import dataclass, replace
+
+import bpy
+import numpy as np
+from mathutils.bvhtree import BVHTree
+
+from ..solver.errors import Trouble
+from . import tags
+
+# Below this share of what the extent allows, a volume is rounding and not thickness. Common practice, no source.
+FLATNESS = 1e-9
+
+
+@dataclass(frozen=True)
+class Skin:
+    """One part's evaluated surface, outward as modelled.
+
+    vertices: (V, 3). triangles: (F, 3). uid: (F,) tag ids. face: (F,) polygon numbers of the evaluated mesh.
+    """
+
+    vertices: np.ndarray
+    triangles: np.ndarray
+    uid: np.ndarray
+    face: np.ndarray
+
+    def area_vectors(self) -> np.ndarray:
+        """(F, 3): along each triangle's normal, as long as its area."""
+        a, b, c = (self.vertices[self.triangles[:, corner]] for corner in range(3))
+        return 0.5 * np.cross(b - a, c - a)
+
+    def volume(self) -> float:
+        """Enclosed, by the divergence theorem."""
+        centred = self.vertices - self.vertices.mean(axis=0)
+        return float(np.einsum("fi,fi->", centred[self.triangles[:, 0]], self.area_vectors()) / 3.0)
+
+    def area_by_tag(self) -> dict[int, float]:
+        """Area of each tag that has faces, untagged ones left out."""
+        uids, inverse = np.unique(self.uid, return_inverse=True)
+        sums = np.bincount(inverse.ravel(), weights=np.linalg.norm(self.area_vectors(), axis=1), minlength=len(uids))
+        return {uid: area for uid, area in zip(uids.tolist(), sums.tolist(), strict=True) if uid}
+
+
+@contextmanager
+def in_sight(context: bpy.types.Context, parts: Sequence[bpy.types.Object]) -> Iterator[bpy.types.Depsgraph]:
+    """The evaluated scene with the parts in it: the host does not evaluate what is hidden, as parts under results are.
+
+    Raises Trouble of kind "case" when a part is not in the view layer at all.
+    """
+    for part in parts:
+        if part.name not in context.view_layer.objects:
+            raise Trouble(
+                "case",
+                f"The part '{part.name}' is in a collection that is switched off.",
+                "Switch its collection on in the outliner.",
+            )
+    hidden = [(part, part.hide_get(), part.hide_viewport) for part in parts if not part.visible_get()]
+    for part, _, _ in hidden:
+        part.hide_set(False)
+        part.hide_viewport = False
+    try:
+        yield context.evaluated_depsgraph_get()
+    finally:
+        for part, by_eye, in_viewports in hidden:
+            part.hide_set(by_eye)
+            part.hide_viewport = in_viewports
+
+
+def modelled(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> Skin:
+    """The part as its modifiers leave it, in its own axes and scene units.
+
+    Raises Trouble when the tag attribute is not one of ours.
+    """
+    evaluated = part.evaluated_get(depsgraph)
+    mesh = evaluated.to_mesh()
+    try:
+        mesh.calc_loop_triangles()
+        vertices = np.empty((len(mesh.vertices), 3), np.float32)
+        triangles = np.empty((len(mesh.loop_triangles), 3), np.int32)
+        face = np.empty(len(mesh.loop_triangles), np.int32)
+        mesh.vertices.foreach_get("co", vertices.ravel())
+        mesh.loop_triangles.foreach_get("vertices", triangles.ravel())
+        mesh.loop_triangles.foreach_get("polygon_index", face)
+        uid = _uids(part.data, mesh)[face]
+    finally:
+        evaluated.to_mesh_clear()
+    return Skin(vertices.astype(np.float64), triangles, uid, face)
+
+
+def placed(surface: Skin, matrix: np.ndarray, metres: float) -> Skin:
+    """A skin moved by a world matrix (4, 4) and scaled by ``metres`` in a scene unit."""
+    world = surface.vertices @ matrix[:3, :3].T + matrix[:3, 3]
+    mirrored = np.linalg.det(matrix[:3, :3]) < 0
+    # A mirroring scale turns the surface inside out.
+    triangles = surface.triangles[:, ::-1] if mirrored else surface.triangles
+    return replace(surface, vertices=world * metres, triangles=triangles)
+
+
+def world_matrix(part: bpy.types.Object) -> np.ndarray:
+    return np.array(part.matrix_world, dtype=np.float64)
+
+
+def _uids(base: bpy.types.Mesh, evaluated: bpy.types.Mesh) -> np.ndarray:
+    """(F,) tag ids of the evaluated faces; where a modifier dropped them, those of the nearest modelled face."""
+    if tags.ATTRIBUTE in evaluated.attributes or not len(evaluated.polygons):
+        return tags.read(evaluated)
+    modelled = tags.read(base)
+    if not modelled.any() or len(modelled) != len(base.polygons):
+        return np.zeros(len(evaluated.polygons), np.int32)
+    corners = [vertex.co for vertex in base.vertices]
+    tree = BVHTree.FromPolygons(corners, [polygon.vertices for polygon in base.polygons])
+    # The host looks up the nearest face of one point at a time only.
+    return modelled[[tree.find_nearest(polygon.center)[2] for polygon in evaluated.polygons]]
+
+
+def check_solid(part: bpy.types.Object, surface: Skin) -> None:
+    """Find the part to be a body.
+
+    Raises Trouble of kind "geometry" when the part is scaled to nothing, empty or flat."""
+    scale = np.linalg.norm(world_matrix(part)[:3, :3], axis=0)
+    if scale.min() <= FLATNESS * max(scale.max(), 1e-30):
+        axes = ", ".join(axis for axis, size in zip("XYZ", scale, strict=True) if size <= FLATNESS * scale.max())
+        raise Trouble(
+            "geometry", f"The part '{part.name}' is scaled to zero along {axes}.", "Give it a scale other than zero."
+        )
+    if not len(surface.triangles):
+        raise Trouble("geometry", f"The part '{part.name}' has no faces.", "Model a closed body.")
+    extent = float(np.linalg.norm(np.ptp(surface.vertices, axis=0)))
+    if abs(surface.volume()) <= FLATNESS * extent**3:
+        raise Trouble(
+            "geometry", f"The part '{part.name}' is flat: it encloses no volume.", "Model a closed body with thickness."
+        )

@@ -1,0 +1,143 @@
+"""A run: from the settings to a case, through the solver, to what is shown and said of it."""
+
+from __future__ import annotations
+
+import json
+import time
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+import bpy
+
+from ..solver.case import write_case
+from ..solver.errors import Trouble
+from ..solver.result import read_summary
+from . import host, jobs, study, tags, upkeep, view
+from .cases import build_case
+from .parts import in_sight
+from .properties import Outcome
+
+STAGES = ("mesh", "assemble", "solve", "write")
+SECONDS_BETWEEN_LOOKS = 0.1
+# Names, not references: the host may move or free what they refer to while the solver runs.
+
+
+@dataclass(frozen=True)
+class Run:
+    """inputs: what the result will have been made from, to tell later whether it is current."""
+
+    job: jobs.Job
+    scene: str
+    parts: tuple[str, ...]
+    result: Path
+    inputs: str
+
+
+def start(context: bpy.types.Context) -> Run:
+    """Write the case of the present study and start the solver on it.
+
+    Raises Trouble, which is also kept with the study for the panel to show, when something is amiss before the solver.
+    """
+    scene, members = context.scene, study.parts(context)
+    left = study.outcome(scene, members)
+    try:
+        return _start(context, scene, members)
+    except Trouble as trouble:
+        keep_trouble(left, trouble)
+        raise
+
+
+def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Run:
+    study.restore_tags(scene)
+    with in_sight(context, members) as depsgraph:
+        for part in members:
+            upkeep.measure(part, depsgraph)
+            tags.keep_copies(scene, part.data)
+        case = build_case(scene, members, depsgraph)
+        inputs = study.inputs(scene, members)
+    folder = study.folder(scene, members)
+    try:
+        write_case(case, folder)
+    except OSError as error:
+        raise Trouble(
+            "limits",
+            f"The case cannot be written to {folder}: {error.strerror}.",
+            "Save the file in a folder that you may write to.",
+        ) from error
+    result = folder / "result"
+    job = jobs.solve(folder, result)
+    return Run(job, scene.name, tuple(part.name for part in members), result, inputs)
+
+
+def wait(run: Run) -> jobs.Ending:
+    """Wait for the solver; only where there is no window to keep alive."""
+    while (ending := run.job.poll()) is None:
+        time.sleep(SECONDS_BETWEEN_LOOKS / 5)
+    return ending
+
+
+def watch(run: Run) -> None:
+    """Look at the solver from time to time while the designer goes on working, and finish when it ends."""
+    state = bpy.context.window_manager.fluxface
+    state.running, state.cancelled = True, False
+    bpy.app.timers.register(_look(run))
+
+
+def _look(run: Run) -> Callable[[], float | None]:
+    def look() -> float | None:
+        state = bpy.context.window_manager.fluxface
+        if state.cancelled:
+            run.job.cancel()
+        # A result that appears in the middle of a render would be drawn by half of it.
+        if bpy.app.is_job_running("RENDER"):
+            return SECONDS_BETWEEN_LOOKS
+        ending = run.job.poll()
+        state.text, state.fraction = told(run.job.progress)
+        host.redraw()
+        if ending is None:
+            return SECONDS_BETWEEN_LOOKS
+        state.running = False
+        finish(run, ending)
+        host.push_undo("Temperatures")
+        return None
+
+    return look
+
+
+def told(progress: jobs.Progress) -> tuple[str, float]:
+    """What to show of a progress: its words, and the share of all stages done."""
+    stage = STAGES.index(progress.stage) if progress.stage in STAGES else 0
+    return progress.text, (stage + progress.fraction) / len(STAGES)
+
+
+def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
+    """Show what was solved, or keep what went wrong; an older result stays where a run fails or is cancelled."""
+    scene = bpy.data.scenes.get(run.scene)
+    members = [part for name in run.parts if (part := bpy.data.objects.get(name)) is not None]
+    if scene is None or len(members) < len(run.parts):
+        # The designer deleted or renamed a part meanwhile: there is nothing left to show this result on.
+        return None
+    left = study.outcome(scene, members)
+    if ending.cancelled or ending.trouble:
+        jobs.clear_remains(run.result)
+    if ending.cancelled:
+        return None
+    try:
+        if ending.trouble:
+            raise ending.trouble
+        summary = read_summary(run.result)
+        view.show(scene, members, run.result)
+    except Trouble as trouble:
+        keep_trouble(left, trouble)
+        return trouble
+    keep_trouble(left, None)
+    left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
+    return None
+
+
+def keep_trouble(left: Outcome, trouble: Trouble | None) -> None:
+    left.message = trouble.message if trouble else ""
+    left.mend = trouble.mend if trouble else ""
+    left.faces = json.dumps([int(face) for face in trouble.faces]) if trouble else ""
+    left.points = json.dumps([[float(x) for x in point] for point in trouble.points]) if trouble else ""

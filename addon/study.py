@@ -1,0 +1,97 @@
+"""The study: which objects are its parts, where its folder is, and whether its result is current."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Sequence
+from pathlib import Path
+
+import bpy
+import numpy as np
+
+from ..solver.errors import Trouble
+from ..solver.result import Summary
+from . import groups, tags, view
+from .properties import Outcome
+
+# World positions below this share of a unit are rounding of the host's single-precision matrices.
+PLACE_DIGITS = 6
+
+
+def parts(context: bpy.types.Context) -> list[bpy.types.Object]:
+    """The mesh objects to solve: those of the chosen collection, or else the active one.
+
+    Raises Trouble of kind "case" when there is none.
+    """
+    collection = context.scene.fluxface.collection
+    if collection is not None:
+        found = [thing for thing in collection.all_objects if thing.type == "MESH" and view.part_of(thing) == thing]
+        if not found:
+            raise Trouble("case", f"The collection '{collection.name}' holds no mesh object.", "Put the parts into it.")
+        return sorted(found, key=lambda thing: thing.name)
+    part = active_part(context)
+    if part is None:
+        raise Trouble("case", "No mesh object is active.", "Click the part to make it the active object.")
+    return [part]
+
+
+def active_part(context: bpy.types.Context) -> bpy.types.Object | None:
+    """The part that is active, or whose result is."""
+    thing = context.view_layer.objects.active
+    return view.part_of(thing) if thing is not None and thing.type == "MESH" else None
+
+
+def outcome(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Outcome:
+    """What the last run of this study left; it is kept with the chosen collection or with the one part."""
+    return (scene.fluxface.collection or members[0]).fluxface.outcome
+
+
+def folder(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Path:
+    """The case folder: beside the saved file, or in the session's temporary folder."""
+    name = bpy.path.clean_name((scene.fluxface.collection or members[0]).name)
+    if not bpy.data.filepath:
+        return Path(bpy.app.tempdir) / "fluxface" / name
+    file = Path(bpy.data.filepath)
+    return file.with_name(f"{file.stem}.fluxface") / name
+
+
+def summary(left: Outcome) -> Summary | None:
+    """The summary of the last run that was solved."""
+    return json.loads(left.summary) if left.summary else None
+
+
+def inputs(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> str:
+    """Everything a result depends on, as text to compare: settings, shapes, and how the parts lie to each other."""
+    settings = scene.fluxface
+    present = {int(uid) for part in members for uid in json.loads(part.fluxface.areas or "{}")}
+    origin = members[0].matrix_world.translation
+    document = {
+        "tags": [groups.as_json(tag) for tag in settings.tags if tag.uid in present],
+        "untagged": groups.as_json(settings.untagged),
+        "contacts": [groups.as_json(contact) for contact in settings.contacts] if settings.collection else [],
+        "study": [*settings.gravity, settings.order, settings.size, scene.unit_settings.scale_length],
+        "parts": [
+            (part.name, part.fluxface.shape, groups.as_json(part.fluxface.material), *_heat(part), *_pose(part, origin))
+            for part in members
+        ],
+    }
+    return json.dumps(document)
+
+
+def _heat(part: bpy.types.Object) -> tuple[str, float, float]:
+    return part.fluxface.heat_kind, part.fluxface.heat, part.fluxface.heat_density
+
+
+def _pose(part: bpy.types.Object, origin: np.ndarray) -> list[float]:
+    matrix = np.array(part.matrix_world, dtype=float)
+    matrix[:3, 3] -= np.array(origin, dtype=float)
+    return np.round(matrix[:3], PLACE_DIGITS).ravel().tolist()
+
+
+def meshes(members: Sequence[bpy.types.Object]) -> list[bpy.types.Mesh]:
+    return list({part.data.name_full: part.data for part in members}.values())
+
+
+def restore_tags(scene: bpy.types.Scene) -> None:
+    """Give the scene the tags that its objects bring along from elsewhere."""
+    tags.restore(scene, meshes([thing for thing in scene.objects if thing.type == "MESH"]))

@@ -1,0 +1,99 @@
+"""What follows the designer's edits: tags that appended parts bring, areas and shapes of parts, copies on meshes."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+
+import bpy
+from bpy.app.handlers import persistent
+
+from ..solver.errors import Trouble
+from . import host, jobs, study, tags
+from .parts import Skin, modelled, placed, world_matrix
+
+# Long enough that dragging a vertex does not measure the part at every move.
+QUIET_SECONDS = 0.3
+
+
+def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
+    """Keep with the part the area of each of its tags (in square scene units) and a digest of its shape."""
+    if part.library is not None:
+        return
+    try:
+        surface = modelled(part, depsgraph)
+    except Trouble:
+        return
+    areas = json.dumps(placed(surface, world_matrix(part), 1.0).area_by_tag())
+    shape = _digest(surface)
+    if (part.fluxface.areas, part.fluxface.shape) != (areas, shape):
+        part.fluxface.areas, part.fluxface.shape = areas, shape
+
+
+def _digest(surface: Skin) -> str:
+    """A short text that changes with the shape and the tagged faces."""
+    digest = hashlib.blake2b(digest_size=12)
+    for array in (surface.vertices, surface.triangles, surface.uid):
+        digest.update(array.tobytes())
+    return digest.hexdigest()
+
+
+def refresh() -> None:
+    """Bring everything up to date for the parts of the study that are in sight; hidden ones cannot be edited."""
+    context = bpy.context
+    study.restore_tags(context.scene)
+    try:
+        members = study.parts(context)
+    except Trouble:
+        return
+    depsgraph = context.evaluated_depsgraph_get()
+    for part in members:
+        if part.visible_get():
+            measure(part, depsgraph)
+    host.redraw()
+
+
+@persistent
+def on_change(_scene: bpy.types.Scene, depsgraph: bpy.types.Depsgraph) -> None:
+    """After edits, refresh once things are quiet."""
+    changed = any(
+        isinstance(update.id, bpy.types.Object) and (update.is_updated_geometry or update.is_updated_transform)
+        for update in depsgraph.updates
+    )
+    if changed and not bpy.app.background:
+        _stop_waiting()
+        bpy.app.timers.register(refresh, first_interval=QUIET_SECONDS)
+
+
+@persistent
+def before_save(_file: str) -> None:
+    """Let every mesh hold its tags' definitions as they are now."""
+    for scene in bpy.data.scenes:
+        for mesh in study.meshes([thing for thing in scene.objects if thing.type == "MESH"]):
+            if mesh.library is None and tags.is_tagged(mesh):
+                tags.keep_copies(scene, mesh)
+
+
+@persistent
+def before_load(_file: str) -> None:
+    """A run belongs to the file that is being left."""
+    jobs.stop_all()
+
+
+HANDLERS = (("depsgraph_update_post", on_change), ("save_pre", before_save), ("load_pre", before_load))
+
+
+def _stop_waiting() -> None:
+    if bpy.app.timers.is_registered(refresh):
+        bpy.app.timers.unregister(refresh)
+
+
+def register() -> None:
+    for moment, handler in HANDLERS:
+        getattr(bpy.app.handlers, moment).append(handler)
+
+
+def unregister() -> None:
+    for moment, handler in HANDLERS:
+        getattr(bpy.app.handlers, moment).remove(handler)
+    _stop_waiting()
