@@ -66,6 +66,7 @@ def furnace(low: float, steps: np.ndarray) -> Surface:
     )
 
 
+@pytest.mark.slow
 def test_hollow_cube(tmp_path: Path) -> None:
     """Six walls, twelve edges (0.54 D each) and eight corners (0.15 L each), on the whole cube with its cavity."""
     cube = between(furnace(-HALF_CUBE, np.array([0.01, 0.03, 0.07])), 1.0, 0.0, 1.0, 0.03, tmp_path)

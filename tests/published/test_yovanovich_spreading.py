@@ -113,6 +113,7 @@ def test_source_off_the_middle(tmp_path: Path) -> None:
     assert plate.tag("source")["mean"] - AMBIENT == pytest.approx(exact, rel=1e-3)
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize(("conductance", "published"), [(None, 39.8197), (1e4, 44.2126)], ids=["bonded", "in contact"])
 def test_source_on_two_layers(tmp_path: Path, conductance: float | None, published: float) -> None:
     """A millimetre of copper's conductivity upon seven of aluminium's: a compound flux channel."""
