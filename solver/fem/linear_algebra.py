@@ -3,57 +3,17 @@
 from __future__ import annotations
 
 import numpy as np
-import pyamg
-from pyamg.multilevel import MultilevelSolver
-from pyamg.relaxation.smoothing import change_smoothers
-from scipy.sparse import coo_array, csr_array, csr_matrix
+from scipy.sparse import csr_array
 from scipy.sparse.linalg import LinearOperator, cg, gmres, splu
 
-from .mesh import CELL_EDGES, Mesh
+from .multigrid import preconditioner
 
 # Up to here a factorisation takes less time than setting up a hierarchy (tests/bench prints both).
 DIRECT = 4_000
-# Couplings below this share of their neighbours' are left out of the aggregation, so that it keeps to one side of
-# thin insulation.
-WEAK = 0.05
 MOST_ITERATIONS = 500
 RESTART = 50
 # A preconditioner made for an earlier matrix is dropped when it takes this many times its first iterations.
 STALE = 2.0
-
-
-def midside_interpolation(mesh: Mesh) -> csr_array | None:
-    """(N, corners) linear interpolation from a quadratic mesh's corner nodes to all its nodes; None if it is linear."""
-    if mesh.order == 1:
-        return None
-    corners = int(mesh.cells[:, :4].max()) + 1
-    ends = np.repeat(np.arange(len(mesh.nodes))[:, None], 2, axis=1)
-    ends[mesh.cells[:, 4:]] = mesh.cells[:, CELL_EDGES]
-    rows = np.repeat(np.arange(len(mesh.nodes)), 2)
-    halves = np.full(len(rows), 0.5)
-    return coo_array((halves, (rows, ends.ravel())), shape=(len(mesh.nodes), corners)).tocsr()
-
-
-def preconditioner(matrix: csr_array, interpolation: csr_array | None) -> LinearOperator:
-    """One V-cycle for a symmetric positive definite matrix (n, n).
-
-    interpolation: (n, c) from a coarser space of the same unknowns, or None. With it, the cycle goes over the exact
-    Galerkin matrix there; below that, over smoothed aggregation.
-
-    Vanek, Mandel & Brezina, Computing 56 (1996) 179 (aggregation). The smoother is symmetric Gauss-Seidel: polynomial
-    ones in the matrix itself lose their way where parts of unlike conductivity meet.
-    """
-    fine = csr_matrix(matrix)
-    coarse = fine if interpolation is None else csr_matrix(interpolation.T @ fine @ interpolation)
-    levels = pyamg.smoothed_aggregation_solver(coarse, strength=("symmetric", {"theta": WEAK}), max_coarse=300).levels
-    if interpolation is not None:
-        top = MultilevelSolver.Level()
-        top.A, top.P, top.R = fine, csr_matrix(interpolation), csr_matrix(interpolation.T)
-        levels = [top, *levels]
-    hierarchy = MultilevelSolver(levels, coarse_solver="splu")
-    smoother = ("gauss_seidel", {"sweep": "symmetric"})
-    change_smoothers(hierarchy, presmoother=smoother, postsmoother=smoother)
-    return hierarchy.aspreconditioner(cycle="V")
 
 
 class LinearSolver:

@@ -20,7 +20,8 @@ from scipy.sparse import csr_array
 
 from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, film_matrix, flux_load
-from ..fem.linear_algebra import LinearSolver, midside_interpolation
+from ..fem.linear_algebra import LinearSolver
+from ..fem.multigrid import midside_interpolation
 from ..fem.volume import heat_load
 from .conduction import TabledConduction, constant_conduction, is_constant, tabled_conduction
 from .contact import Bond, Conductance
