@@ -10,6 +10,7 @@ from pathlib import Path
 
 from .case import read_case
 from .errors import Trouble
+from .packing import PLATFORMS, pack
 from .result import Summary, write_result
 
 BAR_LENGTH = 30
@@ -45,6 +46,10 @@ def _parser() -> argparse.ArgumentParser:
     checking.add_argument("case", type=Path, metavar="CASE", help="the case folder")
     checking.add_argument("--json", action="store_true", help="tell the measures as JSON")
     checking.set_defaults(run=_check)
+    packing_up = commands.add_parser("pack", help="build the extension to install in the 3D suite")
+    packing_up.add_argument("--platform", choices=(*PLATFORMS, "all"), default="all", help="default: all")
+    packing_up.add_argument("--out", type=Path, default=Path("dist"), metavar="DIR", help="where to (default: dist)")
+    packing_up.set_defaults(run=_pack)
     return parser
 
 
@@ -82,6 +87,12 @@ def _check(options: argparse.Namespace) -> None:
     for pair in measures["touching"]:
         print(f"  {' and '.join(pair['parts'])} touch over {1e4 * pair['area']:.4g} cm2")
     print("The case is sound.")
+
+
+def _pack(options: argparse.Namespace) -> None:
+    platforms = list(PLATFORMS) if options.platform == "all" else [options.platform]
+    for archive in pack(platforms, options.out):
+        print(archive)
 
 
 def _told(summary: Summary) -> str:
