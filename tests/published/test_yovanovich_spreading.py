@@ -59,7 +59,11 @@ def spreading_series(
 
 
 def heated_plate(
-    layers: Sequence[tuple[float, float]], centre: tuple[float, float], contact: Contact | None, folder: Path
+    layers: Sequence[tuple[float, float]],
+    centre: tuple[float, float],
+    contact: Contact | None,
+    size: float,
+    folder: Path,
 ) -> Solved:
     """The plate in its layers, the top one bearing the source, at whose edge the flux jumps: it is finer there."""
     heights = np.cumsum([0.0] + [thickness for thickness, _ in reversed(layers)])
@@ -78,12 +82,12 @@ def heated_plate(
     parts = tuple(Part(f"layer {i}", Material(f"layer {i}", (k,))) for i, (_, k) in enumerate(reversed(layers)))
     tags = Tag("source", heat=HEAT), Tag("sink", convection=Convection(AMBIENT, coefficient=FILM))
     contacts = () if contact is None else (contact,)
-    return solved(Case(bottom, parts, tags, contacts=contacts, accuracy=Accuracy(size=0.003)), folder)
+    return solved(Case(bottom, parts, tags, contacts=contacts, accuracy=Accuracy(size=size)), folder)
 
 
 def test_source_in_the_middle(tmp_path: Path) -> None:
     """Means, the hottest point, and the parts of the resistance."""
-    plate = heated_plate(SINGLE, CENTRE, None, tmp_path)
+    plate = heated_plate(SINGLE, CENTRE, None, 0.003, tmp_path)
     mean, hottest = spreading_series(SINGLE, CENTRE), spreading_series(SINGLE, CENTRE, at=CENTRE)
     assert (mean, hottest) == pytest.approx((41.4291, 42.9493), rel=1e-5)
     rise = plate.tag("source")["mean"] - AMBIENT
@@ -107,7 +111,7 @@ def test_source_in_the_middle(tmp_path: Path) -> None:
 
 
 def test_source_off_the_middle(tmp_path: Path) -> None:
-    plate = heated_plate(SINGLE, (0.030, 0.025), None, tmp_path)
+    plate = heated_plate(SINGLE, (0.030, 0.025), None, 0.003, tmp_path)
     exact = spreading_series(SINGLE, (0.030, 0.025))
     assert exact == pytest.approx(43.6224, rel=1e-5)
     assert plate.tag("source")["mean"] - AMBIENT == pytest.approx(exact, rel=1e-3)
@@ -117,7 +121,7 @@ def test_source_off_the_middle(tmp_path: Path) -> None:
 @pytest.mark.parametrize(("conductance", "published"), [(None, 39.8197), (1e4, 44.2126)], ids=["bonded", "in contact"])
 def test_source_on_two_layers(tmp_path: Path, conductance: float | None, published: float) -> None:
     """A millimetre of copper's conductivity upon seven of aluminium's: a compound flux channel."""
-    plate = heated_plate(DOUBLE, CENTRE, Contact((0, 1), conductance), tmp_path)
+    plate = heated_plate(DOUBLE, CENTRE, Contact((0, 1), conductance), 0.004, tmp_path)
     exact = spreading_series(DOUBLE, CENTRE, conductance or np.inf)
     assert exact == pytest.approx(published, rel=1e-5)
     assert plate.tag("source")["mean"] - AMBIENT == pytest.approx(exact, rel=2e-3)
