@@ -86,7 +86,7 @@ class Terms:
     speed: FloatProperty(name="Speed (m/s)", description="Speed of the flow away from the part", min=0.0, default=1.0)
     use_radiation: BoolProperty(name="Radiation", description="Heat these faces radiate to their surroundings")
     emissivity: FloatProperty(
-        name="Emissivity", description="1 for a black body; 0.9 for paint and 0.05 to 0.3 for bare metal are common practice",
+        name="Emissivity", description="Black 1; paint about 0.9 and bare metal 0.05 to 0.3 are common practice",
         default=0.9, min=0.0, max=1.0, subtype="FACTOR",
     )  # fmt: skip
     surroundings: FloatProperty(
@@ -118,13 +118,13 @@ class UntaggedTerms(Terms, bpy.types.PropertyGroup):
 
 class TablePoint(bpy.types.PropertyGroup):
     temperature: FloatProperty(name="At", default=ROOM, min=0.0, unit="TEMPERATURE", step=1000)
-    value: FloatProperty(name="Value", default=1.0, precision=4)
+    value: FloatProperty(name="Value", default=1.0, precision=3)
 
 
 class MaterialProperty(bpy.types.PropertyGroup):
     """One property: a number, or a table over temperature."""
 
-    value: FloatProperty(name="Value", precision=4)
+    value: FloatProperty(name="Value", precision=3)
     tabulated: BoolProperty(name="Over temperature", description="Give a table over temperature in place of one number")
     points: CollectionProperty(type=TablePoint)
     active_point: IntProperty()

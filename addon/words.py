@@ -5,10 +5,9 @@ from __future__ import annotations
 import bpy
 
 from ..solver.result import Summary
-from .properties import FILMS, Terms
+from .properties import Terms
 from .units import as_typed, power_text, short_temperature_text
 
-FILM_LABELS = {name: label for name, label, _ in FILMS}
 WAYS = {"convection": "convection", "radiation": "radiation", "source": "heat drawn out", "held": "held temperature"}
 
 CAUTIONS = (
@@ -28,17 +27,18 @@ def carries(scene: bpy.types.Scene, terms: Terms) -> str:
     if terms.use_heat_flux:
         texts.append(f"{as_typed(terms.heat_flux):g} W/m²".replace("-", "−"))
     if terms.use_convection:
-        ambient = short_temperature_text(scene, as_typed(terms.ambient))
-        film = f"{as_typed(terms.coefficient):g} W/m²K" if terms.film == "COEFFICIENT" else _fluid(terms)
-        texts.append(f"{film} to {ambient}" if terms.film == "COEFFICIENT" else f"{film} at {ambient}")
+        to_one_room = terms.use_radiation and terms.surroundings == terms.ambient
+        ambient = f" to {short_temperature_text(scene, as_typed(terms.ambient))}"
+        texts.append(_film(terms) + ("" if to_one_room else ambient))
     if terms.use_radiation:
-        texts.append(
-            f"ε {as_typed(terms.emissivity):g} to {short_temperature_text(scene, as_typed(terms.surroundings))}"
-        )
+        surroundings = short_temperature_text(scene, as_typed(terms.surroundings))
+        texts.append(f"ε {as_typed(terms.emissivity):g} to {surroundings}")
     return ", ".join(texts)
 
 
-def _fluid(terms: Terms) -> str:
+def _film(terms: Terms) -> str:
+    if terms.film == "COEFFICIENT":
+        return f"{as_typed(terms.coefficient):g} W/m²K"
     moving = terms.film in ("flat_plate_flow", "cylinder_crossflow")
     return f"{'moving' if moving else 'still'} {terms.fluid}"
 

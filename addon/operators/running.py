@@ -13,6 +13,7 @@ from mathutils import Vector
 from ...solver.errors import Trouble
 from .. import running, study, tags, view
 from ..units import metres_per_unit
+from .tagging import enter_edit_mode
 from .telling import TellsTrouble
 
 
@@ -85,12 +86,7 @@ def _select(context: bpy.types.Context, part: bpy.types.Object, faces: np.ndarra
     """In edit mode; faces are numbered as modifiers left them, so those that the mesh does not have are left out."""
     if context.mode != "OBJECT":
         bpy.ops.object.mode_set(mode="OBJECT")
-    view.settings_of(context.scene).showing = "PART"
-    part.hide_set(False)
-    context.view_layer.objects.active = part
-    bpy.ops.object.mode_set(mode="EDIT")
-    context.tool_settings.mesh_select_mode = (False, False, True)
-    bpy.ops.mesh.select_all(action="DESELECT")
+    enter_edit_mode(context, part)
     chosen = np.isin(np.arange(len(tags.read(part.data))), faces)
     tags.select(part.data, chosen)
 

@@ -13,8 +13,8 @@ from .telling import TellsTrouble
 
 def _meshes(context: bpy.types.Context) -> list[bpy.types.Mesh]:
     """Those in edit mode, or else the active one."""
-    things = context.objects_in_mode_unique_data if context.mode == "EDIT_MESH" else [context.active_object]
-    return [thing.data for thing in things if thing.type == "MESH"]
+    edited = context.mode == "EDIT_MESH"
+    return [part.data for part in (context.objects_in_mode_unique_data if edited else [study.active_part(context)])]
 
 
 def _selections(context: bpy.types.Context) -> list[tuple[bpy.types.Mesh, np.ndarray]]:
@@ -29,6 +29,7 @@ def _selections(context: bpy.types.Context) -> list[tuple[bpy.types.Mesh, np.nda
 
 
 def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Mesh, np.ndarray]], uid: int) -> None:
+    view.settings_of(context.scene).showing = "PART"
     for mesh, faces in selections:
         if faces.any():
             tags.give(mesh, faces, uid)
@@ -36,19 +37,26 @@ def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Mesh, np.
     upkeep.refresh()
 
 
+def enter_edit_mode(context: bpy.types.Context, part: bpy.types.Object) -> None:
+    """With the part in sight and active, and no face selected."""
+    view.settings_of(context.scene).showing = "PART"
+    if part.mode != "EDIT":
+        context.view_layer.objects.active = part
+        bpy.ops.object.mode_set(mode="EDIT")
+    context.tool_settings.mesh_select_mode = (False, False, True)
+    bpy.ops.mesh.select_all(action="DESELECT")
+
+
 class _OnPart(TellsTrouble):
     bl_options = {"REGISTER", "UNDO"}
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
-        thing = context.active_object
-        if thing is None or thing.type != "MESH" or context.mode not in ("OBJECT", "EDIT_MESH"):
+        part = study.active_part(context)
+        if part is None or context.mode not in ("OBJECT", "EDIT_MESH"):
             cls.poll_message_set("Make the part the active object, in object or edit mode")
             return False
-        if view.part_of(thing) != thing:
-            cls.poll_message_set("This is a result: switch to the part to tag its faces")
-            return False
-        if thing.data.library is not None:
+        if part.data.library is not None:
             cls.poll_message_set("The part is linked from another file; tag it there")
             return False
         return True
@@ -101,11 +109,7 @@ class SelectTag(_OnTag, bpy.types.Operator):
 
     def act(self, context: bpy.types.Context) -> None:
         uid = tags.active(context.scene).uid
-        view.settings_of(context.scene).showing = "PART"
-        if context.mode != "EDIT_MESH":
-            bpy.ops.object.mode_set(mode="EDIT")
-        context.tool_settings.mesh_select_mode = (False, False, True)
-        bpy.ops.mesh.select_all(action="DESELECT")
+        enter_edit_mode(context, study.active_part(context))
         for mesh in _meshes(context):
             tags.select(mesh, tags.read(mesh) == uid)
 

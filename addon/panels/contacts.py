@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import bpy
 
-from .sidebar import Sidebar, fields, paragraph
+from .sidebar import Sidebar, fields, named, paragraph
 
 FIELDS = {
     "CONDUCTANCE": ("conductance",),
@@ -47,7 +47,11 @@ class ContactsPanel(Sidebar, bpy.types.Panel):
             return
         contact = settings.contacts[settings.active_contact]
         column = fields(layout)
-        for key in ("first", "second", "crossing", *FIELDS[contact.crossing], "gap"):
+        named(column, "Part").prop(contact, "first", text="")
+        named(column, "and").prop(contact, "second", text="")
+        named(column, "Crossing").prop(contact, "crossing", text="")
+        column.separator()
+        for key in (*FIELDS[contact.crossing], "gap"):
             column.prop(contact, key)
 
 

@@ -6,7 +6,7 @@ import bpy
 
 from .. import materials, study
 from ..properties import MaterialProperty
-from .sidebar import Sidebar, fields, paragraph
+from .sidebar import Sidebar, fields, named, pair, paragraph
 
 
 class _OfPart(Sidebar):
@@ -37,17 +37,14 @@ def _draw_conductivity(layout: bpy.types.UILayout, values: bpy.types.PropertyGro
     if values.directional:
         _draw_number(column, values.along_y, "Along y (W/mK)")
         _draw_number(column, values.along_z, "Along z (W/mK)")
-        column.prop(values, "axes", text="Axes of")
+        named(column, "Axes of").prop(values, "axes", text="")
     column.prop(values, "directional")
 
 
 def _draw_number(column: bpy.types.UILayout, item: MaterialProperty, text: str) -> None:
     if item.tabulated:
         span = f"{item.points[0].value:g} to {item.points[-1].value:g}" if item.points else "no rows yet"
-        row = column.split(factor=0.4)
-        row.alignment = "RIGHT"
-        row.label(text=text)
-        row.label(text=span)
+        pair(column, text, span)
     else:
         column.prop(item, "value", text=text)
 

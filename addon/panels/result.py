@@ -6,7 +6,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from ...solver.result import Summary
-from .. import study, view, words
+from .. import study, words
 from ..units import area_text, power_text, span_text, temperature_text
 from .sidebar import Sidebar, pair, paragraph
 
@@ -19,13 +19,13 @@ def present(context: bpy.types.Context) -> Summary | None:
         return None
 
 
-class _OfResult(Sidebar):
+class OfResult(Sidebar):
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
         return present(context) is not None
 
 
-class ResultPanel(_OfResult, bpy.types.Panel):
+class ResultPanel(OfResult, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_result"
     bl_label = "Temperatures"
 
@@ -44,15 +44,13 @@ class ResultPanel(_OfResult, bpy.types.Panel):
         _draw_balance(layout, summary)
         for warning in summary["warnings"]:
             paragraph(context, layout, warning, "ERROR")
-        cautions = layout.column()
-        cautions.active = False
         for caution in words.CAUTIONS:
-            paragraph(context, cautions, caution)
+            paragraph(context, layout, caution, "INFO")
 
 
 def _draw_row(context: bpy.types.Context, box: bpy.types.UILayout, name: str, row: dict) -> None:
     column = box.column(align=True)
-    pair(column, name, power_text(row["heat"]))
+    pair(column, name, heat_text(row["heat"]))
     if row["mean"] is None:
         column.label(text="covered by contacts")
         return
@@ -63,6 +61,11 @@ def _draw_row(context: bpy.types.Context, box: bpy.types.UILayout, name: str, ro
         pair(column, "Film", f"{row['film']:.3g} W/m²K")
 
 
+def heat_text(watts: float) -> str:
+    """As in "12 W in": heat into the part is positive, and a sign alone leaves the direction to be guessed."""
+    return f"{power_text(abs(watts))} {'in' if watts >= 0 else 'out'}"
+
+
 def _draw_balance(layout: bpy.types.UILayout, summary: Summary) -> None:
     balance = summary["balance"]
     column = layout.column(align=True)
@@ -70,7 +73,7 @@ def _draw_balance(layout: bpy.types.UILayout, summary: Summary) -> None:
     pair(column, "Heat out", power_text(-balance["out"]))
 
 
-class WaysPanel(_OfResult, bpy.types.Panel):
+class WaysPanel(OfResult, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_ways"
     bl_parent_id = "FLUXFACE_PT_result"
     bl_label = "Where the Heat Goes"
@@ -80,13 +83,4 @@ class WaysPanel(_OfResult, bpy.types.Panel):
             paragraph(context, self.layout, sentence)
 
 
-class LookPanel(_OfResult, bpy.types.Panel):
-    bl_idname = "FLUXFACE_PT_look"
-    bl_label = "Colours and Picture"
-
-    def draw(self, context: bpy.types.Context) -> None:
-        view.draw_settings(self.layout, context.scene)
-        self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
-
-
-register, unregister = bpy.utils.register_classes_factory((ResultPanel, WaysPanel, LookPanel))
+register, unregister = bpy.utils.register_classes_factory((ResultPanel, WaysPanel))

@@ -41,8 +41,14 @@ def pair(layout: bpy.types.UILayout, name: str, value: str, icon: str = "NONE") 
 
 
 def fields(layout: bpy.types.UILayout) -> bpy.types.UILayout:
-    """A column of fields with their names in front."""
-    column = layout.column()
-    column.use_property_split = True
+    """A column of fields with their names inside: in front of them there is no room for a name with its unit."""
+    column = layout.column(align=True)
     column.use_property_decorate = False
     return column
+
+
+def named(layout: bpy.types.UILayout, name: str) -> bpy.types.UILayout:
+    """A row with a name in front, for fields that cannot hold it."""
+    split = layout.split(factor=0.32)
+    split.label(text=name)
+    return split.row(align=True)

@@ -6,7 +6,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import study
-from .sidebar import Sidebar, fields, paragraph
+from .sidebar import Sidebar, fields, named, paragraph
 
 
 class StudyPanel(Sidebar, bpy.types.Panel):
@@ -15,8 +15,7 @@ class StudyPanel(Sidebar, bpy.types.Panel):
 
     def draw(self, context: bpy.types.Context) -> None:
         settings = context.scene.fluxface
-        column = fields(self.layout)
-        column.prop(settings, "collection", text="Collection")
+        named(self.layout, "Collection").prop(settings, "collection", text="")
         try:
             members = study.parts(context)
         except Trouble as trouble:
@@ -35,14 +34,16 @@ class AccuracyPanel(Sidebar, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         settings = context.scene.fluxface
         column = fields(self.layout)
-        column.prop(settings, "order")
-        column.prop(settings, "size")
-        if settings.size == 0.0:
-            column.label(text="0: chosen by the solver")
-        column.prop(settings, "max_nodes")
+        named(column, "Degrees").prop(context.scene.unit_settings, "temperature_unit", text="")
+        named(column, "Elements").prop(settings, "order", text="")
         column.separator()
-        column.prop(context.scene.unit_settings, "temperature_unit", text="Temperatures in")
-        column.prop(settings, "gravity", text="Gravity")
+        column.prop(settings, "size")
+        column.prop(settings, "max_nodes")
+        if settings.size == 0.0:
+            column.label(text="Mesh size 0: chosen by the solver")
+        column.separator()
+        column.label(text="Gravity points along")
+        column.row(align=True).prop(settings, "gravity", text="")
 
 
 register, unregister = bpy.utils.register_classes_factory((StudyPanel, AccuracyPanel))

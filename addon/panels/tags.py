@@ -12,7 +12,7 @@ from .. import study, tags, words
 from ..cases import FILM_NEEDS
 from ..properties import Terms
 from ..units import area_text, metres_per_unit
-from .sidebar import Sidebar, fields, paragraph
+from .sidebar import Sidebar, fields, named, paragraph
 
 
 def areas(context: bpy.types.Context) -> dict[int, float]:
@@ -33,15 +33,20 @@ class TagList(bpy.types.UIList):
     bl_idname = "FLUXFACE_UL_tags"
 
     def draw_item(self, context, layout, _settings, tag, _icon, _active, _property, _index) -> None:
-        split = layout.split(factor=0.5)
-        row = split.row(align=True)
+        row = layout.row()
         swatch = row.row()
-        swatch.ui_units_x = 0.7
+        swatch.ui_units_x = 0.6
         swatch.prop(tag, "colour", text="")
-        row.prop(tag, "name", text="", emboss=False)
+        lines = row.column(align=True)
+        split = lines.split(factor=0.6)
+        split.prop(tag, "name", text="", emboss=False)
         end = split.row()
         end.alignment = "RIGHT"
-        end.label(text=words.carries(context.scene, tag) or "insulated")
+        area = areas(context).get(tag.uid)
+        end.label(text=area_text(context.scene, area) if area else "no faces")
+        carried = lines.row()
+        carried.active = False
+        carried.label(text=words.carries(context.scene, tag) or "insulated")
 
 
 class TagsPanel(Sidebar, bpy.types.Panel):
@@ -63,9 +68,6 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         row.operator("fluxface.tag_give")
         row.operator("fluxface.tag_take")
         row.operator("fluxface.tag_select")
-        area = areas(context).get(tag.uid)
-        told = f"{area_text(context.scene, area)} on the part" if area else "no faces on the part yet"
-        layout.label(text=f"{tag.name}: {told}")
         draw_terms(context, layout, tag)
 
 
@@ -90,7 +92,9 @@ def draw_terms(context: bpy.types.Context, layout: bpy.types.UILayout, terms: Te
     for switch, draw in TERMS:
         column.prop(terms, switch)
         if getattr(terms, switch):
-            draw(context, fields(column), terms)
+            row = column.row()
+            row.separator(factor=0.5)
+            draw(context, fields(row), terms)
 
 
 def _draw_heat(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
@@ -102,11 +106,11 @@ def _draw_heat_flux(_context: bpy.types.Context, column: bpy.types.UILayout, ter
 
 
 def _draw_convection(_context: bpy.types.Context, column: bpy.types.UILayout, terms: Terms) -> None:
-    column.prop(terms, "film")
+    column.prop(terms, "film", text="")
     if terms.film == "COEFFICIENT":
-        column.prop(terms, "coefficient", text="W/m²K")
+        column.prop(terms, "coefficient", text="Film (W/m²K)")
     else:
-        column.prop(terms, "fluid")
+        named(column, "Fluid").prop(terms, "fluid", text="")
         for key in FILM_NEEDS.get(terms.film, ()):
             column.prop(terms, key)
     column.prop(terms, "ambient")

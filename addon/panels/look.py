@@ -1,0 +1,20 @@
+"""How the result is shown, and the picture of it."""
+
+from __future__ import annotations
+
+import bpy
+
+from .. import view
+from .result import OfResult
+
+
+class LookPanel(OfResult, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_look"
+    bl_label = "View and Picture"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        view.draw_settings(self.layout, context.scene)
+        self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
+
+
+register, unregister = bpy.utils.register_classes_factory((LookPanel,))
