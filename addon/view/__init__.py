@@ -8,11 +8,13 @@ from pathlib import Path
 import bpy
 
 from . import settings
+from .picture import picture_frame, render_picture
 from .result_object import build_results, part_of, remove_result, result_of
 from .settings import draw_settings, material_of, refresh, settings_of
 
 __all__ = [
-    "clear", "draw_settings", "has_result", "part_of", "register", "show", "unregister",
+    "clear", "draw_settings", "has_result", "part_of", "picture_frame", "register", "render_picture", "show",
+    "unregister",
 ]  # fmt: skip
 
 

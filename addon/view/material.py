@@ -1,4 +1,4 @@
-"""The material that shows temperatures: emission in the scale's colour of the ``temperature`` attribute."""
+"""The material that shows temperatures: emission in the scale's colour of the kelvin on each vertex."""
 
 from __future__ import annotations
 
@@ -7,7 +7,12 @@ import bpy
 from .colours import ColourMap
 from .scale import Scale
 
-TEMPERATURE = "temperature"
+# The renderer takes an attribute named ``temperature`` for that of a volume, and finds none on a surface; the material
+# therefore reads the same kelvin under a name of their own.
+SHOWN = "shown_temperature"
+
+# Linear light, 0..1.
+Colour = tuple[float, float, float]
 
 # What light and mirrors see of a part in place of its colours, so that the colours do not glow on what stands by.
 SEEN_BY_LIGHT = (0.2, 0.2, 0.2, 1.0)
@@ -21,7 +26,7 @@ def paint(material: bpy.types.Material, scale: Scale) -> None:
     """
     tree = _emptied(material)
     temperature = tree.nodes.new("ShaderNodeAttribute")
-    temperature.attribute_name = TEMPERATURE
+    temperature.attribute_name = SHOWN
     fraction = tree.nodes.new("ShaderNodeMapRange")
     fraction.inputs["From Min"].default_value = scale.low
     fraction.inputs["From Max"].default_value = scale.high
@@ -29,24 +34,61 @@ def paint(material: bpy.types.Material, scale: Scale) -> None:
     _fill(ramp.color_ramp, scale.colour_map)
     tree.links.new(temperature.outputs["Fac"], fraction.inputs["Value"])
     tree.links.new(fraction.outputs["Result"], ramp.inputs["Fac"])
-    _show_to_camera(tree, ramp.outputs["Color"])
+    _show_to_camera(material, ramp.outputs["Color"])
 
 
-def paint_plain(material: bpy.types.Material, colour: tuple[float, float, float]) -> None:
-    """Make ``material`` one colour (linear light) whatever the light."""
+def paint_plain(material: bpy.types.Material, colour: Colour) -> None:
+    """Make ``material`` one colour whatever the light."""
     tree = _emptied(material)
     plain = tree.nodes.new("ShaderNodeRGB")
     plain.outputs[0].default_value = (*colour, 1.0)
-    _show_to_camera(tree, plain.outputs[0])
+    _show_to_camera(material, plain.outputs[0])
 
 
-def _emptied(material: bpy.types.Material) -> bpy.types.NodeTree:
-    if not material.use_nodes:  # always on in later hosts, where setting it is deprecated
-        material.use_nodes = True
-    # Else every coloured face would be sampled as a lamp.
-    material.cycles.emission_sampling = "NONE"
-    material.node_tree.nodes.clear()
-    return material.node_tree
+def paint_matt(material: bpy.types.Material, colour: Colour) -> None:
+    """Make ``material`` matt, and just of ``colour`` where an even light of strength one reaches it unhindered."""
+    tree = _emptied(material)
+    body = tree.nodes.new("ShaderNodeBsdfDiffuse")
+    body.inputs["Color"].default_value = (*colour, 1.0)
+    output = tree.nodes.new("ShaderNodeOutputMaterial")
+    tree.links.new(body.outputs[0], output.inputs["Surface"])
+
+
+def light_evenly(world: bpy.types.World, backdrop: Colour) -> None:
+    """Make ``world`` give the same light from everywhere, of strength one, and look like ``backdrop``."""
+    tree = _emptied(world)
+    seen_by = tree.nodes.new("ShaderNodeLightPath")
+    either = tree.nodes.new("ShaderNodeMix")
+    either.data_type = "RGBA"
+    light, seen = (socket for socket in either.inputs if socket.type == "RGBA")
+    light.default_value, seen.default_value = (1.0, 1.0, 1.0, 1.0), (*backdrop, 1.0)
+    background = tree.nodes.new("ShaderNodeBackground")
+    output = tree.nodes.new("ShaderNodeOutputWorld")
+    tree.links.new(seen_by.outputs["Is Camera Ray"], either.inputs[0])
+    mixed = next(socket for socket in either.outputs if socket.type == "RGBA")
+    tree.links.new(mixed, background.inputs["Color"])
+    tree.links.new(background.outputs[0], output.inputs["Surface"])
+    either.name = "seen"
+    # Aimed sampling of an even light would only add noise.
+    world.cycles.sampling_method = "NONE"
+
+
+def show_image(world: bpy.types.World, image: bpy.types.Image) -> None:
+    """Make an even light look like ``image``, spread over the whole picture."""
+    tree = world.node_tree
+    pixel = tree.nodes.new("ShaderNodeTexCoord")
+    texture = tree.nodes.new("ShaderNodeTexImage")
+    texture.image, texture.extension = image, "EXTEND"
+    seen = [socket for socket in tree.nodes["seen"].inputs if socket.type == "RGBA"][1]
+    tree.links.new(pixel.outputs["Window"], texture.inputs["Vector"])
+    tree.links.new(texture.outputs["Color"], seen)
+
+
+def _emptied(owner: bpy.types.Material | bpy.types.World) -> bpy.types.NodeTree:
+    if not owner.use_nodes:  # always on in later hosts, where setting it is deprecated
+        owner.use_nodes = True
+    owner.node_tree.nodes.clear()
+    return owner.node_tree
 
 
 def _fill(ramp: bpy.types.ColorRamp, colour_map: ColourMap) -> None:
@@ -60,7 +102,10 @@ def _fill(ramp: bpy.types.ColorRamp, colour_map: ColourMap) -> None:
         ramp.elements.new(index / last).color = (*colour, 1.0)
 
 
-def _show_to_camera(tree: bpy.types.NodeTree, colour: bpy.types.NodeSocket) -> None:
+def _show_to_camera(material: bpy.types.Material, colour: bpy.types.NodeSocket) -> None:
+    tree = material.node_tree
+    # Else every coloured face would be sampled as a lamp.
+    material.cycles.emission_sampling = "NONE"
     emission = tree.nodes.new("ShaderNodeEmission")
     body = tree.nodes.new("ShaderNodeBsdfDiffuse")
     body.inputs["Color"].default_value = SEEN_BY_LIGHT

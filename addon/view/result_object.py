@@ -11,10 +11,11 @@ import numpy as np
 from ...solver.errors import Trouble
 from ...solver.result import Field, read_field
 from ..units import metres_per_unit
-from .material import TEMPERATURE
+from .material import SHOWN
 from .scale import Scale
 
 MARK = "fluxface_result"
+TEMPERATURE = "temperature"
 COLOUR = "temperature_colour"
 
 # A 6-node triangle (mid-sides 01 12 20) as four, so that a temperature quadratic over it is seen as such.
@@ -82,7 +83,8 @@ def _build_result(
     if np.linalg.det(matrix[:3, :3]) < 0:  # a mirrored part turns its faces over, and these are outward in the world
         triangles = triangles[:, ::-1]
     mesh = mesh_of(f"{part.name} temperature", local, triangles)
-    mesh.attributes.new(TEMPERATURE, "FLOAT", "POINT").data.foreach_set("value", temperature.astype(np.float32))
+    for name in (TEMPERATURE, SHOWN):
+        write_kelvin(mesh, name, temperature)
     mesh.materials.append(material)
     result = result_of(part) or _new_result(part, mesh)
     stale, result.data = result.data, mesh
@@ -101,6 +103,11 @@ def mesh_of(name: str, places: np.ndarray, triangles: np.ndarray) -> bpy.types.M
     mesh.polygons.foreach_set("loop_start", np.arange(0, triangles.size, 3, dtype=np.int32))
     mesh.update(calc_edges=True)
     return mesh
+
+
+def write_kelvin(mesh: bpy.types.Mesh, name: str, temperature: np.ndarray) -> None:
+    """Give the mesh's vertices temperatures (P,) in kelvin, as the attribute ``name``."""
+    mesh.attributes.new(name, "FLOAT", "POINT").data.foreach_set("value", temperature.astype(np.float32))
 
 
 def _new_result(part: bpy.types.Object, mesh: bpy.types.Mesh) -> bpy.types.Object:

@@ -1,0 +1,134 @@
+"""The picture: parts in their temperatures, whose every coloured pixel can be read back through the legend.
+
+Surfaces show the plain colours of the legend. Form is given by what reads as something else: edges and outlines in ink,
+isotherms at the legend's ticks, and the soft shadow that the parts cast on the ground.
+"""
+
+from __future__ import annotations
+
+import shutil
+import tempfile
+from collections.abc import Sequence
+from dataclasses import replace
+from pathlib import Path
+
+import bpy
+import numpy as np
+
+from ...solver.errors import Trouble
+from .colours import ColourMap, linear_from_srgb
+from .framing import Frame, framed, looking
+from .legend import Legend
+from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
+from .lines import drawn_edges, isotherms, outside, ribbons
+from .material import SHOWN, Colour, paint
+from .result_object import result_of, write_kelvin
+from .settings import material_of, refresh, scale_of
+from .skin import Skin, hottest_in_view, skin_of
+from .studio import Studio, opened
+
+# From the parts to the eye when the scene has no camera: before them, to the right and above.
+THREE_QUARTER = (0.62, -0.90, 0.55)
+
+# Seen from lower than this (the sine of the angle) there is no ground to see.
+LOWEST = 0.1
+
+# Line widths in hundredths of the picture's shorter side.
+OUTLINE, EDGE, ISOTHERM = 0.2, 0.15, 0.1
+
+
+def _linear(hexadecimal: str) -> Colour:
+    return tuple(linear_from_srgb(np.frombuffer(bytes.fromhex(hexadecimal), np.uint8) / 255.0).tolist())
+
+
+BACKDROP = _linear("efede9")
+INK = _linear("1e2228")
+
+
+def render_picture(
+    scene: bpy.types.Scene,
+    parts: Sequence[bpy.types.Object],
+    path: Path,
+    *,
+    engine: str = "CYCLES",
+    size: tuple[int, int] = (1600, 1000),
+) -> Path:
+    """Render the results of ``parts`` with their legend as a PNG of ``size`` pixels at ``path``, and return the path.
+
+    The view is that of the scene's camera, or three-quarter where there is none, moved so that the parts fill it. The
+    picture is taken in a scene of its own, and nothing of the designer's is touched.
+    Raises Trouble when there is no result to show or the picture cannot be rendered or written.
+    """
+    results = _results(parts)
+    refresh(scene)
+    skin, frame, coloured = skin_of(results), picture_frame(scene, parts, size), material_of(scene)
+    marked = hottest_in_view(skin, frame)
+    in_view, ringed = (None, None) if marked is None else (skin.temperature[marked], frame.pixels(skin.places[marked]))
+    scale = scale_of(scene)
+    legend = Legend(scale, scale.ticks(), skin.temperature.min(), skin.temperature.max(), in_view)
+    with tempfile.TemporaryDirectory() as folder, opened(frame, engine, BACKDROP) as studio:
+        for result in results:
+            studio.place(result.data, studio.scaled @ result.matrix_world, coloured)
+        if frame.axes[2, 2] > LOWEST:
+            studio.cast_shadow(skin.places[:, 2].min(), BACKDROP, Path(folder))
+        _draw_lines(studio, skin, legend, ringed)
+        write_legend(studio, ", ".join(part.name for part in parts), legend, coloured, INK)
+        if ringed is not None:
+            draw_ring(studio, ringed, INK)
+        made = Path(folder) / "picture.png"
+        studio.render(made)
+        return _moved(made, Path(path))
+
+
+def picture_frame(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], size: tuple[int, int]) -> Frame:
+    """The frame that :func:`render_picture` takes: which pixel shows which place of the world."""
+    towards_eye = scene.camera.matrix_world.col[2][:3] if scene.camera else THREE_QUARTER
+    return framed(skin_of(_results(parts)).places, looking(np.array(towards_eye)), size, window_for_parts(size))
+
+
+def _results(parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:
+    lacking = [part.name for part in parts if result_of(part) is None]
+    if lacking or not parts:
+        raise Trouble("case", f"There is no result to picture of {', '.join(lacking) or 'no part'}.", "Run first.")
+    return [result_of(part) for part in parts]
+
+
+def _draw_lines(studio: Studio, skin: Skin, legend: Legend, ringed: np.ndarray | None) -> None:
+    """Outlines, edges and isotherms; none of them in the ring about the pixel ``ringed`` (2,)."""
+    creases, outlines = drawn_edges(skin.places, skin.triangles, studio.frame.eye)
+    levels = [tick.temperature for tick in legend.ticks]
+    curves, at = isotherms(skin.places, skin.triangles, skin.temperature, levels)
+    # Inked over the colours in a darker or lighter shade of them, so that lines are seen on all of them.
+    shades = studio.new_material()
+    paint(shades, replace(legend.scale, colour_map=inked(legend.scale.colour_map)))
+    step = min(studio.frame.size) / 100.0
+    for segments, temperature, width, material in (
+        (skin.places[outlines], skin.temperature[outlines], OUTLINE, studio.ink(INK)),
+        (skin.places[creases], skin.temperature[creases], EDGE, shades),
+        (curves, np.stack([at, at], axis=1), ISOTHERM, shades),
+    ):
+        if ringed is not None:
+            segments, which = outside(segments, studio.frame, ringed, RING * step)
+            temperature = temperature[which]
+        places, triangles = ribbons(segments, studio.frame, width * step)
+        mesh = studio.draw(places, triangles, studio.scaled, material)
+        write_kelvin(mesh, SHOWN, np.repeat(temperature.mean(axis=1), 4))
+
+
+def inked(colour_map: ColourMap) -> ColourMap:
+    """The map's colours, dark ones lightened and light ones darkened."""
+    stops = colour_map.stops
+    luminance = stops @ (0.2126, 0.7152, 0.0722)
+    lighter, darker = stops + 0.25 * (1 - stops), 0.32 * stops
+    return replace(colour_map, stops=np.where(luminance[:, None] < 0.10, lighter, darker))
+
+
+def _moved(made: Path, path: Path) -> Path:
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True)
+        shutil.move(made, path)
+    except OSError as error:
+        raise Trouble(
+            "case", f"The picture cannot be written to {path}: {error.strerror}.", "Choose another place for it."
+        ) from error
+    return path

@@ -1,0 +1,177 @@
+"""The studio: a scene of its own for one picture, which leaves nothing behind."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass, field
+from pathlib import Path
+
+import bpy
+import numpy as np
+from mathutils import Matrix
+
+from .framing import Frame
+from .material import Colour, light_evenly, paint_matt, paint_plain, show_image
+from .result_object import mesh_of
+
+# Enough for smooth edges of lines and letters; within plain surfaces, which need few, sampling stops by itself.
+SAMPLES, LEAST_SAMPLES, NOISE = 32, 6, 0.01
+
+# The shadow is soft: it is rendered coarser and smoothed, which surfaces whose colour is measured must not be.
+SHADOW_SAMPLES, SHADOW_PERCENTAGE = 32, 30
+
+# Of the eye's distance to what is seen: the pane that holds the legend, and the reach of the ground.
+PANE = 0.1
+GROUND = 8.0
+
+
+@dataclass
+class Studio:
+    """scene: where the picture is taken. scaled: world to studio, so that parts of every size are lit and cut alike.
+
+    made: what has been made for it and goes when it is closed.
+    """
+
+    scene: bpy.types.Scene
+    frame: Frame
+    scaled: Matrix
+    made: list[bpy.types.ID] = field(default_factory=list)
+
+    @property
+    def pane(self) -> Matrix:
+        """From pixels to the studio, on a pane that nothing stands before."""
+        return self.scaled @ Matrix(self.frame.pane(PANE * self.frame.distance).tolist())
+
+    def keep(self, made: bpy.types.ID) -> bpy.types.ID:
+        self.made.append(made)
+        return made
+
+    def new_material(self) -> bpy.types.Material:
+        return self.keep(bpy.data.materials.new("studio"))
+
+    def ink(self, colour: Colour) -> bpy.types.Material:
+        material = self.new_material()
+        paint_plain(material, colour)
+        return material
+
+    def place(self, data: bpy.types.ID, matrix: Matrix, material: bpy.types.Material) -> bpy.types.Object:
+        """An object of ``data`` at ``matrix`` (in the studio's measure), seen in ``material``."""
+        object_ = self.keep(bpy.data.objects.new("studio", data))
+        object_.matrix_world = matrix
+        self.scene.collection.objects.link(object_)
+        if not data.materials:
+            data.materials.append(material)
+        object_.material_slots[0].link = "OBJECT"
+        object_.material_slots[0].material = material
+        return object_
+
+    def draw(
+        self, places: np.ndarray, triangles: np.ndarray, matrix: Matrix, material: bpy.types.Material
+    ) -> bpy.types.Mesh:
+        """Triangles (T, 3) of ``places`` (P, 3) that are seen and cast no shadow."""
+        mesh = self.keep(mesh_of("studio", places, triangles))
+        _cast_no_shadow(self.place(mesh, matrix, material))
+        return mesh
+
+    def write(
+        self, text: str, pixel: tuple[float, float], size: float, material: bpy.types.Material, widest: float
+    ) -> None:
+        """A line of text from ``pixel`` on, ``size`` pixels high, smaller where it would be wider than ``widest``."""
+        curve = self.keep(bpy.data.curves.new("studio", "FONT"))
+        curve.body, curve.size = text, size
+        written = self.place(curve, self.pane @ Matrix.Translation((*pixel, 0.0)), material)
+        _cast_no_shadow(written)
+        self.scene.view_layers[0].update()
+        curve.size *= min(1.0, widest / max(max(corner[0] for corner in written.bound_box), 1e-9))
+
+    def cast_shadow(self, height: float, colour: Colour, folder: Path) -> None:
+        """Set what stands here on a ground at world ``height``: a backdrop of ``colour`` that holds the shadow.
+
+        The backdrop is kept in ``folder`` until the studio is closed.
+        """
+        standing = list(self.scene.objects)
+        ground = self._lay_ground(height, colour)
+        render, cycles = self.scene.render, self.scene.cycles
+        for object_ in standing:
+            object_.visible_camera = False
+        cycles.samples, cycles.use_denoising, render.resolution_percentage = SHADOW_SAMPLES, True, SHADOW_PERCENTAGE
+        render.image_settings.file_format = "OPEN_EXR"
+        self.render(folder / "shadow.exr")
+        render.image_settings.file_format = "PNG"
+        cycles.samples, cycles.use_denoising, render.resolution_percentage = SAMPLES, False, 100
+        for object_ in standing:
+            object_.visible_camera = True
+        ground.hide_render = True
+        show_image(self.scene.world, self.keep(bpy.data.images.load(str(folder / "shadow.exr"))))
+
+    def _lay_ground(self, height: float, colour: Colour) -> bpy.types.Object:
+        """Matt and without end, so far as the eye can tell; of ``colour`` where no shadow falls."""
+        reach = GROUND * self.frame.distance
+        (x, y), corners = self.frame.eye[:2], ((-1, -1), (1, -1), (1, 1), (-1, 1))
+        matt = self.new_material()
+        paint_matt(matt, colour)
+        places = np.array([(x + reach * i, y + reach * j, height) for i, j in corners])
+        mesh = self.keep(mesh_of("studio", places, np.array([[0, 1, 2], [0, 2, 3]])))
+        return self.place(mesh, self.scaled, matt)
+
+    def render(self, path: Path) -> None:
+        self.scene.render.filepath = str(path)
+        bpy.ops.render.render(write_still=True, scene=self.scene.name)
+
+
+def _cast_no_shadow(object_: bpy.types.Object) -> None:
+    object_.visible_diffuse = object_.visible_glossy = object_.visible_shadow = False
+
+
+@contextmanager
+def opened(frame: Frame, engine: str, backdrop: Colour) -> Iterator[Studio]:
+    """A studio with its camera and even light, gone again afterwards, whatever happens in it."""
+    size = 1.0 / frame.distance
+    known_fonts = set(bpy.data.fonts)
+    scaled = Matrix.Scale(size, 4) @ Matrix.Translation((-frame.eye).tolist())
+    studio = Studio(bpy.data.scenes.new("studio"), frame, scaled)
+    try:
+        _set_up(studio, engine, backdrop)
+        yield studio
+    finally:
+        bpy.data.scenes.remove(studio.scene)
+        bpy.data.batch_remove(studio.made)
+        # The plain typeface comes with the first text.
+        bpy.data.batch_remove([font for font in bpy.data.fonts if font not in known_fonts])
+
+
+def _set_up(studio: Studio, engine: str, backdrop: Colour) -> None:
+    scene, frame = studio.scene, studio.frame
+    width, height = frame.size
+    camera = studio.keep(bpy.data.cameras.new("studio"))
+    camera.sensor_fit, camera.sensor_width = "HORIZONTAL", 36.0
+    camera.lens = camera.sensor_width * frame.focal / width
+    camera.shift_x, camera.shift_y = (width / 2 - frame.middle[0]) / width, (height / 2 - frame.middle[1]) / width
+    camera.clip_start, camera.clip_end = 0.5 * PANE, 4.0 * GROUND
+    scene.camera = studio.keep(bpy.data.objects.new("studio", camera))
+    scene.camera.matrix_world = Matrix(frame.axes.T.tolist()).to_4x4()
+    scene.collection.objects.link(scene.camera)
+
+    scene.world = studio.keep(bpy.data.worlds.new("studio"))
+    light_evenly(scene.world, backdrop)
+
+    render = scene.render
+    render.engine = engine
+    render.resolution_x, render.resolution_y, render.resolution_percentage = width, height, 100
+    render.use_compositing = render.use_sequencer = False
+    render.use_file_extension = False
+    render.dither_intensity = 0.0
+    # What a file tells of where and when it was made is the designer's to tell.
+    for told in ("camera", "date", "filename", "frame", "hostname", "render_time", "scene", "time"):
+        setattr(render, f"use_stamp_{told}", False)
+    render.image_settings.file_format, render.image_settings.color_mode = "PNG", "RGB"
+    scene.display_settings.display_device = "sRGB"
+    scene.view_settings.view_transform, scene.view_settings.look = "Standard", "None"
+    scene.view_settings.exposure, scene.view_settings.gamma = 0.0, 1.0
+
+    cycles = scene.cycles
+    cycles.device, cycles.use_denoising = "CPU", False
+    cycles.samples, cycles.use_adaptive_sampling = SAMPLES, True
+    cycles.adaptive_min_samples, cycles.adaptive_threshold = LEAST_SAMPLES, NOISE
+    cycles.max_bounces, cycles.diffuse_bounces = 2, 1
