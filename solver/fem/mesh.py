@@ -64,6 +64,15 @@ def quadratic(mesh: Mesh) -> Mesh:
     )
 
 
+def face_keys(faces: np.ndarray, nodes: int) -> np.ndarray:
+    """(F,) one number for each triangle (F, 3) of node numbers below ``nodes``, whatever the order of its corners."""
+    a, b, c = np.sort(faces, axis=1).astype(np.int64).T
+    if nodes < 2_000_000:  # the cube of it fits in 63 bits
+        return (a * nodes + b) * nodes + c
+    _, pair = np.unique(a * nodes + b, return_inverse=True)
+    return pair * np.int64(nodes) + c
+
+
 def smallest_dihedral(mesh: Mesh) -> float:
     """Degrees: the smallest angle between two faces of any tetrahedron."""
     corners = mesh.nodes[mesh.cells[:, :4]]

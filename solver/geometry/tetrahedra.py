@@ -15,7 +15,7 @@ import numpy as np
 
 from ..case import Accuracy, Surface
 from ..errors import Trouble
-from ..fem.mesh import CELL_FACES, Mesh
+from ..fem.mesh import CELL_FACES, Mesh, face_keys
 from .surface import areas, centred, enclosed_volume, triangle_corners, winding_numbers
 
 REGULAR = 1.0 / (6.0 * np.sqrt(2.0))  # volume of the regular tetrahedron of unit edge
@@ -148,22 +148,13 @@ def _within(points: np.ndarray, cells: np.ndarray, regions: np.ndarray, corners:
 def outer_faces(cells: np.ndarray) -> np.ndarray:
     """(B, 3) the outward faces that belong to one cell alone; cells (M, 4) of positive volume."""
     faces = cells[:, CELL_FACES].reshape(-1, 3)
-    _, first, uses = np.unique(_face_keys(faces, cells.max() + 1), return_index=True, return_counts=True)
+    _, first, uses = np.unique(face_keys(faces, cells.max() + 1), return_index=True, return_counts=True)
     return faces[first[uses == 1]]
-
-
-def _face_keys(faces: np.ndarray, nodes: int) -> np.ndarray:
-    """One number a triangle, whatever the order of its corners."""
-    a, b, c = np.sort(faces, axis=1).astype(np.int64).T
-    if nodes < 2_000_000:  # the cube of it fits in 63 bits
-        return (a * nodes + b) * nodes + c
-    _, pair = np.unique(a * nodes + b, return_inverse=True)
-    return pair * np.int64(nodes) + c
 
 
 def _markers_of(boundary: np.ndarray, faces: np.ndarray, markers: np.ndarray, nodes: int) -> np.ndarray:
     """(B,) the facet marker of each boundary triangle, out of TetGen's marked faces."""
-    keys = _face_keys(np.concatenate([boundary, faces]), nodes)
+    keys = face_keys(np.concatenate([boundary, faces]), nodes)
     wanted, known = keys[: len(boundary)], keys[len(boundary) :]
     order = np.argsort(known)
     at = order[np.clip(np.searchsorted(known, wanted, sorter=order), 0, len(known) - 1)]

@@ -14,13 +14,13 @@ from scipy.sparse import csr_array, diags_array
 from ..case import Case, Contact
 from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, points_at
-from ..fem.mesh import CELL_FACES, Mesh
+from ..fem.mesh import CELL_FACES, Mesh, face_keys
 from ..fem.reference import quadrature, shape_gradients
 from ..fem.volume import Geometry
 from ..geometry.overlap import Overlap, covered_area, default_gap, overlap
 from ..geometry.surface import area_vectors, areas
-from ..materials import Material, Table
-from .conduction import is_constant, principal_axes, principal_values
+from ..materials import Material, Property, Table
+from .conduction import principal_axes
 from .laws import STEP
 
 # A face is wholly in contact when this share of it is.
@@ -148,47 +148,65 @@ class Bond:
     Nitsche, Abh. Math. Sem. Univ. Hamburg 36 (1971) 9; weights: Ern, Stephansen & Zunino, IMA J. Numer. Anal. 29
     (2009) 235, which keep the form sound for conductivities as unlike as insulation and metal.
 
-    slopes: for each side and principal direction a (P, N): its share times (n . a) (a . grad), n out of the first part.
-    adjoint: (P, N) the weighted normal flux at the largest conductivities. penalty: (P,) W/(m2 K).
+    ways: how the flux of both sides crosses. adjoint: (P, N) the weighted normal flux at the largest conductivities.
+    penalty: (P,) W/(m2 K).
     """
 
     name: str
     joint: Joint
-    materials: tuple[Material, Material]
-    slopes: tuple[tuple[csr_array, ...], ...]
+    ways: tuple[Way, ...]
     adjoint: csr_array
     penalty: np.ndarray
 
     @property
     def is_constant(self) -> bool:
-        return all(is_constant(material) for material in self.materials)
+        return not any(isinstance(way.conductivity, Table) for way in self.ways)
 
-    def mean_flux(self, temperature: np.ndarray) -> tuple[np.ndarray, csr_array]:
-        """The weighted mean of K grad T . n, n out of the first part: (P,) W/m2 and its slope (P, N)."""
-        flux, tangent = np.zeros(len(self.penalty)), csr_array(self.adjoint.shape)
-        for side, material, slopes in zip(
-            (self.joint.first, self.joint.second), self.materials, self.slopes, strict=True
-        ):
-            stepped = principal_values(material, side.points.shape @ temperature + 1j * STEP)
-            for values, slope in zip(stepped, slopes, strict=True):
-                gradient = slope @ temperature
-                flux += values.real * gradient
-                tangent = tangent + diags_array(values.real) @ slope
-                tangent = tangent + diags_array(values.imag / STEP * gradient) @ side.points.shape
-        return flux, csr_array(tangent)
+    def mean_flux(self, temperature: np.ndarray) -> np.ndarray:
+        """(P,) W/m2: the weighted mean of K grad T . n, n out of the first part."""
+        return sum((way.flux(temperature) for way in self.ways), np.zeros(len(self.penalty)))
 
     def residual_and_tangent(self, temperature: np.ndarray) -> tuple[np.ndarray, csr_array]:
         """(N,) W and (N, N) W/K; temperature (N,) K."""
-        flux, slope = self.mean_flux(temperature)
         jump, weight = self.joint.jump, self.joint.first.points.weight
         across = jump @ temperature
-        residual = jump.T @ (weight * (self.penalty * across - flux)) - self.adjoint.T @ (weight * across)
+        residual = jump.T @ (weight * (self.penalty * across - self.mean_flux(temperature)))
+        slope = sum((way.slope(temperature) for way in self.ways), csr_array(jump.shape))
         tangent = jump.T @ (diags_array(weight * self.penalty) @ jump - diags_array(weight) @ slope)
-        return residual, csr_array(tangent - self.adjoint.T @ diags_array(weight) @ jump)
+        return (
+            residual - self.adjoint.T @ (weight * across),
+            csr_array(tangent - self.adjoint.T @ diags_array(weight) @ jump),
+        )
 
     def heat_across(self, temperature: np.ndarray) -> np.ndarray:
         """(P,) W/m2 from the first part into the second."""
-        return self.penalty * (self.joint.jump @ temperature) - self.mean_flux(temperature)[0]
+        return self.penalty * (self.joint.jump @ temperature) - self.mean_flux(temperature)
+
+
+@dataclass(frozen=True)
+class Way:
+    """One side's share of a bond's flux, along one principal direction a of its material or, if isotropic, any.
+
+    gradient: (P, N) the side's share times (n . a) (a . grad), or n . grad. shape: (P, N) of the side's points.
+    """
+
+    conductivity: Property
+    gradient: csr_array
+    shape: csr_array
+
+    def flux(self, temperature: np.ndarray) -> np.ndarray:
+        """(P,) W/m2; temperature (N,) K."""
+        if isinstance(self.conductivity, Table):
+            return self.conductivity(self.shape @ temperature) * (self.gradient @ temperature)
+        return self.conductivity * (self.gradient @ temperature)
+
+    def slope(self, temperature: np.ndarray) -> csr_array:
+        """(P, N) the derivative of the flux by the nodal temperatures."""
+        if isinstance(self.conductivity, Table):
+            stepped = self.conductivity(self.shape @ temperature + 1j * STEP)
+            drift = stepped.imag / STEP * (self.gradient @ temperature)
+            return csr_array(diags_array(stepped.real) @ self.gradient + diags_array(drift) @ self.shape)
+        return self.conductivity * self.gradient
 
 
 def crossing(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Conductance | Bond:
@@ -200,55 +218,56 @@ def crossing(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Conductan
 
 def _bond(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Bond:
     sides = (joint.first, joint.second)
-    first, second = (case.parts[side.part] for side in sides)
+    materials = [case.parts[side.part].material for side in sides]
     cells = boundary_cells(mesh)
     # The constant of the trace inequality for polynomials on a simplex, of one degree less for gradients:
     # Warburton & Hesthaven, Comput. Methods Appl. Mech. Eng. 192 (2003) 2765.
     trace = mesh.order * (mesh.order + 2) / 3.0
-    largest = [np.array(_largest(part.material)) for part in (first, second)]
     stiff = [
-        trace * _along(side.normal, part.material, values) * _area_per_volume(mesh, shape, side, cells)
-        for side, part, values in zip(sides, (first, second), largest, strict=True)
+        trace * _across(side.normal, material) * _area_per_volume(mesh, shape, side, cells)
+        for side, material in zip(sides, materials, strict=True)
     ]
     total = stiff[0] + stiff[1]
-    slopes = tuple(
-        tuple(
-            csr_array(diags_array(share / total) @ row)
-            for row in _normal_slopes(mesh, shape, side, part.material, cells)
-        )
-        for side, part, share in zip(sides, (first, second), reversed(stiff), strict=True)
+    ways = tuple(
+        Way(conductivity, csr_array(diags_array(share / total) @ gradient), side.points.shape)
+        for side, material, share in zip(sides, materials, reversed(stiff), strict=True)
+        for conductivity, gradient in _normal_gradients(mesh, shape, side, material, cells)
     )
-    adjoint = sum(values[axis] * slopes[side][axis] for side, values in enumerate(largest) for axis in range(3))
     return Bond(
-        name=f"the bond of '{first.name}' and '{second.name}'",
+        name="the bond of " + " and ".join(f"'{case.parts[side.part].name}'" for side in sides),
         joint=joint,
-        materials=(first.material, second.material),
-        slopes=slopes,
-        adjoint=csr_array(adjoint),
+        ways=ways,
+        adjoint=sum((_largest(way.conductivity) * way.gradient for way in ways), csr_array(joint.jump.shape)),
         penalty=BOND_PENALTY * stiff[0] * stiff[1] / total,
     )
 
 
-def _largest(material: Material) -> list[float]:
-    """W/(m K) along the three principal axes, the largest of each table."""
-    values = [max(along.value) if isinstance(along, Table) else along for along in material.conductivity]
-    return values * (3 // len(values))
+def _largest(conductivity: Property) -> float:
+    """W/(m K), the largest of a table."""
+    return max(conductivity.value) if isinstance(conductivity, Table) else conductivity
 
 
-def _along(normal: np.ndarray, material: Material, values: np.ndarray) -> np.ndarray:
-    """(P,) W/(m K): n . K n."""
-    return (normal @ principal_axes(material).T) ** 2 @ values
+def _directions(normal: np.ndarray, material: Material) -> list[np.ndarray]:
+    """(P, 3) the part of each normal along each principal direction; the normals themselves if there are none."""
+    if len(material.conductivity) == 1:
+        return [normal]
+    return [np.outer(normal @ axis, axis) for axis in principal_axes(material)]
+
+
+def _across(normal: np.ndarray, material: Material) -> np.ndarray:
+    """(P,) W/(m K): n . K n at the largest conductivities."""
+    largest = [_largest(conductivity) for conductivity in material.conductivity]
+    shares = [(along**2).sum(axis=1) for along in _directions(normal, material)]
+    return np.array(largest) @ shares
 
 
 def boundary_cells(mesh: Mesh) -> np.ndarray:
     """(B,) the cell behind each boundary triangle."""
-    faces = np.sort(mesh.cells[:, CELL_FACES].reshape(-1, 3), axis=1)
-    wanted = np.sort(mesh.boundary[:, :3], axis=1)
-    _, numbers = np.unique(np.concatenate([faces, wanted]), axis=0, return_inverse=True)
-    numbers = numbers.reshape(-1)
-    cell_of = np.empty(numbers.max() + 1, np.int64)
-    cell_of[numbers[: len(faces)]] = np.repeat(np.arange(len(mesh.cells)), 4)
-    return cell_of[numbers[len(faces) :]]
+    faces = mesh.cells[:, CELL_FACES].reshape(-1, 3)
+    keys = face_keys(np.concatenate([faces, mesh.boundary[:, :3]]), len(mesh.nodes))
+    known, wanted = keys[: len(faces)], keys[len(faces) :]
+    order = np.argsort(known)
+    return order[np.searchsorted(known, wanted, sorter=order)] // len(CELL_FACES)
 
 
 def _area_per_volume(mesh: Mesh, shape: Geometry, side: Side, cells: np.ndarray) -> np.ndarray:
@@ -256,26 +275,20 @@ def _area_per_volume(mesh: Mesh, shape: Geometry, side: Side, cells: np.ndarray)
     return areas(mesh.nodes[mesh.boundary[side.points.facet, :3]]) / shape.volume[cells[side.points.facet]]
 
 
-def _normal_slopes(
+def _normal_gradients(
     mesh: Mesh, shape: Geometry, side: Side, material: Material, cells: np.ndarray
-) -> tuple[csr_array, ...]:
-    """For each principal direction a of the material (P, N): (n . a) (a . grad N) at the points, in their own cells."""
+) -> list[tuple[Property, csr_array]]:
+    """Each conductivity of the material, and (P, N) the slope along its part of the normal at the points."""
     cell = cells[side.points.facet]
-    position = _positions(mesh, side.points)
-    origin = mesh.nodes[mesh.cells[cell, 0]]
-    parent = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], position - origin)
+    # Straight-sided elements map their nodes' positions as they do temperatures.
+    offset = side.points.shape @ mesh.nodes - mesh.nodes[mesh.cells[cell, 0]]
+    parent = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], offset)
     barycentric = np.concatenate([1.0 - parent.sum(axis=1, keepdims=True), parent], axis=1)
-    gradients = np.einsum("pai,ijp->paj", shape_gradients(barycentric, mesh.order), shape.gradients[:, :, cell])
-    starts = np.arange(len(cell) + 1) * mesh.cells.shape[1]
-    return tuple(
-        csr_array(
-            (((side.normal @ axis)[:, None] * (gradients @ axis)).ravel(), mesh.cells[cell].ravel(), starts),
-            (len(cell), len(mesh.nodes)),
-        )
-        for axis in principal_axes(material)
-    )
-
-
-def _positions(mesh: Mesh, points: SurfacePoints) -> np.ndarray:
-    """(P, 3) m; straight-sided elements map their nodes' positions as they do temperatures."""
-    return points.shape @ mesh.nodes
+    slopes = shape_gradients(barycentric, mesh.order)
+    nodes, starts = mesh.cells[cell].ravel(), np.arange(len(cell) + 1) * mesh.cells.shape[1]
+    found = []
+    for conductivity, along in zip(material.conductivity, _directions(side.normal, material), strict=True):
+        towards = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], along)
+        values = np.einsum("pai,pi->pa", slopes, towards)
+        found.append((conductivity, csr_array((values.ravel(), nodes, starts), (len(cell), len(mesh.nodes)))))
+    return found

