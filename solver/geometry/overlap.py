@@ -80,6 +80,15 @@ def default_gap(first: np.ndarray, second: np.ndarray) -> float:
     return GAP_OF_DIAGONAL * float(np.linalg.norm(np.ptp(corners, axis=0)))
 
 
+def facet_rises(corners: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """How far (m) the curved surface that a facet stands for bulges out over it, and how far it is hollow; (F,) each.
+
+    corners: (F, 3, 3) m, outward-oriented; a rise is seen where neighbours are there.
+    """
+    faces = _faces(corners)
+    return faces.convex_rise, faces.concave_rise
+
+
 def touching_parts(corners: np.ndarray, part: np.ndarray, gap: float | None = None) -> list[tuple[int, int, float]]:
     """The pairs of parts (i < j) that touch, and the area (m2) over which they do.
 
@@ -164,7 +173,7 @@ def _components(one: np.ndarray, other: np.ndarray, count: int) -> np.ndarray:
 def _rises(
     corners: np.ndarray, normal: np.ndarray, area: np.ndarray, vertex: np.ndarray
 ) -> tuple[np.ndarray, np.ndarray]:
-    """How far (m) a curved surface rises over the facets that stand for it: (F,) bulging out, (F,) hollow.
+    """What :func:`facet_rises` returns.
 
     A chord of width w that turns by t from one to the next has the rise w/2 tan(t/4). A facet is a plane patch of
     triangles; each of its edges counts by the share of the facet that it spans, twice curved facets add up both ways.
@@ -472,10 +481,10 @@ def _distance(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
     square = np.maximum(np.einsum("pei,pei->pe", edge, edge), np.finfo(float).tiny)
     fraction = np.clip(np.einsum("pei,pei->pe", offset, edge) / square, 0, 1)
     to_edges = np.linalg.norm(offset - fraction[:, :, None] * edge, axis=2).min(axis=1)
-    above = (np.einsum("pei,pei->pe", np.cross(edge, offset), across[:, None, :].repeat(3, axis=1)) >= 0).all(axis=1)
-    length = np.maximum(np.linalg.norm(across, axis=1), np.finfo(float).tiny)
-    to_plane = np.abs(np.einsum("pi,pi->p", offset[:, 0], across)) / length
-    return np.where(above & (length > np.finfo(float).tiny), to_plane, to_edges)
+    above = (np.einsum("pei,pi->pe", np.cross(edge, offset), across) >= 0).all(axis=1)
+    length = np.linalg.norm(across, axis=1)
+    to_plane = np.abs(np.einsum("pi,pi->p", offset[:, 0], across)) / np.where(length > 0, length, 1.0)
+    return np.where(above & (length > 0), to_plane, to_edges)
 
 
 def _enclosed(faces: _Faces, points: np.ndarray) -> np.ndarray:
