@@ -1,0 +1,257 @@
+"""The panels, drawn on a layout that writes down what it is given and refuses what the host would not know."""
+
+from __future__ import annotations
+
+from types import SimpleNamespace
+
+import pytest
+
+bpy = pytest.importorskip("bpy")
+
+from fluxface.addon import materials, running, study, view, words  # noqa: E402
+from fluxface.addon.panels import contacts, look, part, result, run, sidebar, tags  # noqa: E402
+from fluxface.addon.panels import study as study_panels  # noqa: E402
+from modelled import block, lamp, side, tag  # noqa: E402
+
+ICONS = {item.identifier for item in bpy.types.UILayout.bl_rna.functions["label"].parameters["icon"].enum_items}
+# Without a window the host's own scale is nought.
+PREFERENCES = SimpleNamespace(system=SimpleNamespace(ui_scale=1.0))
+PANELS = (
+    study_panels.StudyPanel,
+    study_panels.AccuracyPanel,
+    part.MaterialPanel,
+    part.MaterialDetailsPanel,
+    part.VolumeHeatPanel,
+    tags.TagsPanel,
+    tags.UntaggedPanel,
+    contacts.ContactsPanel,
+    run.RunPanel,
+    look.LookPanel,
+    result.ResultPanel,
+    result.WaysPanel,
+)
+LISTS = {
+    "FLUXFACE_UL_tags": tags.TagList,
+    "FLUXFACE_UL_contacts": contacts.ContactList,
+    "FLUXFACE_UL_table": part.TableList,
+}
+
+
+class Page:
+    """Stands in for the host's layout. ``lines`` is shared by a layout and all within it."""
+
+    def __init__(self, context: SimpleNamespace, lines: list[str]) -> None:
+        self.context, self.lines = context, lines
+
+    def row(self, **_options) -> Page:
+        return Page(self.context, self.lines)
+
+    column = box = split = row
+
+    def separator(self, **_options) -> None:
+        pass
+
+    def label(self, text: str = "", icon: str = "NONE") -> None:
+        assert icon in ICONS
+        self.lines.append(text)
+
+    def prop(self, data, name: str, text: str | None = None, icon: str = "NONE", **_options) -> None:
+        assert icon in ICONS
+        prop = data.bl_rna.properties[name]
+        self.lines.append(f"[{prop.name if text is None else text}]")
+
+    def operator(self, name: str, text: str | None = None, icon: str = "NONE") -> SimpleNamespace:
+        assert icon in ICONS
+        module, _, function = name.partition(".")
+        label = getattr(getattr(bpy.ops, module), function).get_rna_type().name
+        self.lines.append(f"({label if text is None else text})")
+        return SimpleNamespace()
+
+    def menu(self, name: str, **_options) -> None:
+        menu = getattr(bpy.types, name)
+        menu.draw(SimpleNamespace(layout=self), self.context)
+
+    def progress(self, factor: float, text: str) -> None:
+        self.lines.append(f"{100 * factor:.0f} % {text}")
+
+    def template_list(self, kind: str, _id, data, items: str, active_data, active: str, rows: int) -> None:
+        assert rows > 0
+        assert active in active_data.bl_rna.properties
+        for index, item in enumerate(getattr(data, items)):
+            LISTS[kind].draw_item(None, self.context, self, data, item, 0, active_data, active, index)
+
+
+def drawn(scene: bpy.types.Scene, *panels) -> str:
+    """What the panels show, a line each."""
+    context = SimpleNamespace(
+        scene=scene,
+        view_layer=bpy.context.view_layer,
+        window_manager=bpy.context.window_manager,
+        preferences=PREFERENCES,
+        region=SimpleNamespace(width=280),
+    )
+    page = Page(context, [])
+    for panel in panels or PANELS:
+        if not hasattr(panel, "poll") or panel.poll(context):
+            panel.draw(SimpleNamespace(layout=page), context)
+    return "\n".join(page.lines)
+
+
+def test_an_empty_scene_says_what_to_do(scene):
+    told = drawn(scene).replace("\n", " ")
+    assert "Click the part to make it the active object." in told
+    assert "(Run)" in told
+
+
+def test_a_part_without_tags_says_what_to_do(scene):
+    block()
+    told = drawn(scene)
+    assert "Part: block" in told
+    assert "Not run yet" in told
+
+
+def test_tags_show_their_area_and_what_they_carry(scene):
+    part = lamp(scene)
+    bpy.ops.fluxface.tag_select()
+    bpy.ops.object.mode_set(mode="OBJECT")
+    study_panels.study.restore_tags(scene)
+    from fluxface.addon import upkeep
+
+    upkeep.refresh()
+    told = drawn(scene, tags.TagsPanel)
+    assert "12 W" in told
+    assert "8 W/m²K to 25 °C" in told
+    assert "48 cm²" in told
+    assert "104 cm²" in told
+    assert part is not None
+
+
+def test_every_term_and_every_film_can_be_drawn(scene):
+    lamp(scene)
+    skin = scene.fluxface.tags["skin"]
+    skin.use_heat = skin.use_heat_flux = skin.use_radiation = skin.use_temperature = True
+    assert "A held temperature excludes" in drawn(scene, tags.TagsPanel)
+    for item in skin.bl_rna.properties["film"].enum_items:
+        skin.film = item.identifier
+        assert "[Fluid at]" in drawn(scene, tags.TagsPanel)
+    assert "aluminium 6061-T6, " in drawn(scene, tags.TagsPanel)
+
+
+def test_materials_of_every_kind_can_be_drawn(scene):
+    part_ = block()
+    for name in materials.library():
+        part_.fluxface.material.name = name
+        assert "Conductivity" in (told := drawn(scene, part.MaterialPanel)) or "Along x" in told
+        assert drawn(scene, part.MaterialDetailsPanel).strip()
+    part_.fluxface.material.conductivity.tabulated = False
+    part_.fluxface.material.conductivity.value = -1.0
+    assert "must be greater than" in drawn(scene, part.MaterialPanel)
+
+
+def test_a_run_shows_progress_and_how_to_cancel(scene):
+    lamp(scene)
+    state = bpy.context.window_manager.fluxface
+    state.running, state.fraction, state.text = True, 0.5, "step 2"
+    told = drawn(scene, run.RunPanel)
+    state.running = False
+    assert "50 % step 2" in told
+    assert "(Cancel)" in told
+    assert "(Run)" not in told
+
+
+def test_trouble_is_shown_whole_and_goes_when_a_run_succeeds(scene):
+    lamp(scene)
+    scene.fluxface.tags["skin"].use_convection = False
+    with pytest.raises(RuntimeError):
+        bpy.ops.fluxface.run()
+    told = drawn(scene, run.RunPanel).replace("\n", " ")
+    assert "Nothing carries heat away from 'lamp', so its temperature is undetermined." in told
+    scene.fluxface.tags["skin"].use_convection = True
+    bpy.ops.fluxface.run()
+    assert "Nothing carries" not in drawn(scene, run.RunPanel)
+
+
+def test_the_result_is_told_in_the_scenes_units_with_its_cautions(scene):
+    part_ = lamp(scene)
+    scene.fluxface.tags["skin"].use_radiation = True
+    bpy.ops.fluxface.run()
+    told = drawn(scene)
+    summary = study.summary(study.outcome(scene, [part_]))
+    assert f"{summary['hottest']['temperature'] - 273.15:.1f} °C" in told
+    assert "12 W in" in told
+    assert "12 W out" in told
+    assert "The result is current" in told
+    joined = told.replace("\n", " ")
+    assert "100 % of 12 W leaves through skin (" in joined
+    assert all(caution in joined for caution in words.CAUTIONS)
+    scene.unit_settings.temperature_unit = "KELVIN"
+    assert f"{summary['hottest']['temperature']:.1f} K" in drawn(scene)
+    scene.fluxface.tags["pad"].heat = 20.0
+    assert "Changed since the last run" in drawn(scene)
+
+
+def test_contacts_are_listed_with_how_heat_crosses(scene):
+    scene.fluxface.collection = bpy.data.collections.new("assembly")
+    first, second = block("chip"), block("sink")
+    bpy.ops.fluxface.contact_add()
+    contact = scene.fluxface.contacts[0]
+    contact.first, contact.second = first, second
+    for item in contact.bl_rna.properties["crossing"].enum_items:
+        contact.crossing = item.identifier
+        assert f"chip / sink\n{item.name}" in drawn(scene, contacts.ContactsPanel)
+    bpy.ops.fluxface.contact_remove()
+    assert "until a contact says how" in drawn(scene, contacts.ContactsPanel).replace("\n", " ")
+
+
+def test_no_line_is_longer_than_the_sidebar(scene):
+    context = SimpleNamespace(region=SimpleNamespace(width=280), preferences=PREFERENCES)
+    page = Page(context, [])
+    sidebar.paragraph(context, page, "word " * 50, "INFO")
+    assert len(page.lines) > 5
+    assert max(map(len, page.lines)) * sidebar.LETTER <= 280
+
+
+@pytest.mark.parametrize(
+    ("split", "sentence"),
+    [
+        (
+            {"convection": -6.0, "radiation": -3.0},
+            "90 % of 10 W leaves through fins (convection 60 %, radiation 30 %).",
+        ),
+        ({"convection": -8.1, "radiation": 0.0}, "81 % of 10 W leaves through fins by convection."),
+        ({"held": -10.0}, "100 % of 10 W leaves through fins by held temperature."),
+        ({"convection": -0.2}, "2.0 % of 10 W leaves through fins by convection."),
+    ],
+)
+def test_where_the_heat_goes(split, sentence):
+    summary = {"balance": {"in": 10.0}, "tags": [{"name": "fins", "split": split}]}
+    assert words.ways_out(summary) == [sentence]
+
+
+def test_what_a_tag_carries(scene):
+    part_ = block()
+    fins = tag(scene, part_, "fins", side(part_, "+z"))
+    assert words.carries(scene, fins) == ""
+    fins.use_temperature, fins.temperature = True, 313.15
+    assert words.carries(scene, fins) == "held at 40 °C"
+    fins.use_temperature = False
+    fins.use_heat, fins.heat = True, -0.25
+    assert words.carries(scene, fins) == "−250 mW"
+    fins.use_convection = fins.use_radiation = True
+    assert words.carries(scene, fins) == "−250 mW, 8 W/m²K, ε 0.9 to 25 °C"
+    fins.film, fins.surroundings = "natural", 283.15
+    assert words.carries(scene, fins) == "−250 mW, still air to 25 °C, ε 0.9 to 10 °C"
+
+
+def test_progress_counts_all_stages():
+    from fluxface.addon.jobs import Progress
+
+    assert running.told(Progress("solve", 0.5, "step 2")) == ("step 2", 0.625)
+
+
+def test_the_result_of_another_part_is_not_shown(scene):
+    lamp(scene)
+    bpy.ops.fluxface.run()
+    block("other", at=(1, 0, 0))
+    assert "Hottest" not in drawn(scene)
+    assert view.has_result(bpy.data.objects["lamp"])
