@@ -107,7 +107,7 @@ def _dissolve_flat(mesh: bpy.types.Mesh) -> None:
     """Take out the edges and corners that a boolean leaves inside flat faces and straight edges."""
     shape = bmesh.new()
     shape.from_mesh(mesh)
-    bmesh.ops.dissolve_limit(shape, angle_limit=np.radians(0.5), verts=shape.verts, edges=shape.edges)
+    bmesh.ops.dissolve_limit(shape, angle_limit=np.radians(0.02), verts=shape.verts, edges=shape.edges)
     shape.to_mesh(mesh)
     shape.free()
 
@@ -119,10 +119,22 @@ def region_of_faces(mesh: bpy.types.Mesh) -> np.ndarray:
     return regions
 
 
-def is_closed(mesh: bpy.types.Mesh) -> bool:
-    """Whether every edge lies between exactly two polygons that run along it in opposite directions."""
-    shape = bmesh.new()
-    shape.from_mesh(mesh)
-    closed = all(edge.is_manifold and edge.is_contiguous for edge in shape.edges)
-    shape.free()
-    return closed
+def face_normals(mesh: bpy.types.Mesh) -> np.ndarray:
+    """(polygons, 3) unit normals in the object's own axes."""
+    normals = np.empty(3 * len(mesh.polygons), dtype=np.float32)
+    mesh.polygons.foreach_get("normal", normals)
+    return normals.reshape(-1, 3)
+
+
+def face_centres(mesh: bpy.types.Mesh) -> np.ndarray:
+    """(polygons, 3) mean corners in the object's own axes."""
+    centres = np.empty(3 * len(mesh.polygons), dtype=np.float32)
+    mesh.polygons.foreach_get("center", centres)
+    return centres.reshape(-1, 3)
+
+
+def finish(made: bpy.types.Object) -> None:
+    """Forget the regions, and shade what was meant round as round."""
+    made.data.attributes.remove(made.data.attributes[REGION])
+    made.data.shade_smooth()
+    made.data.set_sharp_from_angle(angle=np.radians(38.0))

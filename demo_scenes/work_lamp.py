@@ -7,7 +7,21 @@ from __future__ import annotations
 
 import bpy
 import numpy as np
-from shapes import ALONG_X, ALONG_Y, Shell, circle, combine, loft, rounded_rectangle, solid, stadium
+from designer import celsius, choose_material, open_empty_file, paint, tag_faces
+from shapes import (
+    ALONG_X,
+    ALONG_Y,
+    Shell,
+    circle,
+    combine,
+    face_normals,
+    finish,
+    loft,
+    region_of_faces,
+    rounded_rectangle,
+    solid,
+    stadium,
+)
 
 WIDTH, HEIGHT, DEPTH = 90.0, 68.0, 24.0  # the shell, without fins and eye
 CORNER, BACK_ROUND = 17.0, 6.0
@@ -18,6 +32,27 @@ FIN_PITCH, FIN_ROOT, FIN_TIP, FIN_ROUND = 8.6, 3.4, 2.2, 9.0
 ARC = 6  # pieces in the quarter of a large corner
 
 INSIDE, PAD, OUTSIDE = 0, 1, 2
+
+
+LOOKS = [
+    ("machined", (0.62, 0.63, 0.65), 0.35),
+    ("LED board", (0.86, 0.72, 0.35), 0.5),
+    ("cast and coated", (0.10, 0.11, 0.13), 0.55),
+]
+
+
+def prepare() -> bpy.types.Object:
+    """The lamp in a new file, tagged and ready to run."""
+    open_empty_file(metres_per_unit=0.001)
+    lamp = build()
+    region, normals = region_of_faces(lamp.data), face_normals(lamp.data)
+    paint(lamp, LOOKS, region)
+    choose_material(lamp, "aluminium A380, die-cast (AlSi9Cu3)")
+    tag_faces(lamp, "LED pad", (region == PAD) & (normals[:, 1] < -0.99), heat=12.0)
+    # Still air and radiation lumped in one film coefficient: common practice, no source.
+    tag_faces(lamp, "fins", region == OUTSIDE, coefficient=8.0, ambient=celsius(25.0))
+    finish(lamp)
+    return lamp
 
 
 def build(fin_height: float = FIN_HEIGHT) -> bpy.types.Object:
@@ -42,7 +77,7 @@ def _shell() -> Shell:
 
 
 def _well() -> Shell:
-    """The room under the cover: a seat for the glass, then drafted walls down to a rounded foot."""
+    """The room under the cover: a seat for the glass, then drafted walls down to a bevelled foot."""
     inset = [2.4, 2.4, 4.6, 5.6, 7.0]
     depth = [-1.0, 2.4, 2.4, WELL - 1.4, WELL]
     return loft([_outline(i) for i in inset], depth, ALONG_Y, region=INSIDE)
@@ -54,7 +89,7 @@ def _pad() -> Shell:
     return loft(outlines, [WELL - 1.5, WELL - 0.7, WELL + 1.0], ALONG_Y, region=PAD)
 
 
-SCREWS = [(x, z) for x in (-34.2, 34.2) for z in (-23.2, 23.2)]
+SCREWS = [(x, z) for x in (-31.5, 31.5) for z in (-20.5, 20.5)]
 
 
 def _posts() -> list[Shell]:

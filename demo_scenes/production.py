@@ -1,0 +1,68 @@
+"""From a scene's name to its file, its picture and its table, through the add-on as a designer uses it."""
+
+from __future__ import annotations
+
+import importlib
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+import bpy
+import designer
+import table
+from fluxface import addon
+from fluxface.addon import running, study
+from fluxface.solver.errors import Trouble
+
+Seconds = dict[str, float]
+
+
+@contextmanager
+def timed(seconds: Seconds, what: str) -> Iterator[None]:
+    """Put into ``seconds`` how long the block takes."""
+    start = time.perf_counter()
+    yield
+    seconds[what] = time.perf_counter() - start
+
+
+def produce(scene: str, out: Path) -> int:
+    """Leave ``<scene>.blend`` and ``<scene>.png`` in ``out`` and print the table; the exit code."""
+    out.mkdir(parents=True, exist_ok=True)
+    file, picture = out / f"{scene}.blend", out / f"{scene}.png"
+    seconds: Seconds = {}
+    addon.register()
+    try:
+        with timed(seconds, "build"):
+            part = importlib.import_module(scene).prepare()
+        designer.look_at(part)
+        bpy.ops.wm.save_as_mainfile(filepath=str(file))
+        try:
+            run(seconds)
+        except Trouble as trouble:
+            print(f"{trouble.message} {trouble.mend}".strip())
+            return trouble.exit_code
+        with timed(seconds, "picture"):
+            bpy.ops.fluxface.render_picture(filepath=str(picture))
+        bpy.ops.wm.save_as_mainfile(filepath=str(file))
+        summary = study.summary(study.outcome(bpy.context.scene, [part]))
+        print(table.of_result(bpy.context.scene, part, summary, seconds))
+        print(f"\n{file}\n{picture}")
+        return 0
+    finally:
+        addon.unregister()
+
+
+def run(seconds: Seconds) -> None:
+    """What the Run button does, each step timed.
+
+    Raises Trouble when there is no result.
+    """
+    with timed(seconds, "export"):
+        started = running.start(bpy.context)
+    with timed(seconds, "solver"):
+        ending = running.wait(started)
+    with timed(seconds, "colours"):
+        trouble = running.finish(started, ending)
+    if trouble:
+        raise trouble
