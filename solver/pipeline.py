@@ -55,8 +55,14 @@ def check(case: Case) -> list[Surface]:
 
 
 def _check_apart(case: Case, surfaces: list[Surface]) -> None:
-    """Find no two solids to run through each other."""
-    for crossing in crossing_parts(*_all_corners(surfaces)):
+    """Find no two solids to run through each other by more than the gap of their contact."""
+    corners, part = _all_corners(surfaces)
+    wide = {frozenset(contact.parts): contact.gap for contact in case.contacts if contact.gap is not None}
+    for crossing in crossing_parts(corners, part):
+        gap = wide.get(frozenset(crossing.parts))
+        pair = np.isin(part, crossing.parts)
+        if gap is not None and not crossing_parts(corners[pair], part[pair], gap):
+            continue
         first, second = (case.parts[index].name for index in crossing.parts)
         raise Trouble(
             "geometry",

@@ -193,3 +193,13 @@ def test_solids_that_run_through_each_other_are_found(tmp_path: Path) -> None:
     assert "run through each other" in ran.trouble["message"]
     points = np.array(ran.trouble["where"]["points"])
     assert len(points) and (points > [0.019, 0.019, -0.001]).all() and (points < [0.031, 0.031, 0.005]).all()
+
+
+def test_parts_that_overlap_within_the_gap_of_their_contact_are_in_contact() -> None:
+    """As modelled with an interference fit: 0.1 mm into each other, a contact with a gap of 0.3 mm."""
+    case = two_blocks(Contact((0, 1), 2000.0, gap=3e-4))
+    sunk = replace(case.surface, vertices=case.surface.vertices.copy())
+    sunk.vertices[np.unique(sunk.triangles[sunk.part == 1]), 2] -= 1e-4
+    assert pipeline.solve(replace(case, surface=sunk)).summary["contacts"][0]["area"] == pytest.approx(SIDE**2)
+    with pytest.raises(Trouble, match="run through each other"):
+        pipeline.solve(replace(case, surface=sunk, contacts=(Contact((0, 1), 2000.0),)))
