@@ -54,13 +54,13 @@ def prepare() -> bpy.types.Object:
     handle.scale = (0.001, 0.001, 0.001)
     centres, normals = face_centres(handle.data), face_normals(handle.data)
     root = (centres[:, 0] < 1.0) & (normals[:, 0] < -0.99)
-    over_burner = (centres[:, 0] > 1.0) & (centres[:, 0] < 62.0) & (normals[:, 2] < -0.7)
+    underside = (centres[:, 0] > 1.0) & (centres[:, 0] < 62.0) & (normals[:, 2] < -0.7)
     paint(handle, STEEL, np.zeros(len(root)))
     choose_material(handle, "stainless steel AISI 304")
-    tag_faces(handle, "welded to the pan", root, temperature=celsius(180.0))
-    tag_faces(handle, "over the burner", over_burner, heat_flux=2500.0)
+    tag_faces(handle, "weld", root, temperature=celsius(180.0))
+    tag_faces(handle, "underside", underside, heat_flux=2500.0)
     # Still air and the little that steel radiates, in one film coefficient: common practice, no source.
-    tag_faces(handle, "in the air", ~root & ~over_burner, coefficient=7.0, ambient=celsius(25.0))
+    tag_faces(handle, "bare steel", ~root & ~underside, coefficient=7.0, ambient=celsius(25.0))
     finish(handle)
     return handle
 
@@ -73,12 +73,22 @@ def build() -> bpy.types.Object:
 
 
 def _grip() -> Shell:
-    distance, width, thickness, rise = SECTIONS.T
+    distance, width, thickness, rise = _refined(SECTIONS).T
     outlines = [
         rounded_rectangle(w, t, 0.42 * t, 3) + np.array([0.0, z])
         for w, t, z in zip(width, thickness, rise, strict=True)
     ]
     return loft(outlines, distance, ALONG_X)
+
+
+def _refined(rows: np.ndarray) -> np.ndarray:
+    """(n, k) rows with a row put between every two, on a smooth curve through all.
+
+    Dyn, Levin & Gregory, Computer Aided Geometric Design 4 (1987) 257: the four-point scheme.
+    """
+    beyond = np.vstack([2 * rows[0] - rows[1], rows, 2 * rows[-1] - rows[-2]])
+    between = (9 * (rows[:-1] + rows[1:]) - beyond[:-3] - beyond[3:]) / 16
+    return np.vstack([np.stack([rows[:-1], between], axis=1).reshape(-1, rows.shape[1]), rows[-1:]])
 
 
 def _slot(length: float, width: float, middle: tuple[float, float]) -> Shell:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import importlib
+import os
+import sys
 import time
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -26,6 +28,21 @@ def timed(seconds: Seconds, what: str) -> Iterator[None]:
     seconds[what] = time.perf_counter() - start
 
 
+@contextmanager
+def hushed() -> Iterator[None]:
+    """Without the host's own lines on standard output, which it writes past Python."""
+    sys.stdout.flush()
+    kept = os.dup(1)
+    with open(os.devnull, "w") as nothing:
+        os.dup2(nothing.fileno(), 1)
+    try:
+        yield
+    finally:
+        sys.stdout.flush()
+        os.dup2(kept, 1)
+        os.close(kept)
+
+
 def produce(scene: str, out: Path) -> int:
     """Leave ``<scene>.blend`` and ``<scene>.png`` in ``out`` and print the table; the exit code."""
     out.mkdir(parents=True, exist_ok=True)
@@ -33,24 +50,31 @@ def produce(scene: str, out: Path) -> int:
     seconds: Seconds = {}
     addon.register()
     try:
-        with timed(seconds, "build"):
-            part = importlib.import_module(scene).prepare()
-        designer.look_at(part)
-        bpy.ops.wm.save_as_mainfile(filepath=str(file))
-        try:
+        with hushed():
+            part = prepared(scene, file, seconds)
             run(seconds)
-        except Trouble as trouble:
-            print(f"{trouble.message} {trouble.mend}".strip())
-            return trouble.exit_code
-        with timed(seconds, "picture"):
-            bpy.ops.fluxface.render_picture(filepath=str(picture))
-        bpy.ops.wm.save_as_mainfile(filepath=str(file))
+            with timed(seconds, "picture"):
+                bpy.ops.fluxface.render_picture(filepath=str(picture))
+            bpy.ops.wm.save_mainfile()
         summary = study.summary(study.outcome(bpy.context.scene, [part]))
         print(table.of_result(bpy.context.scene, part, summary, seconds))
         print(f"\n{file}\n{picture}")
         return 0
+    except Trouble as trouble:
+        print(f"{trouble.message} {trouble.mend}".strip(), file=sys.stderr)
+        return trouble.exit_code
     finally:
         addon.unregister()
+
+
+def prepared(scene: str, file: Path, seconds: Seconds) -> bpy.types.Object:
+    """The part of a scene in a new file, saved so that its case is kept beside it."""
+    with timed(seconds, "build"):
+        part = importlib.import_module(scene).prepare()
+    designer.look_at(part)
+    bpy.context.preferences.filepaths.save_version = 0
+    bpy.ops.wm.save_as_mainfile(filepath=str(file))
+    return part
 
 
 def run(seconds: Seconds) -> None:
@@ -61,7 +85,7 @@ def run(seconds: Seconds) -> None:
     with timed(seconds, "export"):
         started = running.start(bpy.context)
     with timed(seconds, "solver"):
-        ending = running.wait(started)
+        ending = running.wait(started.job)
     with timed(seconds, "colours"):
         trouble = running.finish(started, ending)
     if trouble:
