@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import bpy
 import numpy as np
 
 from ..solver.case import Accuracy, Case, Contact, Convection, Part, Radiation, Surface, Tag
 from ..solver.errors import Trouble
+from ..solver.materials import Material
 from . import tags
 from .materials import material_of
 from .parts import Skin, check_solid, modelled, placed, world_matrix
@@ -34,9 +36,7 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
     Raises Trouble of kind "case" or "geometry" that says what the designer should change.
     """
     settings, metres = scene.fluxface, metres_per_unit(scene)
-    skins = [placed(modelled(part, depsgraph), world_matrix(part), metres) for part in parts]
-    for part, surface in zip(parts, skins, strict=True):
-        check_solid(part, surface)
+    skins = _skins(scene, parts, depsgraph)
     used = _used_tags(scene, parts, skins)
     untagged = _tag(settings.untagged, "untagged", metres)
     if not used and untagged == Tag("untagged"):
@@ -54,6 +54,27 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
         accuracy=Accuracy(int(settings.order), as_typed(settings.size) * metres or None, settings.max_nodes),
         title=names[0] if settings.collection is None else settings.collection.name,
     )
+
+
+def build_shapes(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgraph: bpy.types.Depsgraph) -> Case:
+    """The parts' shapes alone, of a stand-in material and in air all over, to be checked and never solved.
+
+    Raises Trouble of kind "geometry" when a part is no body.
+    """
+    stand_in = Material("stand-in", (1.0,))
+    return Case(
+        surface=_joined([replace(surface, uid=0 * surface.uid) for surface in _skins(scene, parts, depsgraph)], []),
+        parts=tuple(Part(part.name, stand_in) for part in parts),
+        untagged=Tag("untagged", convection=Convection(ambient=300.0, coefficient=1.0)),
+    )
+
+
+def _skins(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgraph: bpy.types.Depsgraph) -> list[Skin]:
+    metres = metres_per_unit(scene)
+    skins = [placed(modelled(part, depsgraph), world_matrix(part), metres) for part in parts]
+    for part, surface in zip(parts, skins, strict=True):
+        check_solid(part, surface)
+    return skins
 
 
 def _used_tags(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], skins: Sequence[Skin]) -> list[TagDefinition]:

@@ -40,10 +40,14 @@ class Progress:
 
 @dataclass(frozen=True)
 class Ending:
-    """trouble: None = solved. cancelled: ended by us, so that there is nothing to complain of."""
+    """trouble: None = it went well. cancelled: ended by us, so that there is nothing to complain of.
+
+    said: the last line of stdout, where the answer of a command stands that gives one.
+    """
 
     trouble: Trouble | None = None
     cancelled: bool = False
+    said: str = ""
 
 
 class Job:
@@ -54,6 +58,7 @@ class Job:
         self._cancelled = False
         self._lines: queue.SimpleQueue[str] = queue.SimpleQueue()
         self._stderr: deque[str] = deque(maxlen=STDERR_LINES)
+        self._said = ""
         self.progress = Progress("mesh", 0.0, "Starting")
         try:
             self._process = subprocess.Popen(
@@ -77,14 +82,15 @@ class Job:
         code = self._process.poll()
         ended = code is not None and not any(reader.is_alive() for reader in self._readers)
         while not self._lines.empty():
-            self.progress = _progress(self._lines.get()) or self.progress
+            self._said = self._lines.get()
+            self.progress = _progress(self._said) or self.progress
         if not ended:
             return None
         self._process.stdin.close()
         _live.discard(self)
         if self._cancelled:
             return Ending(cancelled=True)
-        return Ending() if code == 0 else Ending(_trouble(code, self._stderr))
+        return Ending(said=self._said) if code == 0 else Ending(_trouble(code, self._stderr))
 
     def cancel(self) -> None:
         """End the solver and all it started; a second call does nothing more."""
@@ -116,6 +122,14 @@ def solve(case: Path, result: Path) -> Job:
     Raises Trouble when it or one of its libraries is missing.
     """
     return Job(command("solve", str(case), "--out", str(result), "--progress", "json"), environment())
+
+
+def check(case: Path) -> Job:
+    """Start the solver's check of a case folder; what it found is the ending's ``said``, as JSON.
+
+    Raises Trouble when it or one of its libraries is missing.
+    """
+    return Job(command("check", str(case), "--json"), environment())
 
 
 def command(*arguments: str) -> list[str]:

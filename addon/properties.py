@@ -213,6 +213,7 @@ class ContactSettings(bpy.types.PropertyGroup):
     first: PointerProperty(name="Part", type=bpy.types.Object, poll=_is_mesh)
     second: PointerProperty(name="and", type=bpy.types.Object, poll=_is_mesh)
     crossing: EnumProperty(name="Crossing", items=CROSSINGS, description="How heat crosses", default="FILLER")
+    area: FloatProperty(description="m² over which the parts touch, found by the last search")
     conductance: FloatProperty(name="Conductance (W/m²K)", default=5000.0, min=0.0, precision=1)
     resistance: FloatProperty(name="Resistance (m²K/W)", default=2e-4, min=0.0, precision=6)
     thickness: FloatProperty(name="Thickness", default=2e-4, min=0.0, unit="LENGTH", precision=4)

@@ -70,36 +70,41 @@ def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence
     return Run(job, scene.name, tuple(part.name for part in members), result, inputs)
 
 
-def wait(run: Run) -> jobs.Ending:
+def wait(job: jobs.Job) -> jobs.Ending:
     """Wait for the solver; only where there is no window to keep alive."""
-    while (ending := run.job.poll()) is None:
+    while (ending := job.poll()) is None:
         time.sleep(SECONDS_BETWEEN_LOOKS / 5)
     return ending
 
 
-def watch(run: Run) -> None:
-    """Look at the solver from time to time while the designer goes on working, and finish when it ends."""
+def watch(job: jobs.Job, finish: Callable[[jobs.Ending], object], step: str) -> None:
+    """Look at the solver from time to time while the designer goes on working, and finish when it ends.
+
+    step: what the undo history calls it.
+    """
     state = bpy.context.window_manager.fluxface
     state.running, state.cancelled = True, False
-    bpy.app.timers.register(_look(run))
+    bpy.app.timers.register(look_until_over(job, finish, step))
 
 
-def _look(run: Run) -> Callable[[], float | None]:
+def look_until_over(job: jobs.Job, finish: Callable[[jobs.Ending], object], step: str) -> Callable[[], float | None]:
+    """What to call again after the seconds it gives, until it gives None; it never waits."""
+
     def look() -> float | None:
         state = bpy.context.window_manager.fluxface
         if state.cancelled:
-            run.job.cancel()
+            job.cancel()
         # A result that appears in the middle of a render would be drawn by half of it.
         if bpy.app.is_job_running("RENDER"):
             return SECONDS_BETWEEN_LOOKS
-        ending = run.job.poll()
-        state.text, state.fraction = told(run.job.progress)
+        ending = job.poll()
+        state.text, state.fraction = told(job.progress)
         host.redraw()
         if ending is None:
             return SECONDS_BETWEEN_LOOKS
         state.running = False
-        finish(run, ending)
-        host.push_undo("Temperatures")
+        finish(ending)
+        host.push_undo(step)
         return None
 
     return look

@@ -1,14 +1,11 @@
-"""Sentences and short texts: what a tag carries, how a run stands, where the heat goes."""
+"""Sentences and short texts: what a tag carries, and the cautions."""
 
 from __future__ import annotations
 
 import bpy
 
-from ..solver.result import Summary
-from .properties import Terms
-from .units import as_typed, power_text, short_temperature_text
-
-WAYS = {"convection": "convection", "radiation": "radiation", "source": "heat drawn out", "held": "held temperature"}
+from .properties import ContactSettings, Terms
+from .units import as_typed, metres_per_unit, power_text, short_temperature_text
 
 CAUTIONS = (
     "An estimate for design. Film coefficients are uncertain by tens of per cent.",
@@ -49,29 +46,13 @@ def clash(terms: Terms) -> str:
     return "A held temperature excludes every other term." if terms.use_temperature and others else ""
 
 
-def ways_out(summary: Summary) -> list[str]:
-    """Where the heat goes, largest share first, as in "81 % of 14 W leaves through fins (convection 55 %, ...)"."""
-    total = summary["balance"]["in"]
-    if not total > 0:
-        return []
-    leaving = []
-    for tag in summary["tags"]:
-        split = {way: -heat for way, heat in tag["split"].items() if heat < 0}
-        if split:
-            leaving.append((sum(split.values()) / total, tag["name"], split))
-    return [
-        f"{_share(share)} of {power_text(total)} leaves through {name}{_by_way(split, total)}."
-        for share, name, split in sorted(leaving, key=lambda each: -each[0])
-        if share >= 0.005
-    ]
-
-
-def _by_way(split: dict[str, float], total: float) -> str:
-    ways = sorted(split.items(), key=lambda each: -each[1])
-    if len(ways) == 1:
-        return f" by {WAYS.get(ways[0][0], ways[0][0])}"
-    return " (" + ", ".join(f"{WAYS.get(way, way)} {_share(heat / total)}" for way, heat in ways) + ")"
-
-
-def _share(fraction: float) -> str:
-    return f"{100 * fraction:.0f} %" if fraction > 0.0995 else f"{100 * fraction:.1f} %"
+def crossing(scene: bpy.types.Scene, contact: ContactSettings) -> str:
+    """How heat crosses a contact, as in "0.2 mm of 3 W/mK"."""
+    if contact.crossing == "BONDED":
+        return "bonded"
+    if contact.crossing == "CONDUCTANCE":
+        return f"{as_typed(contact.conductance):g} W/m²K"
+    if contact.crossing == "RESISTANCE":
+        return f"{as_typed(contact.resistance):g} m²K/W"
+    thickness = 1e3 * as_typed(contact.thickness) * metres_per_unit(scene)
+    return f"{thickness:.3g} mm of {as_typed(contact.conductivity):g} W/mK"

@@ -35,15 +35,16 @@ class RunSolver(TellsTrouble, bpy.types.Operator):
         if bpy.app.background:
             return self.execute(context)
         try:
-            running.watch(running.start(context))
+            run = running.start(context)
         except Trouble as trouble:
             self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
             return {"CANCELLED"}
+        running.watch(run.job, lambda ending: running.finish(run, ending), "Temperatures")
         return {"FINISHED"}
 
     def act(self, context: bpy.types.Context) -> None:
         run = running.start(context)
-        trouble = running.finish(run, running.wait(run))
+        trouble = running.finish(run, running.wait(run.job))
         if trouble:
             raise trouble
 

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import bpy
 
+from .. import words
+from ..units import area_text
 from .sidebar import Sidebar, fields, named, paragraph
 
 FIELDS = {
@@ -17,13 +19,17 @@ FIELDS = {
 class ContactList(bpy.types.UIList):
     bl_idname = "FLUXFACE_UL_contacts"
 
-    def draw_item(self, _context, layout, _settings, contact, _icon, _active, _property, _index) -> None:
+    def draw_item(self, context, layout, _settings, contact, _icon, _active, _property, _index) -> None:
         pair = " / ".join(side.name if side else "?" for side in (contact.first, contact.second))
-        split = layout.split(factor=0.65)
+        lines = layout.column(align=True)
+        split = lines.split(factor=0.65)
         split.label(text=pair)
         end = split.row()
         end.alignment = "RIGHT"
-        end.label(text=contact.bl_rna.properties["crossing"].enum_items[contact.crossing].name)
+        end.label(text=area_text(context.scene, contact.area) if contact.area else "")
+        carried = lines.row()
+        carried.active = False
+        carried.label(text=words.crossing(context.scene, contact))
 
 
 class ContactsPanel(Sidebar, bpy.types.Panel):
@@ -42,6 +48,7 @@ class ContactsPanel(Sidebar, bpy.types.Panel):
         buttons = row.column(align=True)
         buttons.operator("fluxface.contact_add", text="", icon="ADD")
         buttons.operator("fluxface.contact_remove", text="", icon="REMOVE")
+        layout.operator("fluxface.contacts_find", icon="VIEWZOOM")
         if not 0 <= settings.active_contact < len(settings.contacts):
             paragraph(context, layout, "Parts exchange no heat until a contact says how.", "INFO")
             return

@@ -7,7 +7,7 @@ import bpy
 from ...solver.errors import Trouble
 from ...solver.result import Summary
 from .. import study, words
-from ..units import area_text, power_text, span_text, temperature_text
+from ..units import area_text, difference_text, power_text, span_text, temperature_text
 from .sidebar import Sidebar, pair, paragraph
 
 
@@ -41,6 +41,8 @@ class ResultPanel(OfResult, bpy.types.Panel):
         if several:
             for part in summary["parts"]:
                 _draw_row(context, layout.box(), part["name"], part)
+        for contact in summary["contacts"]:
+            _draw_contact(context, layout.box(), contact)
         _draw_balance(layout, summary)
         for warning in summary["warnings"]:
             paragraph(context, layout, warning, "ERROR")
@@ -61,6 +63,14 @@ def _draw_row(context: bpy.types.Context, box: bpy.types.UILayout, name: str, ro
         pair(column, "Film", f"{row['film']:.3g} W/m²K")
 
 
+def _draw_contact(context: bpy.types.Context, box: bpy.types.UILayout, contact: dict) -> None:
+    first, second = contact["parts"] if contact["heat"] >= 0 else reversed(contact["parts"])
+    column = box.column(align=True)
+    pair(column, f"{first} to {second}", power_text(abs(contact["heat"])))
+    pair(column, "Drop", difference_text(context.scene, abs(contact["drop"])))
+    pair(column, "Area", area_text(context.scene, contact["area"]))
+
+
 def heat_text(watts: float) -> str:
     """As in "12 W in": heat into the part is positive, and a sign alone leaves the direction to be guessed."""
     return f"{power_text(abs(watts))} {'in' if watts >= 0 else 'out'}"
@@ -79,7 +89,7 @@ class WaysPanel(OfResult, bpy.types.Panel):
     bl_label = "Where the Heat Goes"
 
     def draw(self, context: bpy.types.Context) -> None:
-        for sentence in words.ways_out(present(context)):
+        for sentence in present(context).get("where_heat_goes", []):
             paragraph(context, self.layout, sentence)
 
 

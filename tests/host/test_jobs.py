@@ -51,7 +51,7 @@ LINE = json.dumps({"stage": "solve", "fraction": 0.5, "text": "half-way"})
 
 def test_progress_is_taken_in_among_other_output():
     job = python(f"print('a library says hello'); print('{LINE}'); print('[1, 2]')")
-    assert ending_of(job) == jobs.Ending()
+    assert ending_of(job) == jobs.Ending(said="[1, 2]")
     assert job.progress == jobs.Progress("solve", 0.5, "half-way")
 
 

@@ -12,7 +12,7 @@ import pytest
 bpy = pytest.importorskip("bpy")
 
 from fluxface import addon  # noqa: E402
-from fluxface.addon import jobs, running, study, view  # noqa: E402
+from fluxface.addon import cases, jobs, parts, running, study, view  # noqa: E402
 from fluxface.solver.result import read_field  # noqa: E402
 from modelled import block, lamp, select, side, tag  # noqa: E402
 
@@ -155,7 +155,7 @@ def test_a_place_that_cannot_be_written_is_told(scene, tmp_path):
         bpy.ops.fluxface.run()
 
 
-def look_until_over(look) -> None:
+def look_to_the_end(look) -> None:
     deadline = time.monotonic() + 60.0
     while (wait := look()) is not None:
         assert time.monotonic() < deadline, "it took too long"
@@ -167,12 +167,12 @@ def test_looking_from_time_to_time_never_waits_and_ends_with_the_result(scene):
     state = bpy.context.window_manager.fluxface
     run = running.start(bpy.context)
     state.running = True
-    look = running._look(run)
+    look = running.look_until_over(run.job, lambda ending: running.finish(run, ending), "Temperatures")
     began = time.monotonic()
     look()
     assert time.monotonic() - began < 0.1
     assert state.running
-    look_until_over(look)
+    look_to_the_end(look)
     assert not state.running
     assert view.has_result(part)
 
@@ -186,11 +186,11 @@ def test_cancel_ends_the_run_and_keeps_the_older_result(scene, monkeypatch):
     monkeypatch.setattr(jobs, "solve", lambda *_: jobs.Job(sleep))
     run = running.start(bpy.context)
     state.running, state.cancelled = True, False
-    look = running._look(run)
+    look = running.look_until_over(run.job, lambda ending: running.finish(run, ending), "Temperatures")
     look()
     assert not bpy.ops.fluxface.run.poll()
     bpy.ops.fluxface.cancel()
-    look_until_over(look)
+    look_to_the_end(look)
     assert not state.running
     assert outcome(scene, part).summary == summary
     assert outcome(scene, part).message == ""
@@ -200,7 +200,7 @@ def test_a_part_deleted_while_the_solver_runs_is_no_trouble(scene):
     part = lamp(scene)
     run = running.start(bpy.context)
     bpy.data.objects.remove(part)
-    assert running.finish(run, running.wait(run)) is None
+    assert running.finish(run, running.wait(run.job)) is None
 
 
 def test_opening_another_file_ends_the_run(scene, monkeypatch):
@@ -226,26 +226,93 @@ def test_a_scene_in_millimetres_gives_the_same_temperatures(scene):
     assert study.summary(outcome(scene, part))["hottest"]["temperature"] == pytest.approx(hottest, rel=1e-4)
 
 
-def test_the_parts_of_a_collection_are_solved_together(scene):
-    assembly = bpy.data.collections.new("assembly")
-    scene.collection.children.link(assembly)
-    scene.fluxface.collection = assembly
+@pytest.fixture
+def assembly(scene) -> bpy.types.Collection:
+    """A chip of 5 W on a sink in air, and a lid that touches nothing."""
+    made = bpy.data.collections.new("assembly")
+    scene.collection.children.link(made)
+    scene.fluxface.collection = made
     scene.fluxface.order, scene.fluxface.size = "1", 0.02
-    chip, sink = block("chip", size=(0.02, 0.02, 0.01), at=(0, 0, 0.015)), block("sink")
-    for part in (chip, sink):
+    for name, size, height in (("chip", (0.02, 0.02, 0.01), 0.015), ("sink", (0.08, 0.06, 0.02), 0.0)):
+        part = block(name, size=size, at=(0, 0, height))
         scene.collection.objects.unlink(part)
-        assembly.objects.link(part)
-    chip.fluxface.heat = 5.0
-    air = tag(scene, sink, "air", ~side(sink, "+z"))
-    air.use_convection = True
-    bpy.ops.fluxface.contact_add()
+        made.objects.link(part)
+    bpy.data.objects["chip"].fluxface.heat = 5.0
+    sink = bpy.data.objects["sink"]
+    tag(scene, sink, "air", ~side(sink, "+z")).use_convection = True
+    return made
+
+
+def test_contacts_are_found_and_keep_what_they_are_given(scene, assembly):
+    bpy.ops.fluxface.contacts_find()
+    assert len(scene.fluxface.contacts) == 1
     contact = scene.fluxface.contacts[0]
-    contact.first, contact.second, contact.crossing, contact.conductance = chip, sink, "CONDUCTANCE", 5000.0
+    assert {contact.first.name, contact.second.name} == {"chip", "sink"}
+    assert contact.area == pytest.approx(0.02 * 0.02, rel=1e-5)
+    contact.crossing = "BONDED"
+    bpy.data.objects["chip"].location.x = 0.035
+    bpy.ops.fluxface.contacts_find()
+    assert [each.crossing for each in scene.fluxface.contacts] == ["BONDED"]
+    assert scene.fluxface.contacts[0].area == pytest.approx(0.02 * 0.015, rel=1e-5)
+
+
+def test_the_parts_of_a_collection_are_solved_together(scene, assembly):
+    bpy.ops.fluxface.contacts_find()
+    contact = scene.fluxface.contacts[0]
+    contact.crossing, contact.conductance = "CONDUCTANCE", 5000.0
     bpy.ops.fluxface.run()
     summary = json.loads(assembly.fluxface.outcome.summary)
     assert [part["name"] for part in summary["parts"]] == ["chip", "sink"]
     assert summary["contacts"][0]["area"] == pytest.approx(0.02 * 0.02, rel=1e-6)
     assert abs(summary["contacts"][0]["heat"]) == pytest.approx(5.0, rel=1e-6)
-    assert summary["contacts"][0]["drop"] == pytest.approx(5.0 / (5000.0 * 0.02 * 0.02), rel=1e-6)
-    assert view.has_result(chip)
-    assert view.has_result(sink)
+    assert abs(summary["contacts"][0]["drop"]) == pytest.approx(5.0 / (5000.0 * 0.02 * 0.02), rel=1e-6)
+    assert all(view.has_result(bpy.data.objects[name]) for name in ("chip", "sink"))
+
+
+@pytest.mark.parametrize(
+    ("crossing", "values", "conductance"),
+    [
+        ("CONDUCTANCE", {"conductance": 4000.0}, 4000.0),
+        ("RESISTANCE", {"resistance": 2e-4}, 5000.0),
+        ("FILLER", {"thickness": 0.5e-3, "conductivity": 3.0}, 6000.0),
+        ("BONDED", {}, None),
+    ],
+)
+def test_a_contact_is_given_in_any_of_four_ways(scene, assembly, crossing, values, conductance):
+    bpy.ops.fluxface.contact_add()
+    contact = scene.fluxface.contacts[0]
+    contact.first, contact.second = (bpy.data.objects[name] for name in ("chip", "sink"))
+    contact.crossing = crossing
+    for key, value in values.items():
+        setattr(contact, key, value)
+    members = study.parts(bpy.context)
+    with parts.in_sight(bpy.context, members) as depsgraph:
+        case = cases.build_case(scene, members, depsgraph)
+    assert case.contacts[0].parts == (0, 1)
+    assert case.contacts[0].conductance == (None if conductance is None else pytest.approx(conductance, rel=1e-6))
+
+
+@pytest.mark.parametrize(
+    ("fault", "sentence"),
+    [
+        ({"second": None}, "The contact between 'chip' and no part does not name two different parts."),
+        ({"crossing": "RESISTANCE", "resistance": 0.0}, "The contact between 'chip' and 'sink' has a value of zero."),
+        ({"crossing": "FILLER", "thickness": 0.0}, "The contact between 'chip' and 'sink' has a value of zero."),
+    ],
+)
+def test_faults_of_contacts_are_told(scene, assembly, fault, sentence):
+    bpy.ops.fluxface.contacts_find()
+    for key, value in fault.items():
+        setattr(scene.fluxface.contacts[0], key, value)
+    with pytest.raises(RuntimeError, match=sentence):
+        bpy.ops.fluxface.run()
+    assert assembly.fluxface.outcome.message == sentence
+
+
+def test_parts_that_run_through_each_other_are_told_with_the_place(scene, assembly):
+    bpy.ops.fluxface.contacts_find()
+    bpy.data.objects["chip"].location.z = 0.01
+    with pytest.raises(RuntimeError, match="'chip' and 'sink' run through each other"):
+        bpy.ops.fluxface.run()
+    bpy.ops.fluxface.show_place()
+    assert abs(scene.cursor.location.z) <= 0.015
