@@ -57,6 +57,20 @@ def winding_numbers(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
     return np.arctan2(numerator, denominator).sum(axis=1) / (2.0 * np.pi)
 
 
+def distances(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
+    """(P,) m, of points (P, 3) from their triangles (P, 3, 3)."""
+    sides = np.roll(corners, -1, axis=1) - corners
+    offset = points[:, None] - corners
+    normal = np.cross(sides[:, 0], sides[:, 1])
+    square = np.maximum(np.einsum("pci,pci->pc", sides, sides), np.finfo(float).tiny)
+    fraction = np.clip(np.einsum("pci,pci->pc", offset, sides) / square, 0, 1)
+    from_sides = np.linalg.norm(offset - fraction[:, :, None] * sides, axis=2).min(axis=1)
+    above = (np.einsum("pci,pi->pc", np.cross(sides, offset), normal) >= 0).all(axis=1)
+    length = np.linalg.norm(normal, axis=1)
+    from_plane = np.abs(np.einsum("pi,pi->p", offset[:, 0], normal)) / np.where(length > 0, length, 1.0)
+    return np.where(above & (length > 0), from_plane, from_sides)
+
+
 def one_part(surface: Surface, part: int) -> Surface:
     """The triangles of one part, with only the vertices that they use."""
     mine = surface.part == part
@@ -70,9 +84,9 @@ def one_part(surface: Surface, part: int) -> Surface:
     )
 
 
-def weld(surface: Surface) -> Surface:
-    """Vertices within WELD_TOLERANCE made one; triangles that collapse by it are dropped."""
-    tolerance = WELD_TOLERANCE * diagonal(surface.vertices)
+def weld(surface: Surface, share: float = WELD_TOLERANCE) -> Surface:
+    """Vertices within that share of the diagonal made one; triangles that collapse by it are dropped."""
+    tolerance = share * diagonal(surface.vertices)
     near = cKDTree(surface.vertices).query_pairs(tolerance, output_type="ndarray")
     if len(near):
         count = len(surface.vertices)

@@ -5,17 +5,14 @@ Si, TetGen, a Delaunay-based quality tetrahedral mesh generator, ACM Trans. Math
 
 from __future__ import annotations
 
-import os
-import subprocess
-import sys
-import tempfile
-from pathlib import Path
+from dataclasses import dataclass
 
 import numpy as np
 
 from ..case import Accuracy, Surface
 from ..errors import Trouble
 from ..fem.mesh import CELL_FACES, Mesh, face_keys
+from .apart import Apart, run_apart
 from .surface import areas, centred, enclosed_volume, triangle_corners, winding_numbers
 
 REGULAR = 1.0 / (6.0 * np.sqrt(2.0))  # volume of the regular tetrahedron of unit edge
@@ -28,12 +25,26 @@ CELLS_BY_DEFAULT = 20_000
 ADDED_POINTS_BY_DEFAULT = 40_000
 # Quadratic nodes per corner node: one for each edge more, of which a large mesh has about seven a corner.
 NODES_PER_CORNER = {1: 1.0, 2: 7.5}
-SECONDS = 900
+SECONDS, SECONDS_BY_DEFAULT = 900, 120
+# Axes that no modelled edge follows.
+ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
 
 
 def size_by_default(volume: float) -> float:
     """Mean edge (m) at which a compact body of ``volume`` (m3) takes CELLS_BY_DEFAULT tetrahedra."""
     return float(np.cbrt(volume / (CELLS_BY_DEFAULT * MEAN_CELL * REGULAR)))
+
+
+@dataclass(frozen=True)
+class Attempt:
+    """One way to ask the mesher. switches: added to the usual ones. turned: the part in axes that no edge follows."""
+
+    switches: str = ""
+    turned: bool = False
+
+
+# What one way refuses another often takes: which predicates come out as zero depends on axes and tolerance. Measured.
+ATTEMPTS = (Attempt(), Attempt(turned=True), Attempt("T1e-12"))
 
 
 def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
@@ -47,7 +58,8 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
     size = accuracy.size / scale if accuracy.size else size_by_default(volume)
     _check_count(volume, size, name, accuracy)
     facets, marker_of = np.unique(np.stack([unit.face, unit.tag]), axis=1, return_inverse=True)
-    found = _tetrahedralise(unit, marker_of.reshape(-1) + 1, size, name, accuracy)
+    markers = marker_of.reshape(-1) + 1
+    found = _tetrahedralise(unit, markers, size, name, accuracy)
     cells = _within(found["points"], found["cells"], found["regions"], corners)
     boundary = outer_faces(cells)
     marker = _markers_of(boundary, found["faces"], found["markers"], len(found["points"]))
@@ -61,7 +73,7 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
         boundary_part=np.full(len(boundary), part, np.int32),
         boundary_face=facets[0, marker - 1],
     )
-    _check_faithful(points, boundary, marker, corners, marker_of.reshape(-1) + 1, name)
+    _check_faithful(points, boundary, marker, corners, markers, name)
     return mesh
 
 
@@ -88,39 +100,41 @@ def _tetrahedralise(
     # s0: no smoothing pass, which takes most of the time; the bound of 10 degrees removes the slivers it would.
     # A: number the regions, so that cavities can be told from solid.
     switches = f"pq1.414/10a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{added}Q"
-    with tempfile.TemporaryDirectory(prefix="fluxface-") as folder:
-        source, target = Path(folder, "surface.npz"), Path(folder, "tetrahedra.npz")
-        np.savez(source, points=unit.vertices, facets=unit.triangles, markers=markers.astype(np.int32))
-        program = Path(__file__).with_name("tetgen_process.py")
+    seconds = SECONDS if accuracy.size else SECONDS_BY_DEFAULT
+    refusals = []
+    for attempt in ATTEMPTS:
+        axes = ASKEW if attempt.turned else np.eye(3)
+        surface = {
+            "points": unit.vertices @ axes if attempt.turned else unit.vertices,
+            "facets": unit.triangles,
+            "markers": markers.astype(np.int32),
+        }
         try:
-            done = subprocess.run(
-                [sys.executable, str(program), str(source), str(target), switches],
-                cwd=folder,
-                env={**os.environ, "PYTHONPATH": os.pathsep.join(filter(None, sys.path))},
-                capture_output=True,
-                text=True,
-                timeout=SECONDS,
-            )
-        except subprocess.TimeoutExpired as error:
-            raise Trouble(
-                "limits",
-                f"Filling '{name}' with tetrahedra took longer than {SECONDS} s.",
-                "Choose a larger size or simplify the part.",
-            ) from error
-        if not target.exists():
-            raise _refusal(name, done)
-        with np.load(target) as found:
-            arrays = dict(found)
-    if accuracy.size and len(arrays["points"]) - len(unit.vertices) >= added:
-        raise _too_many(name, len(arrays["points"]) * NODES_PER_CORNER[accuracy.order], accuracy)
-    return arrays
+            found = run_apart("tetrahedra", surface, switches + attempt.switches, seconds)
+        except Apart as apart:
+            refusals.append(apart)
+            if apart.kind in ("missing", "time"):
+                break
+            continue
+        if accuracy.size and len(found["points"]) - len(unit.vertices) >= added:
+            raise _too_many(name, len(found["points"]) * NODES_PER_CORNER[accuracy.order], accuracy)
+        if attempt.turned:
+            found["points"] = found["points"] @ axes.T
+            found["points"][: len(unit.vertices)] = unit.vertices
+        return found
+    raise _refusal(name, refusals, seconds)
 
 
-def _refusal(name: str, done: subprocess.CompletedProcess[str]) -> Trouble:
-    lines = done.stderr.strip().splitlines()
-    if "ModuleNotFoundError" in done.stderr:
-        return Trouble("geometry", f"The mesher could not start: {lines[-1]}.", "Install Fluxface again.")
-    if "self-intersect" in done.stderr:
+def _refusal(name: str, refusals: list[Apart], seconds: float) -> Trouble:
+    if refusals[-1].kind == "missing":
+        return Trouble("geometry", f"The mesher could not start: {refusals[-1].text}.", "Install Fluxface again.")
+    if refusals[-1].kind == "time":
+        return Trouble(
+            "limits",
+            f"Filling '{name}' with tetrahedra took longer than {seconds:g} s.",
+            "Choose a larger size or simplify the part.",
+        )
+    if any("self-intersect" in refusal.text for refusal in refusals):
         return Trouble(
             "geometry",
             f"Faces of '{name}' run through each other, so it cannot be filled with tetrahedra.",
