@@ -33,7 +33,8 @@ TOLERANCE = 1e-10
 # Close to balance it is rounding, not the method, that stops a step.
 ROUNDING = 1e-9
 MOST_STEPS = 60
-SMALLEST_DAMPING = 1.0 / 256.0
+# Radiation falls with the cube of the temperature: from a start far too cold the whole step is far too long.
+SMALLEST_DAMPING = 2.0**-30
 LINEAR_REDUCTION = 1e-12
 NEWTON_REDUCTION = 1e-6
 
@@ -169,7 +170,7 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
         if share <= TOLERANCE:
             break
         change = linear_solver.solve(iterate.tangent[free][:, free], -iterate.residual[free], reduction)
-        following = _damped(system, iterate, free, change)
+        following = _damped(system, iterate, free, change, SMALLEST_DAMPING if share > ROUNDING else 1.0)
         steps += 1
         if following is None and share <= ROUNDING:
             break
@@ -208,25 +209,33 @@ def _on_free(interpolation: csr_array | None, free: np.ndarray) -> csr_array | N
 
 
 def _unbalanced_share(problem: Problem, system: System, iterate: Iterate, free: np.ndarray) -> float:
-    """What the free nodes are short of, as a share of the heat that passes; 0 where rounding alone is left."""
+    """What the free nodes are short of, as a share of the heat that passes.
+
+    Where next to none passes, rounding is what is left of it: so much as could be that counts as ROUNDING.
+    """
     left = np.abs(iterate.residual[free]).sum()
-    if left <= np.finfo(float).eps * (abs(system.matrix) @ np.abs(iterate.rise))[free].sum():
-        return 0.0
     terms = [heat for heats in heat_through(problem, system.reference + iterate.rise) for heat in heats.values()]
     released = problem.heat_density[problem.mesh.cell_part] * problem.shape.volume
     held = np.delete(iterate.residual, free)
     passing = 0.5 * (np.abs(terms).sum() + np.abs(released).sum() + np.abs(held).sum())
-    return float(left / passing) if passing else float("inf")
+    rounding = np.finfo(float).eps * _summed(system, iterate)[free].sum()
+    return float(left / (passing + rounding / ROUNDING)) if left else 0.0
 
 
-def _damped(system: System, iterate: Iterate, free: np.ndarray, change: np.ndarray) -> Iterate | None:
-    """The longest of the steps 1, 1/2, 1/4, ... along ``change`` that lessens the residual; None if none does.
+def _summed(system: System, iterate: Iterate) -> np.ndarray:
+    """(N,) W, the size of what adds up to each node's residual: linear terms by the rise, the others by all of T."""
+    others = iterate.tangent - system.matrix
+    return abs(system.matrix) @ np.abs(iterate.rise) + abs(others) @ np.abs(system.reference + iterate.rise)
+
+
+def _damped(system: System, iterate: Iterate, free: np.ndarray, change: np.ndarray, smallest: float) -> Iterate | None:
+    """The longest of the steps 1, 1/2, 1/4, ... ``smallest`` along ``change`` that lessens the residual, if any does.
 
     Armijo, Pacific J. Math. 16 (1966) 1.
     """
     before = np.linalg.norm(iterate.residual[free])
     damping = 1.0
-    while damping >= SMALLEST_DAMPING:
+    while damping >= smallest:
         rise = iterate.rise.copy()
         rise[free] += damping * change
         following = Iterate(rise, *system.residual_and_tangent(rise))
