@@ -7,7 +7,7 @@ from pathlib import Path
 
 import bpy
 
-from . import settings
+from . import legend_in_view, settings
 from .picture import picture_frame, render_picture
 from .result_object import build_results, part_of, remove_result, result_of
 from .settings import draw_settings, material_of, refresh, settings_of
@@ -43,12 +43,15 @@ def clear(part: bpy.types.Object) -> None:
     remove_result(result)
     for scene in scenes:
         settings.reveal(scene, part)
+        settings.apply_showing(scene)
         refresh(scene)
 
 
 def register() -> None:
     settings.register()
+    legend_in_view.register()
 
 
 def unregister() -> None:
+    legend_in_view.unregister()
     settings.unregister()

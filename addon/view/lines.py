@@ -7,6 +7,7 @@ SIGGRAPH (1990) gives the kinds of line, from memory.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable
 
 import numpy as np
@@ -14,7 +15,7 @@ import numpy as np
 from .framing import Frame
 
 # Facets of a rounded surface meet at less than this, edges of a design at more.
-CREASE = np.radians(28.0)
+CREASE = math.radians(28.0)
 
 # How far a ribbon stands before its surface, in its own widths, so that it is not cut by it.
 LIFT = 2.5
@@ -38,7 +39,7 @@ def drawn_edges(places: np.ndarray, triangles: np.ndarray, eye: np.ndarray) -> t
     normals = np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0])
     normals /= np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-300)
     first, second = normals[faces[:, 0]], normals[faces[:, 1]]
-    sharp = (first * second).sum(axis=1) < np.cos(CREASE)
+    sharp = (first * second).sum(axis=1) < math.cos(CREASE)
     facing = ((eye - corners[:, 0]) * normals).sum(axis=1) > 0
     outline = facing[faces[:, 0]] != facing[faces[:, 1]]
     seen = facing[faces].any(axis=1)

@@ -11,6 +11,7 @@ import numpy as np
 from ...solver.errors import Trouble
 from ...solver.result import Field, read_field
 from ..units import metres_per_unit
+from .lines import CREASE
 from .material import SHOWN
 from .scale import Scale
 
@@ -85,6 +86,7 @@ def _build_result(
     mesh = mesh_of(f"{part.name} temperature", local, triangles)
     for name in (TEMPERATURE, SHOWN):
         write_kelvin(mesh, name, temperature)
+    mesh.set_sharp_from_angle(angle=CREASE)
     mesh.materials.append(material)
     result = result_of(part) or _new_result(part, mesh)
     stale, result.data = result.data, mesh

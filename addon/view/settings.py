@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import json
+from collections.abc import Iterator, Mapping
+from typing import Any
 
 import bpy
 from bpy.props import BoolProperty, EnumProperty, FloatProperty, PointerProperty, StringProperty
@@ -15,6 +17,9 @@ from .result_object import colour, part_of, results_in, temperatures
 from .scale import Scale, Unit, spanning
 
 TRUE_TRANSFORM = "Standard"
+
+# Solid shading in the results' own colours: no light on them, and form from the drawn ridges and valleys.
+TRUE_SOLID = {"color_type": "VERTEX", "light": "FLAT", "show_cavity": True, "cavity_type": "SCREEN"}
 
 
 def _range_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
@@ -75,7 +80,7 @@ class ViewSettings(bpy.types.PropertyGroup):
     coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
     hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")
     material: PointerProperty(type=bpy.types.Material, options={"HIDDEN"})
-    solid_colour: StringProperty(options={"HIDDEN"}, description="What Solid shading showed before the result")
+    solid_before: StringProperty(options={"HIDDEN"}, description="How Solid shading was set before results, as JSON")
 
 
 def settings_of(scene: bpy.types.Scene) -> ViewSettings:
@@ -117,11 +122,15 @@ def refresh(scene: bpy.types.Scene) -> None:
 
 def apply_showing(scene: bpy.types.Scene) -> None:
     """Hide the parts beneath their results or the results over their parts; other objects stay as they are."""
-    showing = settings_of(scene).showing
-    for result in results_in(scene):
-        _hide(scene, result, showing == "PART")
-        _hide(scene, part_of(result), showing == "RESULT")
-    _colour_solid_views(settings_of(scene))
+    settings, results = settings_of(scene), results_in(scene)
+    shown = settings.showing == "RESULT"
+    for result in results:
+        _hide(scene, result, not shown)
+        _hide(scene, part_of(result), shown)
+    if results and shown:
+        _colour_solid_views(settings)
+    else:
+        _restore_solid_views(settings)
 
 
 def reveal(scene: bpy.types.Scene, part: bpy.types.Object) -> None:
@@ -136,12 +145,22 @@ def _hide(scene: bpy.types.Scene, object_: bpy.types.Object, hidden: bool) -> No
 
 
 def _colour_solid_views(settings: ViewSettings) -> None:
-    """Solid shading takes colours from the attribute while results show, and from where it did before otherwise."""
+    """Set Solid shading to the true colours, except where it shows colours already in a way the designer chose."""
     for shading in _shadings():
-        if settings.showing == "RESULT" and shading.color_type != "VERTEX":
-            settings.solid_colour, shading.color_type = shading.color_type, "VERTEX"
-        elif settings.showing == "PART" and shading.color_type == "VERTEX" and settings.solid_colour:
-            shading.color_type = settings.solid_colour
+        if shading.color_type != TRUE_SOLID["color_type"]:
+            settings.solid_before = json.dumps({name: getattr(shading, name) for name in TRUE_SOLID})
+            _set(shading, TRUE_SOLID)
+
+
+def _restore_solid_views(settings: ViewSettings) -> None:
+    for shading in _shadings():
+        if settings.solid_before and shading.color_type == TRUE_SOLID["color_type"]:
+            _set(shading, json.loads(settings.solid_before))
+
+
+def _set(shading: bpy.types.View3DShading, values: Mapping[str, Any]) -> None:
+    for name, value in values.items():
+        setattr(shading, name, value)
 
 
 def _shadings() -> Iterator[bpy.types.View3DShading]:

@@ -19,7 +19,7 @@ from .result_object import mesh_of
 SAMPLES, LEAST_SAMPLES, NOISE = 32, 6, 0.01
 
 # The shadow is soft: it is rendered coarser and smoothed, which surfaces whose colour is measured must not be.
-SHADOW_SAMPLES, SHADOW_PERCENTAGE = 32, 30
+SHADOW_SAMPLES, SHADOW_PERCENTAGE = 64, 25
 
 # Of the eye's distance to what is seen: the pane that holds the legend, and the reach of the ground.
 PANE = 0.1
@@ -163,7 +163,7 @@ def _set_up(studio: Studio, engine: str, backdrop: Colour) -> None:
     render.use_file_extension = False
     render.dither_intensity = 0.0
     # What a file tells of where and when it was made is the designer's to tell.
-    for told in ("camera", "date", "filename", "frame", "hostname", "render_time", "scene", "time"):
+    for told in ("camera", "date", "filename", "frame", "hostname", "memory", "render_time", "scene", "time"):
         setattr(render, f"use_stamp_{told}", False)
     render.image_settings.file_format, render.image_settings.color_mode = "PNG", "RGB"
     scene.display_settings.display_device = "sRGB"
