@@ -8,7 +8,7 @@ from __future__ import annotations
 import bpy
 import numpy as np
 from designer import celsius, choose_material, open_empty_file, paint, tag_faces
-from shapes import (
+from modelling import (
     ALONG_X,
     ALONG_Z,
     Shell,

@@ -8,7 +8,7 @@ from __future__ import annotations
 import bpy
 import numpy as np
 from designer import celsius, choose_material, open_empty_file, paint, tag_faces
-from shapes import (
+from modelling import (
     ALONG_X,
     ALONG_Y,
     Shell,
@@ -41,10 +41,10 @@ LOOKS = [
 ]
 
 
-def prepare() -> bpy.types.Object:
+def prepare(fin_height: float = FIN_HEIGHT) -> bpy.types.Object:
     """The lamp in a new file, tagged and ready to run."""
     open_empty_file(metres_per_unit=0.001)
-    lamp = build()
+    lamp = build(fin_height)
     region, normals = region_of_faces(lamp.data), face_normals(lamp.data)
     paint(lamp, LOOKS, region)
     choose_material(lamp, "aluminium A380, die-cast (AlSi9Cu3)")
@@ -94,12 +94,12 @@ SCREWS = [(x, z) for x in (-31.5, 31.5) for z in (-20.5, 20.5)]
 
 def _posts() -> list[Shell]:
     """Four posts in the corners, for the cover's screws."""
-    outlines = [circle(3.6, 12), circle(4.0, 12)]
+    outlines = [circle(3.6, 10), circle(4.0, 10)]
     return [loft(outlines, [4.5, WELL + 1.0], ALONG_Y, (x, 0.0, z), INSIDE) for x, z in SCREWS]
 
 
 def _screw_holes() -> list[Shell]:
-    return [loft([circle(1.25, 8)] * 2, [3.0, 14.0], ALONG_Y, (x, 0.0, z), INSIDE) for x, z in SCREWS]
+    return [loft([circle(1.25, 6)] * 2, [3.0, 14.0], ALONG_Y, (x, 0.0, z), INSIDE) for x, z in SCREWS]
 
 
 EYE_DEPTH, EYE_DROP, EYE_RADIUS = 9.5, HEIGHT / 2 + 9.0, 7.5
