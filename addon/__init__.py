@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from . import jobs, operators, panels, properties, upkeep, view
+from . import jobs, operators, overlay, panels, properties, upkeep, view
 
-ROOMS = (properties, view, operators, panels, upkeep)
+ROOMS = (properties, view, operators, panels, overlay, upkeep)
 
 
 def register() -> None:

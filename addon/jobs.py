@@ -20,7 +20,7 @@ from pathlib import Path
 from typing import IO
 
 from ..solver import errors
-from ..solver.errors import EXIT_CODES, Trouble
+from ..solver.errors import Trouble
 
 # What the solver imports and the host may keep where only the host's own interpreter looks.
 LIBRARIES = ("numpy", "scipy", "tetgen", "pyamg")
@@ -193,14 +193,12 @@ def _trouble(code: int, stderr: Iterable[str]) -> Trouble:
         return Trouble(said["kind"], said["message"], said["mend"], where["faces"], where["points"])
     except (IndexError, ValueError, KeyError, TypeError):
         pass
-    if code < 0 or code not in EXIT_CODES.values():
-        detail = f" Its last words: {lines[-1].strip()}" if lines and code > 0 else ""
-        return Trouble(
-            "limits",
-            f"The solver was stopped before it was done.{detail}",
-            "Run again; if it happens again, give a coarser mesh: memory may not suffice.",
-        )
-    return Trouble("limits", "The solver failed without saying why.", "Run again.")
+    detail = f" Its last words: {lines[-1].strip()}" if lines and code > 0 else ""
+    return Trouble(
+        "limits",
+        f"The solver was stopped before it was done.{detail}",
+        "Run again; if it happens again, give a coarser mesh: memory may not suffice.",
+    )
 
 
 def _own_group() -> dict:

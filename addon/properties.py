@@ -35,6 +35,12 @@ FILMS = (
     ("cylinder_crossflow", "Flow across a cylinder", "Forced convection across a cylinder"),
 )
 
+FLUIDS = (
+    ("air", "Air", "At the pressure of the atmosphere"),
+    ("water", "Water", ""),
+    ("engine oil", "Engine oil", "Unused"),
+)
+
 
 def _keep_name_unique(tag: TagDefinition, _context: bpy.types.Context) -> None:
     """Results are told by tag name, and 'untagged' is what they call the rest."""
@@ -74,7 +80,7 @@ class Terms:
         name="Fluid at", description="Temperature of the air or liquid away from the part",
         default=ROOM, min=0.0, unit="TEMPERATURE", step=100,
     )  # fmt: skip
-    fluid: StringProperty(name="Fluid", description="Fluid of the film correlation", default="air")
+    fluid: EnumProperty(name="Fluid", description="Fluid of the film correlation", items=FLUIDS)
     length: FloatProperty(
         name="Length", description="Height of the wall or run of the flow; 0 = measured on the tag",
         min=0.0, unit="LENGTH", precision=4,
@@ -230,6 +236,9 @@ class StudySettings(bpy.types.PropertyGroup):
     tags: CollectionProperty(type=TagDefinition)
     active_tag: IntProperty(name="Face tag")
     untagged: PointerProperty(type=UntaggedTerms)
+    show_tags: BoolProperty(
+        name="Show on the Part", description="Draw the faces of each tag in its colour", default=True
+    )  # fmt: skip
     collection: PointerProperty(
         name="Parts", type=bpy.types.Collection,
         description="Every mesh object of this collection is a part; none = the active object alone",

@@ -70,5 +70,6 @@ def area_text(scene: bpy.types.Scene, square_metres: float) -> str:
 def power_text(watts: float) -> str:
     """As in "12 W" and "−350 mW"; heat into the part is positive."""
     size = abs(watts)
-    number, unit = (watts, "W") if size >= 1 or size < 1e-9 else (watts * 1e3, "mW")
-    return f"{number:.3g} {unit}".replace("-", "−") if size < 1000 else f"{number:,.0f} {unit}".replace("-", "−")
+    # Below a microwatt is the rounding of a sum of watts.
+    number, unit = (watts, "W") if size >= 1 else (watts * 1e3, "mW") if size >= 1e-6 else (0.0, "W")
+    return (f"{number:.3g} {unit}" if size < 1000 else f"{number:,.0f} {unit}").replace("-", "−")

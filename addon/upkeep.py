@@ -10,6 +10,7 @@ from bpy.app.handlers import persistent
 
 from ..solver.errors import Trouble
 from . import host, jobs, study, tags
+from .overlay import tag_colours
 from .parts import Skin, modelled, placed, world_matrix
 
 # Long enough that dragging a vertex does not measure the part at every move.
@@ -24,6 +25,7 @@ def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
         surface = modelled(part, depsgraph)
     except Trouble:
         return
+    tag_colours.take(part, surface)
     areas = json.dumps(placed(surface, world_matrix(part), 1.0).area_by_tag())
     shape = _digest(surface)
     if (part.fluxface.areas, part.fluxface.shape) != (areas, shape):
@@ -55,12 +57,14 @@ def refresh() -> None:
 
 @persistent
 def on_change(_scene: bpy.types.Scene, depsgraph: bpy.types.Depsgraph) -> None:
-    """After edits, refresh once things are quiet."""
-    changed = any(
-        isinstance(update.id, bpy.types.Object) and (update.is_updated_geometry or update.is_updated_transform)
-        for update in depsgraph.updates
-    )
-    if changed and not bpy.app.background:
+    """After edits, and when another part becomes the active one, refresh once things are quiet."""
+    changes = [update for update in depsgraph.updates if isinstance(update.id, bpy.types.Object)]
+    for update in changes:
+        if update.is_updated_geometry:
+            tag_colours.drop(update.id)
+    part = study.active_part(bpy.context)
+    changed = any(update.is_updated_geometry or update.is_updated_transform for update in changes)
+    if (changed or (part is not None and not tag_colours.knows(part))) and not bpy.app.background:
         _stop_waiting()
         bpy.app.timers.register(refresh, first_interval=QUIET_SECONDS)
 
@@ -76,8 +80,10 @@ def before_save(_file: str) -> None:
 
 @persistent
 def before_load(_file: str) -> None:
-    """A run belongs to the file that is being left."""
+    """A run belongs to the file that is being left, and so do the tags that are drawn."""
     jobs.stop_all()
+    bpy.context.window_manager.fluxface.running = False
+    tag_colours.forget()
 
 
 HANDLERS = (("depsgraph_update_post", on_change), ("save_pre", before_save), ("load_pre", before_load))

@@ -56,3 +56,9 @@ def crossing(scene: bpy.types.Scene, contact: ContactSettings) -> str:
         return f"{as_typed(contact.resistance):g} m²K/W"
     thickness = 1e3 * as_typed(contact.thickness) * metres_per_unit(scene)
     return f"{thickness:.3g} mm of {as_typed(contact.conductivity):g} W/mK"
+
+
+def heat_through(watts: float) -> str:
+    """As in "12 W in": heat into the part is positive, and a sign alone leaves the direction to be guessed."""
+    direction = "" if power_text(watts) == "0 W" else " in" if watts > 0 else " out"
+    return power_text(abs(watts)) + direction

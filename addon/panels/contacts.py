@@ -35,7 +35,6 @@ class ContactList(bpy.types.UIList):
 class ContactsPanel(Sidebar, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_contacts"
     bl_label = "Contacts"
-    bl_options = {"DEFAULT_CLOSED"}
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
@@ -44,7 +43,7 @@ class ContactsPanel(Sidebar, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         layout, settings = self.layout, context.scene.fluxface
         row = layout.row()
-        row.template_list("FLUXFACE_UL_contacts", "", settings, "contacts", settings, "active_contact", rows=2)
+        row.template_list("FLUXFACE_UL_contacts", "", settings, "contacts", settings, "active_contact", rows=3)
         buttons = row.column(align=True)
         buttons.operator("fluxface.contact_add", text="", icon="ADD")
         buttons.operator("fluxface.contact_remove", text="", icon="REMOVE")

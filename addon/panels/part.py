@@ -22,6 +22,8 @@ class MaterialPanel(_OfPart, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         part = study.active_part(context)
         values = part.fluxface.material
+        if context.scene.fluxface.collection is not None:
+            self.layout.label(text=f"of '{part.name}'")
         self.layout.prop(values, "name", text="", icon="MATERIAL", placeholder="Search the library")
         if not values.name:
             paragraph(context, self.layout, f"Choose what '{part.name}' is made of.", "INFO")

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import bpy
 
 from ...solver.errors import Trouble
@@ -25,6 +27,15 @@ class OfResult(Sidebar):
         return present(context) is not None
 
 
+class _OfSeveral(Sidebar):
+    bl_parent_id = "FLUXFACE_PT_result"
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        summary = present(context)
+        return summary is not None and len(summary["parts"]) > 1
+
+
 class ResultPanel(OfResult, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_result"
     bl_label = "Temperatures"
@@ -32,55 +43,15 @@ class ResultPanel(OfResult, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         layout, summary = self.layout, present(context)
         column = layout.column(align=True)
-        several = len(summary["parts"]) > 1
         for end in ("hottest", "coldest"):
-            where = f" on {summary[end]['part']}" if several else ""
+            where = f" on {summary[end]['part']}" if len(summary["parts"]) > 1 else ""
             pair(column, end.capitalize() + where, temperature_text(context.scene, summary[end]["temperature"]))
-        for tag in summary["tags"]:
-            _draw_row(context, layout.box(), tag["name"], tag)
-        if several:
-            for part in summary["parts"]:
-                _draw_row(context, layout.box(), part["name"], part)
-        for contact in summary["contacts"]:
-            _draw_contact(context, layout.box(), contact)
-        _draw_balance(layout, summary)
+        pair(column, "Heat in", power_text(summary["balance"]["in"]))
+        pair(column, "Heat out", power_text(-summary["balance"]["out"]))
         for warning in summary["warnings"]:
             paragraph(context, layout, warning, "ERROR")
         for caution in words.CAUTIONS:
             paragraph(context, layout, caution, "INFO")
-
-
-def _draw_row(context: bpy.types.Context, box: bpy.types.UILayout, name: str, row: dict) -> None:
-    column = box.column(align=True)
-    pair(column, name, heat_text(row["heat"]))
-    if row["mean"] is None:
-        column.label(text="covered by contacts")
-        return
-    pair(column, "Mean", temperature_text(context.scene, row["mean"]))
-    pair(column, "Range", span_text(context.scene, row["min"], row["max"]))
-    pair(column, "Area", area_text(context.scene, row["area"]))
-    if row.get("film"):
-        pair(column, "Film", f"{row['film']:.3g} W/m²K")
-
-
-def _draw_contact(context: bpy.types.Context, box: bpy.types.UILayout, contact: dict) -> None:
-    first, second = contact["parts"] if contact["heat"] >= 0 else reversed(contact["parts"])
-    column = box.column(align=True)
-    pair(column, f"{first} to {second}", power_text(abs(contact["heat"])))
-    pair(column, "Drop", difference_text(context.scene, abs(contact["drop"])))
-    pair(column, "Area", area_text(context.scene, contact["area"]))
-
-
-def heat_text(watts: float) -> str:
-    """As in "12 W in": heat into the part is positive, and a sign alone leaves the direction to be guessed."""
-    return f"{power_text(abs(watts))} {'in' if watts >= 0 else 'out'}"
-
-
-def _draw_balance(layout: bpy.types.UILayout, summary: Summary) -> None:
-    balance = summary["balance"]
-    column = layout.column(align=True)
-    pair(column, "Heat in", power_text(balance["in"]))
-    pair(column, "Heat out", power_text(-balance["out"]))
 
 
 class WaysPanel(OfResult, bpy.types.Panel):
@@ -93,4 +64,53 @@ class WaysPanel(OfResult, bpy.types.Panel):
             paragraph(context, self.layout, sentence)
 
 
-register, unregister = bpy.utils.register_classes_factory((ResultPanel, WaysPanel))
+class TagRowsPanel(OfResult, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_tag_rows"
+    bl_parent_id = "FLUXFACE_PT_result"
+    bl_label = "By Face Tag"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        for row in present(context)["tags"]:
+            column = self.layout.box().column(align=True)
+            pair(column, row["name"], words.heat_through(row["heat"]))
+            _draw_temperatures(context, column, row)
+            if row["film"]:
+                pair(column, "Film", f"{row['film']:.3g} W/m²K")
+
+
+class PartRowsPanel(_OfSeveral, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_part_rows"
+    bl_label = "By Part"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        for row in present(context)["parts"]:
+            column = self.layout.box().column(align=True)
+            pair(column, row["name"], f"{power_text(row['heat'])} inside" if row["heat"] else "")
+            _draw_temperatures(context, column, row)
+
+
+class ContactRowsPanel(_OfSeveral, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_contact_rows"
+    bl_label = "By Contact"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        for row in present(context)["contacts"]:
+            column = self.layout.box().column(align=True)
+            first, second = row["parts"] if row["heat"] >= 0 else reversed(row["parts"])
+            pair(column, f"{first} to {second}", power_text(abs(row["heat"])))
+            pair(column, "Drop", difference_text(context.scene, abs(row["drop"])))
+            pair(column, "Area", area_text(context.scene, row["area"]))
+
+
+def _draw_temperatures(context: bpy.types.Context, column: bpy.types.UILayout, row: dict[str, Any]) -> None:
+    if row["mean"] is None:
+        column.label(text="covered by contacts")
+        return
+    pair(column, "Mean", temperature_text(context.scene, row["mean"]))
+    pair(column, "Range", span_text(context.scene, row["min"], row["max"]))
+    pair(column, "Area", area_text(context.scene, row["area"]))
+
+
+register, unregister = bpy.utils.register_classes_factory(
+    (ResultPanel, WaysPanel, TagRowsPanel, PartRowsPanel, ContactRowsPanel)
+)

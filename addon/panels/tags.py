@@ -12,7 +12,7 @@ from .. import study, tags, words
 from ..cases import FILM_NEEDS
 from ..properties import Terms
 from ..units import area_text, metres_per_unit
-from .sidebar import Sidebar, fields, named, paragraph
+from .sidebar import Sidebar, fields, paragraph
 
 
 def areas(context: bpy.types.Context) -> dict[int, float]:
@@ -68,6 +68,7 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         row.operator("fluxface.tag_give")
         row.operator("fluxface.tag_take")
         row.operator("fluxface.tag_select")
+        layout.prop(settings, "show_tags")
         draw_terms(context, layout, tag)
 
 
@@ -110,7 +111,7 @@ def _draw_convection(_context: bpy.types.Context, column: bpy.types.UILayout, te
     if terms.film == "COEFFICIENT":
         column.prop(terms, "coefficient", text="Film (W/m²K)")
     else:
-        named(column, "Fluid").prop(terms, "fluid", text="")
+        column.prop(terms, "fluid", text="")
         for key in FILM_NEEDS.get(terms.film, ()):
             column.prop(terms, key)
     column.prop(terms, "ambient")

@@ -11,6 +11,8 @@ bpy = pytest.importorskip("bpy")
 from fluxface.addon import materials, running, study, view, words  # noqa: E402
 from fluxface.addon.panels import contacts, look, part, result, run, sidebar, tags  # noqa: E402
 from fluxface.addon.panels import study as study_panels  # noqa: E402
+from fluxface.solver.case import CORRELATIONS  # noqa: E402
+from fluxface.solver.physics.fluids import FLUIDS  # noqa: E402
 from modelled import block, lamp, side, tag  # noqa: E402
 
 ICONS = {item.identifier for item in bpy.types.UILayout.bl_rna.functions["label"].parameters["icon"].enum_items}
@@ -29,6 +31,9 @@ PANELS = (
     look.LookPanel,
     result.ResultPanel,
     result.WaysPanel,
+    result.TagRowsPanel,
+    result.PartRowsPanel,
+    result.ContactRowsPanel,
 )
 LISTS = {
     "FLUXFACE_UL_tags": tags.TagList,
@@ -226,6 +231,18 @@ def test_what_a_tag_carries(scene):
     assert words.carries(scene, fins) == "−250 mW, 8 W/m²K, ε 0.9 to 25 °C"
     fins.film, fins.surroundings = "natural", 283.15
     assert words.carries(scene, fins) == "−250 mW, still air to 25 °C, ε 0.9 to 10 °C"
+
+
+def test_films_and_fluids_are_those_of_the_solver(scene):
+    offered = scene.fluxface.untagged.bl_rna.properties
+    films = {item.identifier for item in offered["film"].enum_items}
+    assert films == {"COEFFICIENT", *CORRELATIONS}
+    assert {item.identifier for item in offered["fluid"].enum_items} == set(FLUIDS)
+
+
+@pytest.mark.parametrize(("watts", "text"), [(12.0, "12 W in"), (-3.0, "3 W out"), (0.0, "0 W"), (-1e-13, "0 W")])
+def test_the_direction_of_heat_is_in_words(watts, text):
+    assert words.heat_through(watts) == text
 
 
 def test_progress_counts_all_stages():
