@@ -42,6 +42,8 @@ def tag_faces(part: bpy.types.Object, name: str, faces: np.ndarray, **terms: flo
         setattr(tag, f"use_{switch}", True)
 
 
+THREE_QUARTER = Vector((0.62, -0.90, 0.55))  # from the part to the eye
+
 Look = tuple[str, tuple[float, float, float], float]  # name, linear colour, roughness
 
 
@@ -61,4 +63,5 @@ def look_at(part: bpy.types.Object) -> None:
     for space in (space for screen in bpy.data.screens for area in screen.areas for space in area.spaces):
         if space.type == "VIEW_3D":
             space.region_3d.view_location, space.region_3d.view_distance = corners.mean(axis=0), 1.6 * size
+            space.region_3d.view_rotation = THREE_QUARTER.to_track_quat("Z", "Y")
             space.clip_start, space.clip_end = 1e-3 * size, 1e3 * size
