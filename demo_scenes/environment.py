@@ -82,14 +82,17 @@ def ready(version: str, interpreter: str) -> Path:
     wanted = _stamp(version)
     if _read_stamp(folder) == wanted:
         return python
-    print(f"Making {folder.name} for Python {version}: some 400 MB to fetch, a few minutes, only once.", flush=True)
     try:
         if _made_for(folder) != version:
-            _create(folder, interpreter)
+            _create(folder, version, interpreter)
+        else:
+            print(f"Bringing {folder.name} up to date with pyproject.toml.", flush=True)
         (folder / STAMP).write_text("unfinished\n", "utf-8")
         _install(python, interpreter)
     except (OSError, subprocess.CalledProcessError) as error:
         sys.exit(f"{folder.name} could not be made: {error}. Mend what the lines above say and run this again.")
+    except KeyboardInterrupt:
+        sys.exit(f"{folder.name} is half made; the next run makes it anew.")
     (folder / STAMP).write_text(wanted, "utf-8")
     return python
 
@@ -119,9 +122,10 @@ def _made_for(folder: Path) -> str | None:
     return first if first in VERSIONS else None
 
 
-def _create(folder: Path, interpreter: str) -> None:
+def _create(folder: Path, version: str, interpreter: str) -> None:
     if folder.exists() and _read_stamp(folder) is None:
         sys.exit(f"{folder} is there and was not made by this command. Move it away and run this again.")
+    print(f"Making {folder.name} for Python {version}: some 400 MB to fetch, a few minutes, only once.", flush=True)
     shutil.rmtree(folder, ignore_errors=True)
     folder.mkdir()
     (folder / STAMP).write_text("unfinished\n", "utf-8")
@@ -130,7 +134,7 @@ def _create(folder: Path, interpreter: str) -> None:
 
 
 def _install(python: Path, interpreter: str) -> None:
-    pip = [interpreter, "-m", "pip", "--python", str(python), "--disable-pip-version-check", "--quiet"]
+    pip = [interpreter, "-m", "pip", "--python", str(python), "--disable-pip-version-check", "-qq"]
     subprocess.run([*pip, "install", "--editable", f"{ROOT}[{EXTRAS}]"], check=True, stdin=subprocess.DEVNULL)
 
 
