@@ -15,7 +15,7 @@ import numpy as np
 from .framing import Frame
 
 # Facets of a rounded surface meet at less than this, edges of a design at more.
-CREASE = math.radians(28.0)
+CREASE = math.radians(40.0)
 
 # How far a ribbon stands before its surface, in its own widths, so that it is not cut by it.
 LIFT = 2.5
@@ -89,6 +89,9 @@ def outside(segments: np.ndarray, frame: Frame, pixel: np.ndarray, radius: float
     kept = spans[:, 1] - spans[:, 0] > 1e-9
     which, spans = which[kept], spans[kept]
     whole = segments[which]
+    # Shares of the way in the picture are not shares of the way in space: the nearer half looks longer.
+    near, far = ((frame.eye - whole) @ frame.axes[2]).T[..., None]
+    spans = spans * near / (far + spans * (near - far))
     return whole[:, :1] + spans[..., None] * (whole[:, 1:] - whole[:, :1]), which
 
 

@@ -85,7 +85,7 @@ def show_image(world: bpy.types.World, image: bpy.types.Image) -> None:
 
 
 def _emptied(owner: bpy.types.Material | bpy.types.World) -> bpy.types.NodeTree:
-    if not owner.use_nodes:  # always on in later hosts, where setting it is deprecated
+    if owner.node_tree is None:  # later hosts make one by themselves
         owner.use_nodes = True
     owner.node_tree.nodes.clear()
     return owner.node_tree

@@ -22,7 +22,7 @@ from .legend import Legend
 from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
 from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
-from .result_object import result_of, write_kelvin
+from .result_object import result_of, settle, write_kelvin
 from .settings import material_of, refresh, scale_of
 from .skin import Skin, hottest_in_view, skin_of
 from .studio import Studio, opened
@@ -59,12 +59,12 @@ def render_picture(
     picture is taken in a scene of its own, and nothing of the designer's is touched.
     Raises Trouble when there is no result to show or the picture cannot be rendered or written.
     """
-    results = _results(parts)
+    frame = picture_frame(scene, parts, size)
     refresh(scene)
-    skin, frame, coloured = skin_of(results), picture_frame(scene, parts, size), material_of(scene)
+    results, coloured, scale = _results(parts), material_of(scene), scale_of(scene)
+    skin = skin_of(results)
     marked = hottest_in_view(skin, frame)
     in_view, ringed = (None, None) if marked is None else (skin.temperature[marked], frame.pixels(skin.places[marked]))
-    scale = scale_of(scene)
     legend = Legend(scale, scale.ticks(), skin.temperature.min(), skin.temperature.max(), in_view)
     with tempfile.TemporaryDirectory() as folder, opened(frame, engine, BACKDROP) as studio:
         for result in results:
@@ -82,8 +82,10 @@ def render_picture(
 
 def picture_frame(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], size: tuple[int, int]) -> Frame:
     """The frame that :func:`render_picture` takes: which pixel shows which place of the world."""
+    settle(scene)
+    skin = skin_of(_results(parts))
     towards_eye = scene.camera.matrix_world.col[2][:3] if scene.camera else THREE_QUARTER
-    return framed(skin_of(_results(parts)).places, looking(np.array(towards_eye)), size, window_for_parts(size))
+    return framed(skin.places, looking(np.array(towards_eye)), size, window_for_parts(size))
 
 
 def _results(parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:

@@ -37,6 +37,12 @@ def results_in(scene: bpy.types.Scene) -> list[bpy.types.Object]:
     return [object_ for object_ in scene.objects if object_.get(MARK) and object_.parent]
 
 
+def settle(scene: bpy.types.Scene) -> None:
+    """Let objects be where they have been put; until then their matrices tell where they were."""
+    for layer in scene.view_layers:
+        layer.update()
+
+
 def build_results(
     scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], folder: Path, material: bpy.types.Material
 ) -> list[bpy.types.Object]:
@@ -46,8 +52,7 @@ def build_results(
     """
     field = read_field(folder)
     _check(field, len(parts))
-    for layer in scene.view_layers:
-        layer.update()
+    settle(scene)
     return [_build_result(scene, part, *_surface_of(field, index), material) for index, part in enumerate(parts)]
 
 

@@ -13,7 +13,7 @@ from ..host import redraw
 from ..units import TEMPERATURE_UNITS
 from .colours import DEFAULT_MAP, colour_maps
 from .material import paint
-from .result_object import colour, part_of, results_in, temperatures
+from .result_object import colour, part_of, results_in, settle, temperatures
 from .scale import Scale, Unit, spanning
 
 TRUE_TRANSFORM = "Standard"
@@ -122,6 +122,7 @@ def refresh(scene: bpy.types.Scene) -> None:
 
 def apply_showing(scene: bpy.types.Scene) -> None:
     """Hide the parts beneath their results or the results over their parts; other objects stay as they are."""
+    settle(scene)  # what has just been made is in no view layer yet, and could not be hidden
     settings, results = settings_of(scene), results_in(scene)
     shown = settings.showing == "RESULT"
     for result in results:
@@ -146,16 +147,20 @@ def _hide(scene: bpy.types.Scene, object_: bpy.types.Object, hidden: bool) -> No
 
 def _colour_solid_views(settings: ViewSettings) -> None:
     """Set Solid shading to the true colours, except where it shows colours already in a way the designer chose."""
-    for shading in _shadings():
+    before = json.loads(settings.solid_before or "{}")
+    for view, shading in _shadings():
         if shading.color_type != TRUE_SOLID["color_type"]:
-            settings.solid_before = json.dumps({name: getattr(shading, name) for name in TRUE_SOLID})
+            before[view] = {name: getattr(shading, name) for name in TRUE_SOLID}
             _set(shading, TRUE_SOLID)
+    settings.solid_before = json.dumps(before)
 
 
 def _restore_solid_views(settings: ViewSettings) -> None:
-    for shading in _shadings():
-        if settings.solid_before and shading.color_type == TRUE_SOLID["color_type"]:
-            _set(shading, json.loads(settings.solid_before))
+    before = json.loads(settings.solid_before or "{}")
+    for view, shading in _shadings():
+        if view in before and shading.color_type == TRUE_SOLID["color_type"]:
+            _set(shading, before[view])
+    settings.solid_before = ""
 
 
 def _set(shading: bpy.types.View3DShading, values: Mapping[str, Any]) -> None:
@@ -163,10 +168,11 @@ def _set(shading: bpy.types.View3DShading, values: Mapping[str, Any]) -> None:
         setattr(shading, name, value)
 
 
-def _shadings() -> Iterator[bpy.types.View3DShading]:
+def _shadings() -> Iterator[tuple[str, bpy.types.View3DShading]]:
+    """The shading of every 3D view of the file, with a name for it that lasts as long as the layout of the screen."""
     for screen in bpy.data.screens:
-        for area in screen.areas:
-            yield from (space.shading for space in area.spaces if space.type == "VIEW_3D")
+        for place, area in enumerate(screen.areas):
+            yield from ((f"{screen.name}/{place}", space.shading) for space in area.spaces if space.type == "VIEW_3D")
 
 
 def draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:

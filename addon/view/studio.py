@@ -11,6 +11,7 @@ import bpy
 import numpy as np
 from mathutils import Matrix
 
+from ...solver.errors import Trouble
 from .framing import Frame
 from .material import Colour, light_evenly, paint_matt, paint_plain, show_image
 from .result_object import mesh_of
@@ -19,7 +20,8 @@ from .result_object import mesh_of
 SAMPLES, LEAST_SAMPLES, NOISE = 32, 6, 0.01
 
 # The shadow is soft: it is rendered coarser and smoothed, which surfaces whose colour is measured must not be.
-SHADOW_SAMPLES, SHADOW_PERCENTAGE = 64, 25
+SHADOW_SAMPLES, SHADOW_PERCENTAGE = 48, 25
+SMOOTHING = 0.012
 
 # Of the eye's distance to what is seen: the pane that holds the legend, and the reach of the ground.
 PANE = 0.1
@@ -88,22 +90,22 @@ class Studio:
     def cast_shadow(self, height: float, colour: Colour, folder: Path) -> None:
         """Set what stands here on a ground at world ``height``: a backdrop of ``colour`` that holds the shadow.
 
-        The backdrop is kept in ``folder`` until the studio is closed.
+        folder: for the time of the call.
         """
         standing = list(self.scene.objects)
         ground = self._lay_ground(height, colour)
         render, cycles = self.scene.render, self.scene.cycles
         for object_ in standing:
             object_.visible_camera = False
-        cycles.samples, cycles.use_denoising, render.resolution_percentage = SHADOW_SAMPLES, True, SHADOW_PERCENTAGE
+        cycles.samples, render.resolution_percentage = SHADOW_SAMPLES, SHADOW_PERCENTAGE
         render.image_settings.file_format = "OPEN_EXR"
         self.render(folder / "shadow.exr")
         render.image_settings.file_format = "PNG"
-        cycles.samples, cycles.use_denoising, render.resolution_percentage = SAMPLES, False, 100
+        cycles.samples, render.resolution_percentage = SAMPLES, 100
         for object_ in standing:
             object_.visible_camera = True
         ground.hide_render = True
-        show_image(self.scene.world, self.keep(bpy.data.images.load(str(folder / "shadow.exr"))))
+        show_image(self.scene.world, self.keep(_smoothed(folder / "shadow.exr")))
 
     def _lay_ground(self, height: float, colour: Colour) -> bpy.types.Object:
         """Matt and without end, so far as the eye can tell; of ``colour`` where no shadow falls."""
@@ -116,8 +118,38 @@ class Studio:
         return self.place(mesh, self.scaled, matt)
 
     def render(self, path: Path) -> None:
+        """Render to ``path``. Raises Trouble when that does not come to its end."""
         self.scene.render.filepath = str(path)
-        bpy.ops.render.render(write_still=True, scene=self.scene.name)
+        try:
+            bpy.ops.render.render(write_still=True, scene=self.scene.name)
+        except RuntimeError as error:
+            raise Trouble("limits", f"The picture could not be rendered: {str(error).strip()}", "Try again.") from error
+        if not path.is_file():
+            raise Trouble("limits", "The rendering of the picture was cut short.", "Try again.")
+
+
+def _smoothed(file: Path) -> bpy.types.Image:
+    """A new image of what ``file`` shows, blurred by SMOOTHING of its width."""
+    sharp = bpy.data.images.load(str(file))
+    width, height = sharp.size
+    values = np.empty(width * height * 4, dtype=np.float32)
+    sharp.pixels.foreach_get(values)
+    bpy.data.images.remove(sharp)
+    values = values.reshape(height, width, 4)
+    reach = max(1, round(SMOOTHING * width / 2))
+    for axis in (0, 1, 0, 1):
+        values = _mean_along(values, reach, axis)
+    smooth = bpy.data.images.new("studio", width, height, float_buffer=True)
+    smooth.pixels.foreach_set(np.ascontiguousarray(values, dtype=np.float32).ravel())
+    return smooth
+
+
+def _mean_along(values: np.ndarray, reach: int, axis: int) -> np.ndarray:
+    """Running means over ``reach`` to either side; the outermost values go on beyond the rim."""
+    rim = [(0, 0)] * values.ndim
+    rim[axis] = (reach, reach)
+    windows = np.lib.stride_tricks.sliding_window_view(np.pad(values, rim, mode="edge"), 2 * reach + 1, axis)
+    return windows.mean(axis=-1)
 
 
 def _cast_no_shadow(object_: bpy.types.Object) -> None:

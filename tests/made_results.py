@@ -2,17 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
+import bpy
 import numpy as np
-import pytest
-
-bpy = pytest.importorskip("bpy")
-
-from fluxface.addon import view  # noqa: E402
-from fluxface.solver.result import Field, write_result  # noqa: E402
+from fluxface.solver.result import Field, write_result
 
 # The faces of a grid cell as corner offsets, outward, and the direction each looks in.
 SIDES = {
@@ -42,7 +38,7 @@ def grid_boundary(filled: np.ndarray, size: np.ndarray) -> tuple[np.ndarray, np.
 
 
 def finned_block() -> tuple[np.ndarray, np.ndarray]:
-    """A plate of 120 x 80 mm with seven fins on it, and a hole through it."""
+    """A plate of 120 x 80 mm with seven fins on it, and a notch in it."""
     filled = np.zeros((26, 16, 12), dtype=bool)
     filled[:, :, :3] = True
     filled[::4, :, 3:] = True
@@ -77,34 +73,16 @@ def write_made_result(
 
 
 def warm_at_one_end(x: np.ndarray, y: np.ndarray, z: np.ndarray) -> np.ndarray:
-    """From 303.15 K up to some 345 K beside the near left corner of the plate."""
+    """From 303.15 K up to some 345 K under the near left corner of the plate."""
     return 303.15 + 42.0 * np.exp(-((x - 0.03) ** 2 + (y - 0.02) ** 2) / 0.05**2 - z / 0.05)
 
 
-@pytest.fixture
-def scene() -> Iterator[Any]:
-    """An empty scene of a fresh file, with what the view registers."""
-    bpy.ops.wm.read_factory_settings(use_empty=True)
-    alone = not hasattr(bpy.types.Scene, "fluxface_view")
-    if alone:
-        view.register()
-    bpy.context.scene.unit_settings.temperature_unit = "CELSIUS"
-    yield bpy.context.scene
-    if alone:
-        view.unregister()
-
-
-@pytest.fixture
-def new_part(scene: Any) -> Callable[..., Any]:
-    """Makes a stand-in part: a mesh object of one triangle, placed as told."""
-
-    def make(name: str, **placement: Any) -> Any:
-        mesh = bpy.data.meshes.new(name)
-        mesh.from_pydata([(0, 0, 0), (1, 0, 0), (0, 1, 0)], [], [(0, 1, 2)])
-        part = bpy.data.objects.new(name, mesh)
-        scene.collection.objects.link(part)
-        for key, value in placement.items():
-            setattr(part, key, value)
-        return part
-
-    return make
+def stand_in(name: str, **placement: Any) -> bpy.types.Object:
+    """A part in the scene, placed as told: one triangle, for a result does not ask what it lies on."""
+    mesh = bpy.data.meshes.new(name)
+    mesh.from_pydata([(0, 0, 0), (1, 0, 0), (0, 1, 0)], [], [(0, 1, 2)])
+    part = bpy.data.objects.new(name, mesh)
+    bpy.context.scene.collection.objects.link(part)
+    for key, value in placement.items():
+        setattr(part, key, value)
+    return part
