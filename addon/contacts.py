@@ -19,10 +19,10 @@ from .parts import in_sight
 
 @dataclass(frozen=True)
 class Search:
-    """folder: holds the case while it is looked at."""
+    """scene: the host's id for the session. folder: holds the case while it is looked at."""
 
     job: jobs.Job
-    scene: str
+    scene: int
     folder: tempfile.TemporaryDirectory
 
 
@@ -36,13 +36,13 @@ def start(context: bpy.types.Context) -> Search:
         case = build_shapes(context.scene, members, depsgraph)
     folder = tempfile.TemporaryDirectory(prefix="fluxface-", dir=bpy.app.tempdir)
     write_case(case, Path(folder.name))
-    return Search(jobs.check(Path(folder.name)), context.scene.name, folder)
+    return Search(jobs.check(Path(folder.name)), context.scene.session_uid, folder)
 
 
 def finish(search: Search, ending: jobs.Ending) -> Trouble | None:
     """Add a contact for each new pair, and keep with each contact the area over which its parts touch."""
     search.folder.cleanup()
-    scene = bpy.data.scenes.get(search.scene)
+    scene = next((scene for scene in bpy.data.scenes if scene.session_uid == search.scene), None)
     if scene is None or ending.cancelled:
         return None
     if ending.trouble:

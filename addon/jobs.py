@@ -12,6 +12,7 @@ import shutil
 import signal
 import subprocess
 import sys
+import tempfile
 import threading
 from collections import deque
 from collections.abc import Iterable, Sequence
@@ -60,11 +61,21 @@ class Job:
         self._stderr: deque[str] = deque(maxlen=STDERR_LINES)
         self._said = ""
         self.progress = Progress("mesh", 0.0, "Starting")
+        # What the solver leaves in its temporary folder when it is killed goes with the folder.
+        self._scratch = tempfile.TemporaryDirectory(prefix="fluxface-", ignore_cleanup_errors=True)
+        temporary = dict.fromkeys(("TMPDIR", "TEMP", "TMP"), self._scratch.name)
         try:
             self._process = subprocess.Popen(
-                command, env=environment, stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=subprocess.PIPE,
-                text=True, encoding="utf-8", errors="replace", **_own_group(),
-            )  # fmt: skip
+                command,
+                env={**(environment or os.environ), **temporary},
+                stdin=subprocess.PIPE,
+                stdout=subprocess.PIPE,
+                stderr=subprocess.PIPE,
+                text=True,
+                encoding="utf-8",
+                errors="replace",
+                **_own_group(),
+            )
         except OSError as error:
             raise Trouble(
                 "limits",
@@ -87,6 +98,7 @@ class Job:
         if not ended:
             return None
         self._process.stdin.close()
+        self._scratch.cleanup()
         _live.discard(self)
         if self._cancelled:
             return Ending(cancelled=True)
@@ -193,10 +205,15 @@ def _trouble(code: int, stderr: Iterable[str]) -> Trouble:
         return Trouble(said["kind"], said["message"], said["mend"], where["faces"], where["points"])
     except (IndexError, ValueError, KeyError, TypeError):
         pass
-    detail = f" Its last words: {lines[-1].strip()}" if lines and code > 0 else ""
+    if lines and code > 0:
+        return Trouble(
+            "limits",
+            f"The solver broke off with an error of its own: {lines[-1].strip()}",
+            "Run again; if it happens again, report these words.",
+        )
     return Trouble(
         "limits",
-        f"The solver was stopped before it was done.{detail}",
+        "The solver was stopped before it was done.",
         "Run again; if it happens again, give a coarser mesh: memory may not suffice.",
     )
 

@@ -157,8 +157,13 @@ def at_hand() -> dict[str, Material]:
 def label_of(material: Material) -> str:
     """What a list says of a material beside its name, as in "metals, 167 W/mK"."""
     row = library().get(material.name)
-    along = [value if isinstance(value, float) else value.value[0] for value in material.conductivity]
-    return f"{row.group if row else 'my own'}, {' / '.join(f'{value:g}' for value in along)} W/mK"
+    return f"{row.group if row else 'my own'}, {conductivity_text(material)}"
+
+
+def conductivity_text(material: Material) -> str:
+    """As in "167 W/mK", and "0.8 / 0.3 W/mK" along and across; of a table the value at its first temperature."""
+    along = [value.value[0] if isinstance(value, Table) else value for value in material.conductivity]
+    return f"{' / '.join(f'{value:g}' for value in dict.fromkeys(along))} W/mK"
 
 
 def source_of(values: MaterialValues) -> str:

@@ -20,16 +20,18 @@ from .properties import Outcome
 
 STAGES = ("mesh", "assemble", "solve", "write")
 SECONDS_BETWEEN_LOOKS = 0.1
-# Names, not references: the host may move or free what they refer to while the solver runs.
 
 
 @dataclass(frozen=True)
 class Run:
-    """inputs: what the result will have been made from, to tell later whether it is current."""
+    """scene, parts: the host's ids for the session, as it may rename, move or free what they stand for meanwhile.
+
+    inputs: what the result will have been made from, to tell later whether it is current.
+    """
 
     job: jobs.Job
-    scene: str
-    parts: tuple[str, ...]
+    scene: int
+    parts: tuple[int, ...]
     result: Path
     inputs: str
 
@@ -67,7 +69,7 @@ def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence
         ) from error
     result = folder / "result"
     job = jobs.solve(folder, result)
-    return Run(job, scene.name, tuple(part.name for part in members), result, inputs)
+    return Run(job, scene.session_uid, tuple(part.session_uid for part in members), result, inputs)
 
 
 def wait(job: jobs.Job) -> jobs.Ending:
@@ -118,10 +120,11 @@ def told(progress: jobs.Progress) -> tuple[str, float]:
 
 def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
     """Show what was solved, or keep what went wrong; an older result stays where a run fails or is cancelled."""
-    scene = bpy.data.scenes.get(run.scene)
-    members = [part for name in run.parts if (part := bpy.data.objects.get(name)) is not None]
+    scene = next((scene for scene in bpy.data.scenes if scene.session_uid == run.scene), None)
+    objects = {thing.session_uid: thing for thing in bpy.data.objects}
+    members = [objects[part] for part in run.parts if part in objects]
     if scene is None or len(members) < len(run.parts):
-        # The designer deleted or renamed a part meanwhile: there is nothing left to show this result on.
+        # The designer deleted a part meanwhile: there is nothing left to show this result on.
         return None
     left = study.outcome(scene, members)
     if ending.cancelled or ending.trouble:

@@ -9,6 +9,7 @@ from __future__ import annotations
 import json
 import secrets
 from collections.abc import Iterable
+from typing import Any
 
 import bmesh
 import bpy
@@ -71,10 +72,18 @@ def restore(scene: bpy.types.Scene, meshes: Iterable[bpy.types.Mesh]) -> None:
     """Give the scene every definition that the meshes hold a copy of and that it lacks."""
     known = {tag.uid for tag in scene.fluxface.tags}
     for mesh in meshes:
-        for copy in json.loads(mesh.get(COPY, "[]")):
+        for copy in _copies(mesh):
             if copy["uid"] not in known:
                 known.add(copy["uid"])
                 groups.fill(scene.fluxface.tags.add(), copy)
+
+
+def _copies(mesh: bpy.types.Mesh) -> list[dict[str, Any]]:
+    """The definitions that the mesh holds; none where the property has been tampered with."""
+    try:
+        return [copy for copy in json.loads(mesh.get(COPY, "[]")) if isinstance(copy["uid"], int)]
+    except (ValueError, TypeError, KeyError):
+        return []
 
 
 # Faces ----------------------------------------------------------------------------------------------------------------

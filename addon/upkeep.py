@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+from contextlib import suppress
 
 import bpy
 from bpy.app.handlers import persistent
@@ -75,7 +76,9 @@ def before_save(_file: str) -> None:
     for scene in bpy.data.scenes:
         for mesh in study.meshes([thing for thing in scene.objects if thing.type == "MESH"]):
             if mesh.library is None and tags.is_tagged(mesh):
-                tags.keep_copies(scene, mesh)
+                # A foreign attribute of that name is told of when a run starts, and does not spoil saving.
+                with suppress(Trouble):
+                    tags.keep_copies(scene, mesh)
 
 
 @persistent

@@ -21,6 +21,19 @@ class _OnPart(TellsTrouble):
         return True
 
 
+class ChooseMaterial(_OnPart, bpy.types.Operator):
+    bl_idname = "fluxface.material_choose"
+    bl_label = "Choose Material"
+    bl_description = "Make the part of this material"
+
+    name: StringProperty(name="Material")
+
+    def act(self, context: bpy.types.Context) -> None:
+        if self.name not in materials.at_hand():
+            raise Trouble("case", f"There is no material '{self.name}'.", "Choose one of the library.")
+        study.active_part(context).fluxface.material.name = self.name
+
+
 class AddTableRow(_OnPart, bpy.types.Operator):
     bl_idname = "fluxface.table_row_add"
     bl_label = "Add Row"
@@ -79,4 +92,6 @@ class UseEmissivity(TellsTrouble, bpy.types.Operator):
         tags.active(context.scene).emissivity = self.emissivity
 
 
-register, unregister = bpy.utils.register_classes_factory((AddTableRow, RemoveTableRow, KeepMaterial, UseEmissivity))
+register, unregister = bpy.utils.register_classes_factory(
+    (ChooseMaterial, AddTableRow, RemoveTableRow, KeepMaterial, UseEmissivity)
+)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import bpy
 
+from ...solver.materials import Material
 from .. import materials, study
 from ..properties import MaterialProperty
 from .sidebar import Sidebar, fields, named, pair, paragraph
@@ -24,7 +25,9 @@ class MaterialPanel(_OfPart, bpy.types.Panel):
         values = part.fluxface.material
         if context.scene.fluxface.collection is not None:
             self.layout.label(text=f"of '{part.name}'")
-        self.layout.prop(values, "name", text="", icon="MATERIAL", placeholder="Search the library")
+        row = self.layout.row(align=True)
+        row.prop(values, "name", text="", icon="MATERIAL", placeholder="Search the library")
+        row.menu("FLUXFACE_MT_materials", text="", icon="DOWNARROW_HLT")
         if not values.name:
             paragraph(context, self.layout, f"Choose what '{part.name}' is made of.", "INFO")
             return
@@ -74,7 +77,7 @@ class MaterialDetailsPanel(_OfPart, bpy.types.Panel):
 
 def _draw_table(layout: bpy.types.UILayout, item: MaterialProperty, key: str, text: str) -> None:
     box = layout.box()
-    box.row().prop(item, "tabulated", text=f"{text} over temperature")
+    box.row().prop(item, "tabulated", text=text.replace(" (", " table ("))
     if not item.tabulated:
         fields(box).prop(item, "value", text=text)
         return
@@ -105,6 +108,38 @@ class VolumeHeatPanel(_OfPart, bpy.types.Panel):
         fields(self.layout).prop(settings, "heat" if settings.heat_kind == "TOTAL" else "heat_density")
 
 
+class MaterialsMenu(bpy.types.Menu):
+    bl_idname = "FLUXFACE_MT_materials"
+    bl_label = "Materials"
+    bl_description = "The library by groups, and your own"
+
+    def draw(self, _context: bpy.types.Context) -> None:
+        for menu in GROUP_MENUS:
+            self.layout.menu(menu.bl_idname)
+        for name, material in materials.at_hand().items():
+            if name not in materials.library():
+                _offer(self.layout, material)
+
+
+def _offer(layout: bpy.types.UILayout, material: Material) -> None:
+    text = f"{material.name}   {materials.conductivity_text(material)}"
+    layout.operator("fluxface.material_choose", text=text).name = material.name
+
+
+def _menu_of(group: str) -> type[bpy.types.Menu]:
+    """The host takes a submenu by a class of its own only."""
+
+    def draw(self: bpy.types.Menu, _context: bpy.types.Context) -> None:
+        for row in materials.library().values():
+            if row.group == group:
+                _offer(self.layout, row.material)
+
+    name = f"FLUXFACE_MT_materials_{group.replace(' ', '_')}"
+    return type(name, (bpy.types.Menu,), {"bl_idname": name, "bl_label": group.capitalize(), "draw": draw})
+
+
+GROUP_MENUS = tuple(_menu_of(group) for group in dict.fromkeys(row.group for row in materials.library().values()))
+
 register, unregister = bpy.utils.register_classes_factory(
-    (MaterialPanel, TableList, MaterialDetailsPanel, VolumeHeatPanel)
+    (*GROUP_MENUS, MaterialsMenu, MaterialPanel, TableList, MaterialDetailsPanel, VolumeHeatPanel)
 )

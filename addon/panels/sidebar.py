@@ -7,7 +7,7 @@ import textwrap
 import bpy
 
 # Pixels of a usual letter and of what stands beside the text, at the host's scale of one.
-LETTER, BESIDE = 6.2, 36.0
+LETTER, BESIDE = 6.2, 50.0
 NARROWEST = 20
 
 

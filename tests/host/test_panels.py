@@ -73,8 +73,8 @@ class Page:
         return SimpleNamespace()
 
     def menu(self, name: str, **_options) -> None:
-        menu = getattr(bpy.types, name)
-        menu.draw(SimpleNamespace(layout=self), self.context)
+        self.lines.append(f"({getattr(bpy.types, name).bl_label})")
+        getattr(bpy.types, name).draw(SimpleNamespace(layout=self), self.context)
 
     def progress(self, factor: float, text: str) -> None:
         self.lines.append(f"{100 * factor:.0f} % {text}")
@@ -151,6 +151,13 @@ def test_materials_of_every_kind_can_be_drawn(scene):
     part_.fluxface.material.conductivity.tabulated = False
     part_.fluxface.material.conductivity.value = -1.0
     assert "must be greater than" in drawn(scene, part.MaterialPanel)
+
+
+def test_every_library_material_stands_in_a_menu(scene):
+    block()
+    told = drawn(scene, part.MaterialPanel)
+    assert all(f"({name}   " in told for name in materials.library())
+    assert "(Woods)" in told
 
 
 def test_a_run_shows_progress_and_how_to_cancel(scene):

@@ -31,6 +31,15 @@ def test_every_library_material_comes_through_unchanged(scene):
         assert materials.source_of(part.fluxface.material) == row.source
 
 
+def test_a_material_is_chosen_by_name(scene):
+    part = block()
+    bpy.ops.fluxface.material_choose(name="copper, pure")
+    assert materials.material_of(part) == library()["copper, pure"].material
+    with pytest.raises(RuntimeError, match="There is no material 'unobtainable'"):
+        bpy.ops.fluxface.material_choose(name="unobtainable")
+    assert materials.material_of(part).name == "copper, pure"
+
+
 def test_a_changed_value_no_longer_names_the_source(scene):
     part = block()
     part.fluxface.material.conductivity.value = 150.0

@@ -203,6 +203,14 @@ def test_a_part_deleted_while_the_solver_runs_is_no_trouble(scene):
     assert running.finish(run, running.wait(run.job)) is None
 
 
+def test_a_part_renamed_while_the_solver_runs_gets_its_result(scene):
+    part = lamp(scene)
+    run = running.start(bpy.context)
+    part.name = "headlamp"
+    running.finish(run, running.wait(run.job))
+    assert view.has_result(part)
+
+
 def test_opening_another_file_ends_the_run(scene, monkeypatch):
     lamp(scene)
     sleep = [jobs.sys.executable, "-c", "import time; time.sleep(60)"]

@@ -213,6 +213,16 @@ def test_a_tag_that_the_scene_has_is_not_overwritten_by_a_copy(scene):
     assert json.loads(part.data[tags.COPY])[0]["name"] == "lid"
 
 
+def test_a_spoilt_copy_on_a_mesh_is_passed_over(scene, tmp_path):
+    part = block()
+    for spoilt in ("{", "[1]", '[{"name": "x"}]', "null"):
+        part.data[tags.COPY] = spoilt
+        study.restore_tags(scene)
+    assert not scene.fluxface.tags
+    part.data.attributes.new(tags.ATTRIBUTE, "FLOAT", "POINT")
+    assert bpy.ops.wm.save_as_mainfile(filepath=str(tmp_path / "kept.blend")) == {"FINISHED"}
+
+
 def test_areas_are_kept_with_the_part_in_edit_mode_too(scene):
     part = block()
     part.scale = (2.0, 1.0, 1.0)
