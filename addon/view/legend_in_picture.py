@@ -52,8 +52,8 @@ def write_legend(studio: Studio, title: str, legend: Legend, coloured: bpy.types
     write(CAUTION, MARGIN, MARGIN, SMALL, grey, width - 2 * MARGIN)
 
     text = legend.scale.unit.text
-    write("Hottest surface", left, top + 7.0, LABEL, grey)
-    write(text(legend.hottest), left, top + 3.0, VALUE, dark)
+    write("Hottest surface", left, top + 7.6, LABEL, grey)
+    write(text(legend.hottest), left, top + 3.6, VALUE, dark)
     write("Coldest surface", left, bottom - 5.0, LABEL, grey)
     write(text(legend.coldest), left, bottom - 9.0, VALUE, dark)
 

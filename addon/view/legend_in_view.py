@@ -72,6 +72,8 @@ def _remark(context: bpy.types.Context) -> str:
 def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> None:
     """Draw the legend with its lower left ``corner`` (2,) there; ``pixel`` is the size of an interface pixel."""
     text = legend.scale.unit.text
+    spare = 0 if remark else INSET + 4
+    corner = corner - (0, spare * pixel)
     bar_top = BAR_BOTTOM + BAR_HEIGHT
 
     def write(words: str, x: float, y: float, size: float, colour: Sequence[float] = BRIGHT) -> None:
@@ -80,7 +82,7 @@ def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> 
     def fill(places: Sequence[Sequence[float]], colours: Sequence[Sequence[float]]) -> None:
         _fill(corner + np.array(places, dtype=float) * pixel, colours)
 
-    fill(_box(0, 0, *CARD), [GROUND] * 4)
+    fill(_box(0, spare, CARD[0], CARD[1] - spare), [GROUND] * 4)
     write(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL, FAINT)
     for label, kelvin, height in (("Hottest", legend.hottest, bar_top + 24), ("Coldest", legend.coldest, 42)):
         write(label, INSET, height, LABEL, FAINT)

@@ -56,7 +56,8 @@ def render_picture(
     """Render the results of ``parts`` with their legend as a PNG of ``size`` pixels at ``path``, and return the path.
 
     The view is that of the scene's camera, or three-quarter where there is none, moved so that the parts fill it. The
-    picture is taken in a scene of its own, and nothing of the designer's is touched.
+    picture is taken in a scene of its own, and nothing of the designer's is touched. Any engine of the host gives the
+    same colours; the shadow is there with Cycles, which needs no window and no graphics library.
     Raises Trouble when there is no result to show or the picture cannot be rendered or written.
     """
     frame = picture_frame(scene, parts, size)
