@@ -70,16 +70,24 @@ def inputs(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> str:
         "untagged": groups.as_json(settings.untagged),
         "contacts": [groups.as_json(contact) for contact in settings.contacts] if settings.collection else [],
         "study": [*settings.gravity, settings.order, settings.size, scene.unit_settings.scale_length],
-        "parts": [
-            (part.name, part.fluxface.shape, groups.as_json(part.fluxface.material), *_heat(part), *_pose(part, origin))
-            for part in members
-        ],
+        "parts": [_inputs_of(part, origin) for part in members],
     }
     return json.dumps(document)
 
 
-def _heat(part: bpy.types.Object) -> tuple[str, float, float]:
-    return part.fluxface.heat_kind, part.fluxface.heat, part.fluxface.heat_density
+def _inputs_of(part: bpy.types.Object, origin: np.ndarray) -> list:
+    settings = part.fluxface
+    axes = settings.material.axes
+    return [
+        part.name,
+        settings.shape,
+        _pose(part, origin),
+        groups.as_json(settings.material),
+        _pose(axes, axes.matrix_world.translation) if axes else None,
+        settings.heat_kind,
+        settings.heat,
+        settings.heat_density,
+    ]
 
 
 def _pose(part: bpy.types.Object, origin: np.ndarray) -> list[float]:

@@ -99,10 +99,28 @@ def test_a_result_is_out_of_date_when_what_it_depends_on_changes_and_only_then(s
     assert not is_current()
     scene.fluxface.tags["pad"].heat = POWER
     assert is_current()
+    part.rotation_euler.x = 0.5
+    assert not is_current()
+    part.rotation_euler.x = 0.0
+    assert is_current()
     view.settings_of(scene).showing = "PART"
     part.data.vertices[0].co.z -= 0.01
     part.data.update()
     assert not is_current()
+
+
+def test_turning_the_axes_of_a_material_puts_the_result_out_of_date(scene):
+    part, guide = lamp(scene), bpy.data.objects.new("guide", None)
+    scene.collection.objects.link(guide)
+    part.fluxface.material.name = "FR4, bare"
+    part.fluxface.material.axes = guide
+    made_from = study.inputs(scene, [part])
+    guide.location.x = 1.0
+    bpy.context.view_layer.update()
+    assert study.inputs(scene, [part]) == made_from
+    guide.rotation_euler.z = 0.3
+    bpy.context.view_layer.update()
+    assert study.inputs(scene, [part]) != made_from
 
 
 def test_what_fails_in_the_solver_is_told_kept_and_leaves_the_older_result(scene):
