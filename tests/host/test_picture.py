@@ -86,6 +86,7 @@ def test_the_hottest_point_in_view_is_read_back(scene, tmp_path: Path, temperatu
     assert abs(kelvin - skin.temperature[hottest]) < 0.02 * (scale.high - scale.low)
 
 
+@pytest.mark.slow
 def test_surfaces_everywhere_are_read_back(scene, tmp_path: Path) -> None:
     """Not at the hottest point alone: of the places in view, those that no line crosses are within 2 % of the range."""
     part = shown_part(tmp_path, warm_at_one_end, location=(0.2, 0.1, 0.0), rotation_euler=(0.0, 0.0, 0.5))
@@ -184,6 +185,7 @@ def test_without_a_result_there_is_no_picture(scene, tmp_path: Path) -> None:
         view.render_picture(scene, [], tmp_path / "picture.png")
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize("metres_per_unit", [1e-3, 1.0, 1e3])
 def test_parts_of_every_size_are_pictured_alike(scene, tmp_path: Path, metres_per_unit: float) -> None:
     """The studio is to the parts' measure: a picture does not depend on the scene's unit, nor on where the part is."""
