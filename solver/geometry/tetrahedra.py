@@ -13,7 +13,9 @@ from ..case import Accuracy, Surface
 from ..errors import Trouble
 from ..fem.mesh import CELL_FACES, Mesh, face_keys
 from .apart import Apart, run_apart
-from .surface import areas, centred, enclosed_volume, triangle_corners, winding_numbers
+from .boxes import boxes, boxes_of, meeting
+from .edges import edges_of, groups, neighbours
+from .surface import area_vectors, areas, centred, distances, enclosed_volume, triangle_corners, winding_numbers
 
 REGULAR = 1.0 / (6.0 * np.sqrt(2.0))  # volume of the regular tetrahedron of unit edge
 # Measured on boxes of 1e3 to 4e5 tetrahedra: with the largest volume at 1.5 regular tetrahedra of the wanted edge,
@@ -25,6 +27,10 @@ CELLS_BY_DEFAULT = 20_000
 ADDED_POINTS_BY_DEFAULT = 40_000
 # Quadratic nodes per corner node: one for each edge more, of which a large mesh has about seven a corner.
 NODES_PER_CORNER = {1: 1.0, 2: 7.5}
+# Radians: triangles that meet at less are one plane. Between the rounding of single-precision coordinates on a flat
+# face and the turn from one facet to the next of the finest curved surface.
+FLAT = 3e-4
+REACH = 1e-6  # of the unit diagonal: how far a boundary triangle's middle may lie from its modelled face
 SECONDS, SECONDS_BY_DEFAULT = 900, 120
 # Axes that no modelled edge follows.
 ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
@@ -57,24 +63,41 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
     volume = enclosed_volume(corners)
     size = accuracy.size / scale if accuracy.size else size_by_default(volume)
     _check_count(volume, size, name, accuracy)
-    facets, marker_of = np.unique(np.stack([unit.face, unit.tag]), axis=1, return_inverse=True)
-    markers = marker_of.reshape(-1) + 1
+    patches = _flat_patches(unit)
+    markers = patches + 1
     found = _tetrahedralise(unit, markers, size, name, accuracy)
     cells = _within(found["points"], found["cells"], found["regions"], corners)
     boundary = outer_faces(cells)
     marker = _markers_of(boundary, found["faces"], found["markers"], len(found["points"]))
     points, cells, boundary = _used(found["points"], cells, boundary)
-    mesh = Mesh(
+    _check_faithful(points, boundary, marker, corners, markers, name)
+    tag_of = np.empty(patches.max() + 1, np.int32)
+    tag_of[patches] = unit.tag
+    return Mesh(
         nodes=points * scale + centre,
         cells=cells,
         cell_part=np.full(len(cells), part, np.int32),
         boundary=boundary,
-        boundary_tag=facets[1, marker - 1],
+        boundary_tag=tag_of[marker - 1],
         boundary_part=np.full(len(boundary), part, np.int32),
-        boundary_face=facets[0, marker - 1],
+        boundary_face=unit.face[_lying_on(points[boundary].mean(axis=1), marker, corners, markers)],
     )
-    _check_faithful(points, boundary, marker, corners, markers, name)
-    return mesh
+
+
+def _flat_patches(surface: Surface) -> np.ndarray:
+    """(F,) a number for each set of triangles of one tag that lie in one plane, to mark them as one facet.
+
+    TetGen may unite facets of one mark, even at an angle of a degree, which changes the volume; facets of unlike marks
+    in one plane but for rounding it keeps apart, at which it often fails.
+    """
+    vectors = area_vectors(triangle_corners(surface))
+    normal = vectors / np.maximum(np.linalg.norm(vectors, axis=1, keepdims=True), np.finfo(float).tiny)
+    one, other, _ = neighbours(edges_of(surface.triangles))
+    one, other = one // 3, other // 3
+    turn = np.linalg.norm(np.cross(normal[one], normal[other]), axis=1)
+    flat = (turn < FLAT) & (np.einsum("ni,ni->n", normal[one], normal[other]) > 0)
+    flat &= surface.tag[one] == surface.tag[other]
+    return groups(one[flat], other[flat], len(normal))
 
 
 def _check_count(volume: float, size: float, name: str, accuracy: Accuracy) -> None:
@@ -149,8 +172,8 @@ def _refusal(name: str, refusals: list[Apart], seconds: float) -> Trouble:
 
 def _within(points: np.ndarray, cells: np.ndarray, regions: np.ndarray, corners: np.ndarray) -> np.ndarray:
     """The cells of solid regions, each with positive volume; TetGen also fills cavities."""
-    edges = points[cells[:, 1:]] - points[cells[:, :1]]
-    six_volumes = np.linalg.det(edges)
+    a, b, c = (points[cells[:, local]] - points[cells[:, 0]] for local in (1, 2, 3))
+    six_volumes = np.einsum("mi,mi->m", a, np.cross(b, c))
     cells = np.where((six_volumes < 0)[:, None], cells[:, [0, 2, 1, 3]], cells)
     order = np.lexsort((-np.abs(six_volumes), regions))
     names, first = np.unique(regions[order], return_index=True)
@@ -173,6 +196,18 @@ def _markers_of(boundary: np.ndarray, faces: np.ndarray, markers: np.ndarray, no
     order = np.argsort(known)
     at = order[np.clip(np.searchsorted(known, wanted, sorter=order), 0, len(known) - 1)]
     return np.where(known[at] == wanted, markers[at], 0)
+
+
+def _lying_on(places: np.ndarray, marker: np.ndarray, corners: np.ndarray, modelled_marker: np.ndarray) -> np.ndarray:
+    """(B,) the modelled triangle (F, 3, 3) nearest to each place (B, 3), among those of its own marker."""
+    nearest, least = np.zeros(len(places), np.int64), np.full(len(places), np.inf)
+    for i, j in meeting(boxes(places, places), boxes_of(corners), REACH):
+        apart = np.where(marker[i] == modelled_marker[j], distances(places[i], corners[j]), np.inf)
+        # Of several candidates for one place the last written stays, and that shall be the nearest.
+        order = np.argsort(-apart)
+        order = order[apart[order] < least[i[order]]]
+        least[i[order]], nearest[i[order]] = apart[order], j[order]
+    return nearest
 
 
 def _used(points: np.ndarray, cells: np.ndarray, boundary: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
