@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import atexit
+
 from . import jobs, operators, overlay, panels, properties, upkeep, view
 
 ROOMS = (properties, view, operators, panels, overlay, upkeep)
@@ -10,9 +12,12 @@ ROOMS = (properties, view, operators, panels, overlay, upkeep)
 def register() -> None:
     for room in ROOMS:
         room.register()
+    # The host as a module does not disable its add-ons when Python ends, and hangs over what is still registered.
+    atexit.register(unregister)
 
 
 def unregister() -> None:
+    atexit.unregister(unregister)
     jobs.stop_all()
     for room in reversed(ROOMS):
         room.unregister()
