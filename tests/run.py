@@ -22,6 +22,8 @@ sys.path.insert(0, str(ROOT / "demo_scenes"))
 
 import environment  # noqa: E402
 
+# What depends on the Python and on its host; the figures of the published cases do not.
+ON_EVERY_PYTHON = ["tests/unit", "tests/host"]
 NO_TESTS = 5  # pytest's exit code when a selection holds none
 
 
@@ -40,9 +42,9 @@ def main() -> int:
     first = environment.chosen_interpreter()
     others = [] if options.this_python else [item for item in environment.interpreters().items() if item != first]
     outcomes = [run(check) for check in code_checks(environment.ready(*first))]
-    for version, interpreter in (first, *others):
-        python = environment.ready(version, interpreter)
-        outcomes += [run(check) for check in test_checks(python, version, options.quick)]
+    outcomes += [run(check) for check in test_checks(*first, options.quick, [])]
+    for other in others:
+        outcomes += [run(check) for check in test_checks(*other, options.quick, ON_EVERY_PYTHON)]
     return report(outcomes, missing=[v for v in environment.VERSIONS if v not in dict([first, *others])])
 
 
@@ -52,11 +54,14 @@ def code_checks(python: Path) -> Iterator[Check]:
     yield Check("types", [str(python), "-m", "mypy"])
 
 
-def test_checks(python: Path, version: str, quick: bool) -> Iterator[Check]:
-    trouble = environment.host_trouble(python)
-    if trouble:
+def test_checks(version: str, interpreter: str, quick: bool, folders: list[str]) -> Iterator[Check]:
+    """The tests in ``folders``, or all of them when none is named."""
+    python = environment.ready(version, interpreter)
+    if trouble := environment.host_trouble(python):
         print(trouble, file=sys.stderr)
-    pytest = [str(python), "-m", "pytest"]
+    # Without the host its tests are skipped, which must not pass for a success.
+    yield Check(f"host, Python {version}", [str(python), "-c", "import bpy; print(bpy.app.version_string)"])
+    pytest = [str(python), "-m", "pytest", *folders]
     yield Check(f"tests, Python {version}", [*pytest, "-m", "not slow"])
     if not quick:
         yield Check(f"slow tests, Python {version}", [*pytest, "-m", "slow"], fine=(0, NO_TESTS))
