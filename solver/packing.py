@@ -11,10 +11,9 @@ from pathlib import Path
 from . import __version__
 from .errors import Trouble
 
-# The host's Pythons: 3.11 up to 4.5 LTS, 3.13 from 5.1 on.
-PYTHONS = ("311", "313")
-# NumPy comes with the host.
-WHEELS = ("scipy", "tetgen", "pyamg")
+# What each of the host's Pythons is given: 3.11 up to 4.5 LTS, 3.13 from 5.1 on. NumPy comes with the host; SciPy 1.15
+# is the last that takes the NumPy 1.24 of 4.2 LTS.
+WHEELS = {"311": ("scipy==1.15.*", "tetgen", "pyamg"), "313": ("scipy", "tetgen", "pyamg")}
 # By the host's name of a platform, the wheel tags it can take, newest first.
 PLATFORMS = {
     "linux-x64": ("manylinux_2_28_x86_64", "manylinux_2_27_x86_64", "manylinux_2_17_x86_64", "manylinux2014_x86_64"),
@@ -83,13 +82,13 @@ def _manifest(platform: str, wheels: list[Path]) -> str:
 
 
 def _wheels(platform: str, folder: Path) -> list[Path]:
-    """The unmodified wheels of all PYTHONS, fetched into ``folder``."""
+    """The unmodified wheels for all of the host's Pythons, fetched into ``folder``."""
     tags = [f"--platform={tag}" for tag in PLATFORMS[platform]]
-    for python in PYTHONS:
+    for python, packages in WHEELS.items():
         done = subprocess.run(
             [
                 sys.executable, "-m", "pip", "download", "--quiet", "--no-deps", "--only-binary=:all:",
-                f"--python-version={python}", "--implementation=cp", *tags, f"--dest={folder}", *WHEELS,
+                f"--python-version={python}", "--implementation=cp", *tags, f"--dest={folder}", *packages,
             ],
             capture_output=True,
             text=True,
