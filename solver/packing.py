@@ -14,11 +14,11 @@ from .errors import Trouble
 # What each of the host's Pythons is given: 3.11 up to 4.5 LTS, 3.13 from 5.1 on. NumPy comes with the host; SciPy 1.15
 # is the last that takes the NumPy 1.24 of 4.2 LTS.
 WHEELS = {"311": ("scipy==1.15.*", "tetgen", "pyamg"), "313": ("scipy", "tetgen", "pyamg")}
-# By the host's name of a platform, the wheel tags it can take, newest first.
+# By the host's name of a platform, the wheel tags it can take, the best first.
 PLATFORMS = {
     "linux-x64": ("manylinux_2_28_x86_64", "manylinux_2_27_x86_64", "manylinux_2_17_x86_64", "manylinux2014_x86_64"),
     "windows-x64": ("win_amd64",),
-    "macos-arm64": ("macosx_14_0_arm64", "macosx_12_0_arm64", "macosx_11_0_arm64"),
+    "macos-arm64": ("macosx_12_0_arm64", "macosx_11_0_arm64", "macosx_14_0_arm64"),
 }
 ENTRY = '''"""Fluxface: how hot a modelled part gets."""
 
