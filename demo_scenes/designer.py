@@ -25,11 +25,24 @@ def choose_material(part: bpy.types.Object, name: str) -> None:
     part.fluxface.material.name = name
 
 
-def tag_faces(part: bpy.types.Object, name: str, faces: np.ndarray, **terms: float) -> None:
+# The switch that a setting of a tag belongs to, where it is not called after it.
+SWITCH_OF = {
+    "coefficient": "convection",
+    "film": "convection",
+    "ambient": "convection",
+    "emissivity": "radiation",
+    "surroundings": "radiation",
+}
+
+
+def tag_faces(part: bpy.types.Object, name: str, faces: np.ndarray, **terms: float | str) -> None:
     """Select ``faces`` (polygons,) bool, press New Tag, and switch on the terms given.
 
-    terms: ``heat`` W, ``heat_flux`` W/m2, ``temperature`` K, or ``coefficient`` W/(m2 K) with ``ambient`` K.
+    terms: ``heat`` W, ``heat_flux`` W/m2, ``temperature`` K; ``coefficient`` W/(m2 K) or ``film`` by name, with
+    ``ambient`` K; ``emissivity`` with ``surroundings`` K.
     """
+    for thing in bpy.context.selected_objects:
+        thing.select_set(False)
     bpy.context.view_layer.objects.active = part
     part.select_set(True)
     part.data.polygons.foreach_set("select", faces)
@@ -38,11 +51,21 @@ def tag_faces(part: bpy.types.Object, name: str, faces: np.ndarray, **terms: flo
     tag = bpy.context.scene.fluxface.tags[-1]
     for term, value in terms.items():
         setattr(tag, term, value)
-    for switch in {"convection" if term in ("coefficient", "ambient") else term for term in terms}:
+    for switch in {SWITCH_OF.get(term, term) for term in terms}:
         setattr(tag, f"use_{switch}", True)
 
 
 THREE_QUARTER = Vector((0.62, -0.90, 0.55))  # from the part to the eye
+
+
+def place_camera(direction: tuple[float, float, float]) -> None:
+    """A camera that looks at the parts from ``direction``; pictures take its angle and frame the parts themselves."""
+    made = bpy.data.objects.new("Camera", bpy.data.cameras.new("Camera"))
+    made.location = 400.0 * Vector(direction)
+    made.rotation_euler = Vector(direction).to_track_quat("Z", "Y").to_euler()
+    bpy.context.scene.collection.objects.link(made)
+    bpy.context.scene.camera = made
+
 
 Look = tuple[str, tuple[float, float, float], float]  # name, linear colour, roughness
 

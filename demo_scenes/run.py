@@ -18,7 +18,7 @@ from pathlib import Path
 import environment
 
 HERE = Path(__file__).resolve().parent
-SCENES = ("work_lamp", "pan_handle")
+SCENES = ("work_lamp", "pan_handle", "led_module")
 
 
 def main() -> int:
