@@ -29,10 +29,12 @@ def where_heat_goes(tags: list[dict[str, Any]], parts: list[dict[str, Any]], ent
 
 
 def _by_kind(leaving: dict[str, float]) -> str:
-    """The shares of the terms in brackets, when there is more than one to tell apart."""
-    named = {"held": "held temperature", "source": "drawn off"}
-    told = [f"{named.get(kind, kind)} {_percent(share)}" for kind, share in leaving.items() if share >= WORTH_TELLING]
-    return f" ({', '.join(told)})" if told else ""
+    """By which term, or the shares of several in brackets."""
+    named = {"held": "held temperature", "source": "being drawn off"}
+    told = [(named.get(kind, kind), share) for kind, share in leaving.items() if share >= WORTH_TELLING]
+    if len(told) == 1:
+        return f" by {told[0][0]}"
+    return f" ({', '.join(f'{kind} {_percent(share)}' for kind, share in told)})" if told else ""
 
 
 def _percent(share: float) -> str:
