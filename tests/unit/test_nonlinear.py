@@ -6,6 +6,8 @@ memory): with the exact tangent the steps near the solution square the error.
 
 from __future__ import annotations
 
+from itertools import product
+
 import numpy as np
 import pytest
 from cases import case_of, mesh_of, metal
@@ -42,23 +44,35 @@ def problem_of(case: Case, size: float) -> Problem:
 @pytest.mark.parametrize("order", [1, 2])
 @pytest.mark.parametrize("term", TERMS)
 def test_tangent_against_finite_differences(term: str, order: int) -> None:
-    """Along random directions, at temperatures between the tables' knots, where the laws are smooth."""
+    """Term by term along random directions, at temperatures between the tables' knots, where the laws are smooth."""
     material, skin = TERMS[term]
     case = case_of(tagged(irregular_solid(), 0, every), [skin], material=material, heat=5.0, order=order)
     problem = problem_of(case, 0.03)
-    system = steady.assembled(problem, 350.0)
+    nonlinear = steady.assembled(problem, 350.0).nonlinear
+    assert nonlinear
     random = np.random.default_rng(7)
     nodes = len(problem.mesh.nodes)
-    rise = random.uniform(20.0, 120.0, nodes)
-    _, tangent = system.residual_and_tangent(rise)
+    temperature = random.uniform(370.0, 470.0, nodes)
     step = 1e-2
-    for _ in range(3):
+    for one, _ in product(nonlinear, range(3)):
         direction = random.uniform(-1.0, 1.0, nodes)
-        ahead, behind = (
-            np.sum(system.residual_and_tangent(rise + way * step * direction)[0], axis=0) for way in (1.0, -1.0)
-        )
+        _, tangent = one.residual_and_tangent(temperature)
+        ahead, behind = (one.residual_and_tangent(temperature + way * step * direction)[0] for way in (1.0, -1.0))
         slope = (ahead - behind) / (2.0 * step)
         np.testing.assert_allclose(tangent @ direction, slope, rtol=0, atol=1e-6 * np.abs(slope).max())
+
+
+@pytest.mark.parametrize("order", [1, 2])
+def test_tangent_of_the_whole_is_the_sum_of_its_terms(order: int) -> None:
+    material, skin = TERMS["all at once"]
+    case = case_of(tagged(irregular_solid(), 0, every), [skin], material=material, heat=5.0, order=order)
+    system = steady.assembled(problem_of(case, 0.03), 350.0)
+    rise = np.random.default_rng(8).uniform(20.0, 120.0, system.matrix.shape[0])
+    residuals, tangent = system.residual_and_tangent(rise)
+    terms = [term.residual_and_tangent(350.0 + rise) for term in system.nonlinear]
+    np.testing.assert_allclose(np.sum(residuals[1:], axis=0), np.sum([residual for residual, _ in terms], axis=0))
+    whole = system.matrix + sum(tangent for _, tangent in terms)
+    assert abs(tangent - whole).max() <= 1e-14 * abs(whole).max()
 
 
 def lamp(skin: Tag, material: Material, heat: float) -> Case:
