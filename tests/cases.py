@@ -18,8 +18,6 @@ from fluxface.solver.geometry.surface import weld
 from fluxface.solver.geometry.tetrahedra import fill
 from fluxface.solver.materials import Material, Property
 
-AIR = 298.15
-
 
 def metal(*conductivity: Property) -> Material:
     """An invented material: one conductivity, or three along the world's axes, W/(m K)."""

@@ -147,19 +147,6 @@ def _from_rectangles(vertices: np.ndarray, rectangles: np.ndarray) -> Surface:
     return surface_of(vertices, triangles, np.repeat(np.arange(len(rectangles)), 2))
 
 
-def plate_with_patch(size: Sequence[float], patch: Sequence[float], at: Sequence[float] | None = None) -> Surface:
-    """A plate of ``size`` (m, three) with a rectangle of size ``patch`` (m, two) bearing tag 0 on its upper face.
-
-    at: the patch's lowest corner, counted from the plate's; by default it lies in the middle.
-    """
-    low = (np.asarray(size[:2]) - patch) / 2.0 if at is None else np.asarray(at, dtype=float)
-    high = low + patch
-    lines = [np.unique([0.0, first, last, length]) for first, last, length in zip(low, high, size[:2], strict=True)]
-    upper = (low[0], low[1], 0.999 * size[2]), (high[0], high[1], np.inf)
-    plate = blocks(*lines, np.array([0.0, size[2]]))
-    return tagged(plate, 0, lambda centres, normals: within(*upper)(centres, normals) & facing("+z")(centres, normals))
-
-
 def prism(polygon: Sequence[Sequence[float]], height: float) -> Surface:
     """A convex polygon (n, 2) in the plane z = 0, m, raised by ``height``: wedges, hexagons, slices.
 
