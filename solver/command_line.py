@@ -7,6 +7,7 @@ import json
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
+from typing import Any
 
 from .case import read_case
 from .errors import Trouble
@@ -75,18 +76,31 @@ def _check(options: argparse.Namespace) -> None:
     case = read_case(options.case)
     from . import pipeline
 
-    measures = pipeline.checked_summary(case, pipeline.check(case))
-    if options.json:
-        print(json.dumps({"state": "sound", **measures}))
-        return
+    try:
+        measures = pipeline.checked_summary(case, pipeline.check(case))
+    except Trouble as trouble:
+        if options.json and trouble.kind == "geometry":
+            found = [[vars(finding) for finding in findings] for findings in pipeline.findings(case)]
+            parts = [{"name": part.name, "findings": some} for part, some in zip(case.parts, found, strict=True)]
+            print(json.dumps({"state": "unsound", "parts": parts}))
+        raise
+    print(json.dumps(measures) if options.json else _told_of_check(measures))
+
+
+def _told_of_check(measures: dict[str, Any]) -> str:
+    lines = []
     for part in measures["parts"]:
         size = " x ".join(f"{1e3 * extent:.4g}" for extent in part["size"])
-        print(f"{part['name']}: {size} mm, {1e6 * part['volume']:.4g} cm3, {1e4 * part['area']:.4g} cm2")
-    for tag in measures["tags"]:
-        print(f"  {tag['name']}: {1e4 * tag['area']:.4g} cm2")
-    for pair in measures["touching"]:
-        print(f"  {' and '.join(pair['parts'])} touch over {1e4 * pair['area']:.4g} cm2")
-    print("The case is sound.")
+        lines.append(f"{part['name']}: {size} mm, {1e6 * part['volume']:.4g} cm3, {1e4 * part['area']:.4g} cm2")
+        lines += [f"  {finding['message']} {finding['mend']}".rstrip() for finding in part["findings"]]
+        lines += [f"  Mending: {sentence}" for sentence in part["mending"]]
+    lines += [f"  {tag['name']}: {1e4 * tag['area']:.4g} cm2" for tag in measures["tags"]]
+    lines += [
+        f"  {' and '.join(pair['parts'])} touch over {1e4 * pair['area']:.4g} cm2" for pair in measures["touching"]
+    ]
+    lines += [f"Note: {warning}" for warning in measures["warnings"]]
+    lines.append("The case is sound." if measures["state"] == "sound" else "The case is sound once mended as told.")
+    return "\n".join(lines)
 
 
 def _pack(options: argparse.Namespace) -> None:
@@ -108,6 +122,7 @@ def _told(summary: Summary) -> str:
     balance = summary["balance"]
     lines.append(f"\nin {balance['in']:.4f} W, out {-balance['out']:.4f} W, gap {balance['relative_gap']:.1e}")
     lines += summary["where_heat_goes"]
+    lines += [f"Mended: {sentence}" for sentence in summary["mending"]]
     lines += [f"Note: {warning}" for warning in summary["warnings"]]
     return "\n".join(lines)
 

@@ -13,8 +13,11 @@ from .answers import report
 from .case import Case, Surface, Tag
 from .errors import Trouble
 from .fem.mesh import Mesh, joined, quadratic
+from .geometry.carrying import tag_areas
+from .geometry.inspection import Finding, bounds_solid, inspected
+from .geometry.mending import Mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
-from .geometry.surface import areas, check_bounds_solid, diagonal, enclosed_volume, one_part, triangle_corners, weld
+from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, weld
 from .geometry.tetrahedra import fill
 from .physics import steady
 from .physics.film import film_law
@@ -31,27 +34,63 @@ class Solved:
     field: Field
 
 
-def check(case: Case) -> list[Surface]:
-    """Each part's surface, welded and found to bound a solid; tags found to have faces.
+@dataclass(frozen=True)
+class Body:
+    """One part made ready: a surface that bounds a solid, and what is to be said of the one that was given.
 
-    Raises Trouble of kind "case", "geometry" or "adrift".
+    mended: how it was reached where the given one did not bound a solid, with the mesh if one was made already.
+    """
+
+    surface: Surface
+    findings: tuple[Finding, ...]
+    mended: Mended | None = None
+
+
+# The mesh of a part's surface, or None where none is wanted; part's index.
+Fill = Callable[[Surface, int], Mesh | None]
+
+
+def findings(case: Case) -> list[list[Finding]]:
+    """What is to be said of each part's surface, whatever state it is in."""
+    return [inspected(_welded(case, index), part.name, case.accuracy.size) for index, part in enumerate(case.parts)]
+
+
+def check(case: Case, fill: Fill = lambda surface, part: None) -> list[Body]:
+    """Each part's surface found to bound a solid, or mended until ``fill`` takes it; tags found to have faces.
+
+    Raises Trouble of kind "case", "geometry" or "adrift", and what ``fill`` raises that is none of geometry.
     """
     _check_tags(case)
-    surfaces = []
-    for index, part in enumerate(case.parts):
-        surface = one_part(case.surface, index)
-        if len(surface.triangles):
-            _check_extent(surface, part.name)
-            surface = weld(surface)
-        check_bounds_solid(surface, part.name)
-        surfaces.append(surface)
+    surfaces = [_welded(case, index) for index in range(len(case.parts))]
     _check_ways_out(case, surfaces)
-    _check_apart(case, surfaces)
+    bodies = [_body(case, index, surface, fill) for index, surface in enumerate(surfaces)]
+    _check_apart(case, [body.surface for body in bodies])
     for index, tag in enumerate(case.tags):
         if tag.convection and tag.convection.correlation and index in case.surface.tag:
             tagged = case.surface.triangles[case.surface.tag == index]
             film_law(tag.convection, faces(case.surface.vertices, tagged, case))
-    return surfaces
+    return bodies
+
+
+def _welded(case: Case, index: int) -> Surface:
+    surface, name = one_part(case.surface, index), case.parts[index].name
+    if len(surface.triangles):
+        _check_extent(surface, name)
+        surface = weld(surface)
+    if not len(surface.triangles):
+        raise Trouble("geometry", f"'{name}' has no faces with an area.", "Give it a body with a volume.")
+    return surface
+
+
+def _body(case: Case, index: int, surface: Surface, fill: Fill) -> Body:
+    found = tuple(inspected(surface, case.parts[index].name, case.accuracy.size))
+    return Body(surface, found) if bounds_solid(found) else _mended_body(case, index, surface, found, fill)
+
+
+def _mended_body(case: Case, index: int, surface: Surface, found: tuple[Finding, ...], fill: Fill) -> Body:
+    tags = [tag.name for tag in case.tags]
+    made = mended(surface, case.parts[index].name, tags, lambda candidate: fill(candidate, index))
+    return Body(made.surface, found, made)
 
 
 def _check_apart(case: Case, surfaces: list[Surface]) -> None:
@@ -128,36 +167,69 @@ def _fixes_temperature(tag: Tag) -> bool:
     return tag.temperature is not None or film or (tag.radiation is not None and tag.radiation.emissivity > 0)
 
 
-def checked_summary(case: Case, surfaces: list[Surface]) -> dict[str, Any]:
-    """What ``fluxface check`` tells of a sound case: each part's measures and each tag's area, SI units."""
+def checked_summary(case: Case, bodies: list[Body]) -> dict[str, Any]:
+    """What ``fluxface check`` tells of a sound case: measures, findings and mending of parts, areas of tags; SI."""
+    surfaces = [body.surface for body in bodies]
     corners = [triangle_corners(surface) for surface in surfaces]
-    tag_area = np.zeros(len(case.tags) + 1)
-    for surface, part_corners in zip(surfaces, corners, strict=True):
-        tag_area += np.bincount(surface.tag % len(tag_area), areas(part_corners), len(tag_area))
+    tag_area = np.sum([tag_areas(surface, len(case.tags)) for surface in surfaces], axis=0)
     return {
+        "state": "mended" if any(body.mended for body in bodies) else "sound",
         "parts": [
             {
                 "name": part.name,
                 "volume": enclosed_volume(part_corners),
                 "area": float(areas(part_corners).sum()),
-                "size": np.ptp(surface.vertices, axis=0).tolist(),
+                "mass": part.material.density and part.material.density * enclosed_volume(part_corners),
+                "size": np.ptp(body.surface.vertices, axis=0).tolist(),
+                "findings": [vars(finding) for finding in body.findings],
+                "mending": list(body.mended.said) if body.mended else [],
             }
-            for part, surface, part_corners in zip(case.parts, surfaces, corners, strict=True)
+            for part, body, part_corners in zip(case.parts, bodies, corners, strict=True)
         ],
         "tags": [
             {"name": tag.name, "area": float(area)}
             for tag, area in zip((*case.tags, case.untagged), tag_area, strict=True)
         ],
         "touching": touching(case, surfaces),
+        "warnings": mending_warnings(bodies),
     }
 
 
-def mesh_of(case: Case, surfaces: list[Surface], progress: Progress) -> Mesh:
-    """The tetrahedra of all parts, of the order that the case asks for."""
-    meshes = []
-    for index, (part, surface) in enumerate(zip(case.parts, surfaces, strict=True)):
-        progress("mesh", index / len(surfaces), f"filling '{part.name}'")
-        meshes.append(fill(surface, part.name, index, case.accuracy))
+def mending(case: Case, bodies: list[Body]) -> list[str]:
+    """What was done to the parts that did not bound a solid, a sentence each."""
+    return [
+        f"'{part.name}': {sentence}"
+        for part, body in zip(case.parts, bodies, strict=True)
+        if body.mended
+        for sentence in body.mended.said
+    ]
+
+
+def mending_warnings(bodies: list[Body]) -> list[str]:
+    return [warning for body in bodies if body.mended for warning in body.mended.warnings]
+
+
+def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
+    """The parts made ready, and the tetrahedra that fill them, of the order that the case asks for."""
+
+    def filled(surface: Surface, index: int) -> Mesh:
+        name = case.parts[index].name
+        progress("mesh", index / len(case.parts), f"filling '{name}'")
+        return fill(surface, name, index, case.accuracy)
+
+    bodies, meshes = check(case, filled), []
+    for index, body in enumerate(bodies):
+        if body.mended is None:
+            try:
+                meshes.append(filled(body.surface, index))
+                continue
+            except Trouble as trouble:
+                if trouble.kind != "geometry":
+                    raise
+            # A surface in which nothing is found amiss can be refused all the same.
+            bodies[index] = body = _mended_body(case, index, body.surface, body.findings, filled)
+        assert body.mended is not None and body.mended.mesh is not None
+        meshes.append(body.mended.mesh)
     mesh = joined(meshes)
     if case.accuracy.order == 2:
         mesh = quadratic(mesh)
@@ -168,15 +240,14 @@ def mesh_of(case: Case, surfaces: list[Surface], progress: Progress) -> Mesh:
             "Choose a larger size, or raise the bound on nodes.",
         )
     progress("mesh", 1.0, f"{len(mesh.cells)} tetrahedra, {len(mesh.nodes)} nodes")
-    return mesh
+    return bodies, mesh
 
 
 def solve(case: Case, progress: Progress = lambda stage, fraction, text: None) -> Solved:
     """Raises Trouble of every kind the contract lists."""
     began = time.perf_counter()
-    surfaces = check(case)
-    mesh = mesh_of(case, surfaces, progress)
-    meshed = time.perf_counter()
+    bodies, mesh = meshed(case, progress)
+    filled = time.perf_counter()
     progress("assemble", 0.0, "putting the terms together")
     problem = put_together(case, mesh)
     check_sheds_heat(problem)
@@ -186,11 +257,12 @@ def solve(case: Case, progress: Progress = lambda stage, fraction, text: None) -
     progress("write", 0.0, "summing up")
     summary = report.summary(problem, solution)
     field = report.field(problem, solution)
-    summary["warnings"] += _unnamed_contacts(case, surfaces)
+    summary["mending"] = mending(case, bodies)
+    summary["warnings"] += mending_warnings(bodies) + _unnamed_contacts(case, [body.surface for body in bodies])
     ended = time.perf_counter()
     summary["seconds"] = {
-        "mesh": meshed - began,
-        "assemble": put - meshed + solution.assembly_seconds,
+        "mesh": filled - began,
+        "assemble": put - filled + solution.assembly_seconds,
         "solve": solved - put - solution.assembly_seconds,
         "report": ended - solved,
         "total": ended - began,

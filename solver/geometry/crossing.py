@@ -12,7 +12,6 @@ from .surface import area_vectors
 # Shares of the part's diagonal: what is nearer than this touches; what is flatter than FLAT has no certain normal.
 TOUCH = 1e-9
 FLAT = 1e-6
-PARALLEL = 1e-6  # sine of the angle between planes that count as one
 
 
 @dataclass(frozen=True)
@@ -54,7 +53,6 @@ def _meeting_pairs(
     above = np.einsum("pci,pi->pc", corners[i] - corners[j, :1], normal[j])
     under = np.einsum("pci,pi->pc", corners[j] - corners[i, :1], normal[i])
     flat = (np.abs(above) <= TOUCH).all(axis=1) & (np.abs(under) <= TOUCH).all(axis=1)
-    flat |= (np.linalg.norm(np.cross(normal[i], normal[j]), axis=1) < PARALLEL) & (np.abs(above).min(axis=1) <= TOUCH)
     spans = _both_sides(above) & _both_sides(under) & ~flat
     upon = np.flatnonzero(flat)
     upon = upon[_overlap_in_plane(corners[i[upon]], corners[j[upon]], normal[i[upon]])]

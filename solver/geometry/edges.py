@@ -117,9 +117,10 @@ def _rank_after_first(edge: np.ndarray, forwards: np.ndarray) -> np.ndarray:
     first = np.concatenate([[True], np.diff(edge) != 0])
     block = np.cumsum(first) - 1
     begin = np.flatnonzero(first)
-    ahead, behind = np.cumsum(forwards), np.cumsum(~forwards)
-    ahead -= (ahead[begin] - forwards[begin])[block]
-    behind -= (behind[begin] - ~forwards[begin])[block]
+    fore, back = forwards.astype(np.int64), (~forwards).astype(np.int64)
+    ahead, behind = np.cumsum(fore), np.cumsum(back)
+    ahead -= (ahead[begin] - fore[begin])[block]
+    behind -= (behind[begin] - back[begin])[block]
     early = ~forwards & (ahead == 0)
     passed = np.bincount(block, early)[block].astype(np.int64)
     count = np.bincount(block, ~forwards)[block].astype(np.int64)

@@ -18,7 +18,7 @@ SHORTER = 1e-4
 class Hole:
     """A loop of sides without mates. vertices: (n,) in the order in which the surface runs along it.
 
-    triangles: (n - 2, 3) that close it, seen from outside; none where it has more than MOST_SIDES sides.
+    triangles: (n - 2, 3) or less, that close it, seen from outside; none where it has more than MOST_SIDES sides.
     area: m2 of those.
     """
 
@@ -37,6 +37,8 @@ def holes(vertices: np.ndarray, edges: Edges) -> list[Hole]:
         triangles = np.zeros((0, 3), np.int64)
         if 3 <= len(loop) <= MOST_SIDES:
             triangles = loop[_least_area(vertices[loop])][:, ::-1]
+            a, b, c = triangles.T  # where the loop comes by a vertex twice, some are folded flat and close nothing
+            triangles = triangles[(a != b) & (b != c) & (c != a)]
         found.append(Hole(loop, triangles, float(areas(vertices[triangles]).sum())))
     return found
 
@@ -85,9 +87,9 @@ def _least_area(points: np.ndarray) -> np.ndarray:
         cost[low, high], middle[low, high] = total[low, best], between[low, best]
     triangles, waiting = [], [(0, count - 1)]
     while waiting:
-        low, high = waiting.pop()
-        if high - low > 1:
-            k = int(middle[low, high])
-            triangles.append((low, k, high))
-            waiting += [(low, k), (k, high)]
+        first, last = waiting.pop()
+        if last - first > 1:
+            tip = int(middle[first, last])
+            triangles.append((first, tip, last))
+            waiting += [(first, tip), (tip, last)]
     return np.array(triangles, np.int64).reshape(-1, 3)

@@ -57,7 +57,7 @@ def shell_by_shell(surface: Arrays, _: str) -> Arrays:
     for shell in _by_volume(surface):
         corners, triangles, inward = _alone(surface, shell)
         mender = MeshFix(corners, triangles.astype(np.int32))
-        mender.repair()
+        mender.repair(remove_smallest_components=False)
         corners, triangles = np.array(mender.points), np.array(mender.faces).astype(np.int64)
         if not len(triangles):
             continue

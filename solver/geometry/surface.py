@@ -1,4 +1,4 @@
-"""Closed triangulated surfaces: measures, welding, and whether they bound a solid."""
+"""Triangulated surfaces: measures, and welding."""
 
 from __future__ import annotations
 
@@ -10,7 +10,6 @@ from scipy.sparse.csgraph import connected_components
 from scipy.spatial import cKDTree
 
 from ..case import Surface
-from ..errors import Trouble
 
 # Vertices nearer than this share of the part's diagonal are one: far below any modelled feature, far above the
 # rounding of single-precision coordinates. Common practice, no source.
@@ -99,57 +98,6 @@ def weld(surface: Surface, share: float = WELD_TOLERANCE) -> Surface:
     a, b, c = triangles.T
     whole = (a != b) & (b != c) & (c != a)
     return Surface(vertices, triangles[whole], surface.part[whole], surface.tag[whole], surface.face[whole])
-
-
-def check_bounds_solid(surface: Surface, name: str) -> None:
-    """Find the triangles of one part, already welded, to bound a solid.
-
-    Raises Trouble of kind "geometry" that names the faces and the places.
-    """
-    if not len(surface.triangles):
-        raise Trouble("geometry", f"'{name}' has no faces with an area.", "Give it a body with a volume.")
-    starts, ends = surface.triangles.ravel(), np.roll(surface.triangles, -1, axis=1).ravel()
-    low, high = np.minimum(starts, ends).astype(np.int64), np.maximum(starts, ends)
-    _, edge, uses = np.unique(low * len(surface.vertices) + high, return_inverse=True, return_counts=True)
-    turns = np.bincount(edge, weights=np.where(starts < ends, 1.0, -1.0))
-    owner = np.repeat(np.arange(len(surface.triangles)), 3)
-    open_sides = (uses % 2 == 1)[edge]
-    if open_sides.any():
-        raise _edge_trouble(
-            surface,
-            owner[open_sides],
-            starts[open_sides],
-            ends[open_sides],
-            f"The surface of '{name}' is open: {np.count_nonzero(uses % 2)} edges do not have a face on both sides.",
-            "Close the holes there (select the edges and fill) and run again.",
-        )
-    flipped = (turns != 0)[edge]
-    if flipped.any():
-        raise _edge_trouble(
-            surface,
-            owner[flipped],
-            starts[flipped],
-            ends[flipped],
-            f"Some faces of '{name}' point inwards: {np.count_nonzero(turns)} edges join faces of unlike direction.",
-            "Recalculate the normals to the outside and run again.",
-        )
-    volume = enclosed_volume(triangle_corners(surface))
-    flat = 1e-12 * diagonal(surface.vertices) ** 3
-    if abs(volume) <= flat:
-        raise Trouble("geometry", f"'{name}' encloses no volume.", "Give it a thickness, or check its scale.")
-    if volume < 0:
-        raise Trouble(
-            "geometry",
-            f"The surface of '{name}' is inside out.",
-            "Recalculate the normals to the outside and run again.",
-        )
-
-
-def _edge_trouble(
-    surface: Surface, owner: np.ndarray, starts: np.ndarray, ends: np.ndarray, message: str, mend: str
-) -> Trouble:
-    middles = 0.5 * (surface.vertices[starts] + surface.vertices[ends])
-    return Trouble("geometry", message, mend, np.unique(surface.face[owner]).tolist(), middles.tolist())
 
 
 def centred(surface: Surface) -> tuple[Surface, np.ndarray, float]:

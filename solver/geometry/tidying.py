@@ -28,8 +28,8 @@ def chosen(surface: Surface, faces: np.ndarray) -> Surface:
     )
 
 
-def without_doubled(surface: Surface) -> tuple[Surface, int]:
-    """One of each set of triangles over the same corners; none where as many look one way as the other."""
+def doubled(surface: Surface) -> np.ndarray:
+    """(F,) whether a triangle is one too many over its corners; all are, where as many look one way as the other."""
     ordered = np.sort(surface.triangles, axis=1)
     _, group = np.unique(ordered, axis=0, return_inverse=True)
     group = group.reshape(-1)
@@ -40,8 +40,13 @@ def without_doubled(surface: Surface) -> tuple[Surface, int]:
     leads = np.concatenate([[True], np.diff(group[order]) != 0]) if len(order) else np.zeros(0, bool)
     kept = np.zeros(len(group), bool)
     kept[order[leads]] = True
-    kept &= surplus != 0
-    return chosen(surface, kept), int(np.count_nonzero(~kept))
+    return ~(kept & (surplus != 0))
+
+
+def without_doubled(surface: Surface) -> tuple[Surface, int]:
+    """One of each set of triangles over the same corners; none where as many look one way as the other."""
+    extra = doubled(surface)
+    return chosen(surface, ~extra), int(np.count_nonzero(extra))
 
 
 def heights(corners: np.ndarray) -> np.ndarray:
@@ -117,16 +122,16 @@ def oriented(surface: Surface) -> tuple[Surface, int]:
     count = len(surface.triangles)
     if not count:
         return surface, 0
-    turned = _against_their_shell(surface)
+    turned = against_their_shell(surface)
     shell = shells(surface.triangles)
     triangles = np.where(turned[:, None], surface.triangles[:, ::-1], surface.triangles)
-    backwards = _backward_shells(surface.vertices, triangles, shell)[shell]
+    backwards = backward_shells(surface.vertices, triangles, shell)[shell]
     triangles = np.where(backwards[:, None], triangles[:, ::-1], triangles)
     changed = int(np.count_nonzero(turned != backwards))
     return replace(surface, triangles=np.ascontiguousarray(triangles, np.int32)), changed
 
 
-def _against_their_shell(surface: Surface) -> np.ndarray:
+def against_their_shell(surface: Surface) -> np.ndarray:
     """(F,) triangles to turn so that each shell has one direction: that of the greater part of its area.
 
     On two copies of each triangle, one as given and one turned, linked where they agree, a shell falls in two halves.
@@ -140,7 +145,7 @@ def _against_their_shell(surface: Surface) -> np.ndarray:
     return weight[group[:count]] < weight[group[count:]]
 
 
-def _backward_shells(vertices: np.ndarray, triangles: np.ndarray, shell: np.ndarray) -> np.ndarray:
+def backward_shells(vertices: np.ndarray, triangles: np.ndarray, shell: np.ndarray) -> np.ndarray:
     """(S,) whether each shell is to be turned as a whole."""
     faces = [np.flatnonzero(shell == number) for number in range(shell.max() + 1)]
     chains = [np.concatenate([vertices[triangles[f]], closing_cone(vertices, triangles[f])]) for f in faces]

@@ -125,7 +125,7 @@ class _Columns:
         """
         lines = np.arange(0, len(self.at), max(1, len(self.at) * count * weight // (3 * SAMPLES)))
         low, high = self.reach
-        span = high - low
+        span = (high - low) or 1.0
         fraction = (np.arange(count) + np.random.default_rng(2).random((len(lines), count))) / count
         keys = self.column + np.clip((self.height - low) / span, 0, 1) * 0.999
         before = np.searchsorted(keys, (lines[:, None] + fraction * 0.999).ravel()) - 1

@@ -103,7 +103,7 @@ def test_bond_with_a_conductivity_table_settles_and_joins() -> None:
 
 def bonded_pair(materials: tuple[Material, Material]) -> tuple[Mesh, Bond]:
     case = two_blocks(Contact((0, 1), None), materials)
-    mesh = pipeline.mesh_of(case, pipeline.check(case), lambda *_: None)
+    _, mesh = pipeline.meshed(case, lambda *_: None)
     bond = put_together(case, mesh).contacts[0]
     assert isinstance(bond, Bond)
     return mesh, bond
@@ -150,7 +150,7 @@ def assembled(scale: float) -> Case:
 def test_turning_and_scaling_an_assembly_changes_nothing(turn: float, scale: float) -> None:
     """On one mesh, as TetGen's own choices hang on rounding."""
     plain, other = assembled(1.0), assembled(scale)
-    mesh = pipeline.mesh_of(plain, pipeline.check(plain), lambda *_: None)
+    _, mesh = pipeline.meshed(plain, lambda *_: None)
     turned = replace(mesh, nodes=scale * mesh.nodes @ rotation((1, 2, 3), turn).T)
     one, two = (steady.solve(put_together(case, on)) for case, on in ((plain, mesh), (other, turned)))
     assert np.abs(two.temperature - one.temperature).max() < 1e-9 * 295.0
@@ -160,9 +160,8 @@ def test_parts_that_touch_unnamed_are_told_of() -> None:
     case = two_blocks(None)
     solved = pipeline.solve(case)
     assert any("'part 0' and 'part 1' touch over 9 cm2" in warning for warning in solved.summary["warnings"])
-    assert pipeline.touching(case, pipeline.check(case)) == [
-        {"parts": ["part 0", "part 1"], "area": pytest.approx(9e-4)}
-    ]
+    surfaces = [body.surface for body in pipeline.check(case)]
+    assert pipeline.touching(case, surfaces) == [{"parts": ["part 0", "part 1"], "area": pytest.approx(9e-4)}]
 
 
 def test_a_part_that_hangs_on_a_contact_alone_is_not_adrift() -> None:
