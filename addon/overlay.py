@@ -13,8 +13,10 @@ from mathutils import Matrix
 from .parts import Skin
 
 OPACITY = 0.45
-# Towards the eye, as a share of the depth: enough to win over the face itself, too little to show through the part.
-LIFT = 1e-5
+# Towards the eye, enough to win over the face itself and too little to show through a thin wall: as a share of the
+# distance in perspective, and of the whole depth without it.
+LIFT = 1e-3
+FLAT_LIFT = 5e-7
 
 
 class TagColours:
@@ -94,7 +96,10 @@ class TagColours:
 def _lifted(projection: Matrix) -> Matrix:
     """The projection with everything a little nearer to the eye in depth, and nowhere else."""
     lifted = projection.copy()
-    lifted[2] = projection[2] - LIFT * projection[3]
+    if projection[3][3]:
+        lifted[2][3] -= FLAT_LIFT
+    else:
+        lifted[2][3] *= 1.0 + LIFT
     return lifted
 
 
