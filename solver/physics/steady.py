@@ -166,9 +166,10 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
     steps = 0
     while True:
         share = _unbalanced_share(problem, system, iterate, free)
-        progress(min(0.95, steps / 10.0), f"step {steps}: {share:.0e} of the heat not yet balanced")
         if share <= TOLERANCE:
             break
+        left = f"{100 * share:.2g} % of the heat is still unbalanced" if steps else f"{len(free)} temperatures"
+        progress(min(0.95, steps / 10.0), left)
         change = linear_solver.solve(iterate.tangent[free][:, free], -iterate.residual[free], reduction)
         following = _damped(system, iterate, free, change, SMALLEST_DAMPING if share > ROUNDING else 1.0)
         steps += 1
@@ -177,6 +178,7 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
         if following is None or steps == MOST_STEPS:
             raise _unconverged(system, iterate, change, free, share, steps)
         iterate = following
+    progress(1.0, "all heat is balanced")
     return Solution(
         temperature=system.reference + iterate.rise,
         reaction=iterate.residual,
