@@ -7,6 +7,7 @@ a wrong volume that nobody notices is the worst outcome.
 
 from __future__ import annotations
 
+import time
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, replace
 
@@ -30,7 +31,7 @@ SAME_VOLUME = 0.01
 SAME_AREA = 0.02
 SNAP = 1e-5
 ASIDE = 1e-5  # of the diagonal: how far beside a face its two sides are probed
-TOOL_SECONDS = 90
+TOOL_SECONDS, LADDER_SECONDS = 60, 120
 SHARES = ("1e-3", "3e-4")  # of the diagonal, the width of the envelope
 
 
@@ -66,7 +67,7 @@ def mended(surface: Surface, name: str, tags: Sequence[str], fill: Callable[[Sur
         raise Trouble("geometry", f"'{name}' encloses no volume.", "Give it a thickness, or check its scale.")
     closed, closing = _closed(tidy, surface, name)
     missing: list[str] = []
-    for rung in _rungs(Rung(closed, said + closing), missing):
+    for rung in _in_time(_rungs(Rung(closed, said + closing), missing)):
         if wanted.is_met_by(rung.surface):
             there = replace(rung.surface, vertices=rung.surface.vertices * scale + centre)
             try:
@@ -77,6 +78,16 @@ def mended(surface: Surface, name: str, tags: Sequence[str], fill: Callable[[Sur
                 continue
             return Mended(there, mesh, tuple(dict.fromkeys(rung.said)), _area_warnings(surface, there, tags))
     raise _beyond_mending(surface, closed, name, missing)
+
+
+def _in_time(rungs: Iterator[Rung]) -> Iterator[Rung]:
+    """The rungs that are begun within LADDER_SECONDS; a designer does not wait longer for one part."""
+    began = time.monotonic()
+    while time.monotonic() - began < LADDER_SECONDS:
+        try:
+            yield next(rungs)
+        except StopIteration:
+            return
 
 
 # The first rung ------------------------------------------------------------------------------------------------------
