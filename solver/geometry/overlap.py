@@ -19,11 +19,13 @@ import numpy as np
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
+from .boxes import Boxes, boxes, meeting
+from .surface import distances
+
 SMOOTH_TURN = np.radians(35.0)  # curved surfaces have eleven facets to a full turn, or more
 FLAT_TURN = np.radians(0.05)
 GAP_OF_DIAGONAL = 1e-4
 SLIVER = 1e-13  # of the smaller triangle's area
-CHUNK = 1 << 16  # pairs of boxes or triangles treated at once; bounds the memory
 # Surfaces that cross at a smaller angle (sine of it) are left to the other places where the same solids cross.
 LEAST_CROSSING = 0.04
 # Any direction no modelled edge follows: rays along it do not run through edges.
@@ -124,7 +126,7 @@ def crossing_parts(corners: np.ndarray, part: np.ndarray, gap: float | None = No
 
 @dataclass(frozen=True)
 class _Faces:
-    """One side: corners (F, 3, 3), unit normal (F, 3), area (F,), what ``_rises`` tells, body (F,) and its boxes.
+    """One side: corners (F, 3, 3), unit normal (F, 3), area (F,), what ``_rises`` tells, body (F,), tree of its boxes.
 
     A body is a set of triangles that hang together by their vertices. The boxes take in the facets' rises.
     """
@@ -135,7 +137,7 @@ class _Faces:
     convex_rise: np.ndarray
     concave_rise: np.ndarray
     body: np.ndarray
-    boxes: _Boxes
+    tree: Boxes
 
 
 def _faces(corners: np.ndarray) -> _Faces:
@@ -146,8 +148,8 @@ def _faces(corners: np.ndarray) -> _Faces:
     vertex = _vertices(corners)
     convex, concave = _rises(corners, normal, length / 2, vertex)
     reach = (convex + concave)[:, None]
-    boxes = _boxes(corners.min(axis=1) - reach, corners.max(axis=1) + reach)
-    return _Faces(corners, normal, length / 2, convex, concave, _bodies(vertex), boxes)
+    tree = boxes(corners.min(axis=1) - reach, corners.max(axis=1) + reach)
+    return _Faces(corners, normal, length / 2, convex, concave, _bodies(vertex), tree)
 
 
 def _vertices(corners: np.ndarray) -> np.ndarray:
@@ -229,64 +231,7 @@ def _moments(corners: np.ndarray, area: np.ndarray, facet: np.ndarray) -> tuple[
     return total, moment
 
 
-# Pairs of boxes ----------------------------------------------------------------------------------------------------
-
-
-@dataclass(frozen=True)
-class _Boxes:
-    """A binary tree of bounding boxes: level l has low and high corners (2^l, 3); leaf k holds item order[k].
-
-    Leaves beyond the number of items are empty, with low above high, and meet nothing.
-    """
-
-    low: tuple[np.ndarray, ...]
-    high: tuple[np.ndarray, ...]
-    order: np.ndarray
-
-    @property
-    def depth(self) -> int:
-        return len(self.low) - 1
-
-
-def _boxes(low: np.ndarray, high: np.ndarray) -> _Boxes:
-    """The tree over boxes (N, 3), split at the median of the longest side, level by level."""
-    count = len(low)
-    depth = max(count - 1, 0).bit_length()
-    order = np.minimum(np.arange(1 << depth), count)
-    centre = np.concatenate([low + high, (low + high)[:1] if count else np.zeros((1, 3))])
-    for level in range(depth):
-        rows = order.reshape(1 << level, -1)
-        spread = centre[rows]
-        axis = np.argmax(np.ptp(spread, axis=1), axis=1)
-        key = np.take_along_axis(spread, axis[:, None, None], axis=2)[:, :, 0]
-        order = np.take_along_axis(rows, np.argsort(key, axis=1), axis=1).ravel()
-    lows = [np.concatenate([low, np.full((1, 3), np.inf)])[order]]
-    highs = [np.concatenate([high, np.full((1, 3), -np.inf)])[order]]
-    for _ in range(depth):
-        lows.append(lows[-1].reshape(-1, 2, 3).min(axis=1))
-        highs.append(highs[-1].reshape(-1, 2, 3).max(axis=1))
-    return _Boxes(tuple(lows[::-1]), tuple(highs[::-1]), order)
-
-
-def _meeting(one: _Boxes, other: _Boxes, reach: float) -> Iterator[tuple[np.ndarray, np.ndarray]]:
-    """The pairs of items whose boxes are within ``reach`` (m) of each other along each axis, in chunks."""
-    waiting = [(0, 0, np.zeros(1, dtype=np.int64), np.zeros(1, dtype=np.int64))]
-    while waiting:
-        level, other_level, i, j = waiting.pop()
-        apart = (one.low[level][i] > other.high[other_level][j] + reach) | (
-            other.low[other_level][j] > one.high[level][i] + reach
-        )
-        near = ~apart.any(axis=1)
-        i, j = i[near], j[near]
-        if level == one.depth and other_level == other.depth:
-            if len(i):
-                yield one.order[i], other.order[j]
-            continue
-        if level < one.depth:
-            level, i, j = level + 1, np.concatenate([2 * i, 2 * i + 1]), np.concatenate([j, j])
-        if other_level < other.depth:
-            other_level, i, j = other_level + 1, np.concatenate([i, i]), np.concatenate([2 * j, 2 * j + 1])
-        waiting += [(level, other_level, i[k : k + CHUNK], j[k : k + CHUNK]) for k in range(0, len(i), CHUNK)]
+# Pairs of parts -----------------------------------------------------------------------------------------------------
 
 
 def _pairs_of_parts(
@@ -296,7 +241,7 @@ def _pairs_of_parts(
     faces = {int(number): _faces(corners[part == number]) for number in np.unique(part)}
     for i, j in combinations(faces, 2):
         within = default_gap(faces[i].corners, faces[j].corners) if gap is None else gap
-        one, other = faces[i].boxes, faces[j].boxes
+        one, other = faces[i].tree, faces[j].tree
         if (np.maximum(one.low[0], other.low[0]) <= np.minimum(one.high[0], other.high[0]) + within).all():
             yield i, j, faces[i], faces[j], within
 
@@ -307,7 +252,7 @@ def _pairs_of_parts(
 def _overlap(first: _Faces, second: _Faces, gap: float) -> Overlap:
     none = np.zeros(0, dtype=np.int64)
     pieces = [Overlap(none, none, np.zeros((0, 3, 3)), np.zeros((0, 3, 3)), np.zeros(0))]
-    pieces += [_pieces(first, second, i, j, gap) for i, j in _meeting(first.boxes, second.boxes, gap)]
+    pieces += [_pieces(first, second, i, j, gap) for i, j in meeting(first.tree, second.tree, gap)]
     return Overlap(*(np.concatenate([vars(piece)[name] for piece in pieces]) for name in vars(pieces[0])))
 
 
@@ -401,7 +346,7 @@ def _turned(corners: np.ndarray) -> np.ndarray:
 def _common_points(first: _Faces, second: _Faces, gap: float) -> np.ndarray:
     """Points (n, 3) that lie inside both, deeper than ``gap`` and what facets cost; in askew axes."""
     probes = [_heart(first, gap), _heart(second, gap)]
-    probes += [_beside_meeting_line(first, second, i, j, gap) for i, j in _meeting(first.boxes, second.boxes, 0.0)]
+    probes += [_beside_meeting_line(first, second, i, j, gap) for i, j in meeting(first.tree, second.tree, 0.0)]
     points = np.concatenate(probes)
     for side in (first, second):
         points = points[_clear(side, points, gap)]
@@ -467,32 +412,18 @@ def _interval(
 def _clear(faces: _Faces, points: np.ndarray, gap: float) -> np.ndarray:
     """Whether points (S, 3) are farther than ``gap`` from every triangle, and than its hollow rise besides; (S,)."""
     clear = np.ones(len(points), dtype=bool)
-    for point, face in _meeting(_boxes(points, points), faces.boxes, gap):
-        near = _distance(points[point], faces.corners[face]) <= gap + faces.concave_rise[face]
+    for point, face in meeting(boxes(points, points), faces.tree, gap):
+        near = distances(points[point], faces.corners[face]) <= gap + faces.concave_rise[face]
         clear[point[near]] = False
     return clear
-
-
-def _distance(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
-    """The distance (P,) in m of points (P, 3) from their triangles (P, 3, 3)."""
-    edge = np.roll(corners, -1, axis=1) - corners
-    offset = points[:, None] - corners
-    across = np.cross(edge[:, 0], edge[:, 1])
-    square = np.maximum(np.einsum("pei,pei->pe", edge, edge), np.finfo(float).tiny)
-    fraction = np.clip(np.einsum("pei,pei->pe", offset, edge) / square, 0, 1)
-    to_edges = np.linalg.norm(offset - fraction[:, :, None] * edge, axis=2).min(axis=1)
-    above = (np.einsum("pei,pi->pe", np.cross(edge, offset), across) >= 0).all(axis=1)
-    length = np.linalg.norm(across, axis=1)
-    to_plane = np.abs(np.einsum("pi,pi->p", offset[:, 0], across)) / np.where(length > 0, length, 1.0)
-    return np.where(above & (length > 0), to_plane, to_edges)
 
 
 def _enclosed(faces: _Faces, points: np.ndarray) -> np.ndarray:
     """Whether points (S, 3) lie in the material, by how often a ray along the third axis leaves and enters it; (S,)."""
     far = points.copy()
-    far[:, 2] = np.maximum(points[:, 2], faces.boxes.high[0][0, 2])
+    far[:, 2] = np.maximum(points[:, 2], faces.tree.high[0][0, 2])
     leaves = np.zeros(len(points))
-    for point, face in _meeting(_boxes(points, far), faces.boxes, 0.0):
+    for point, face in meeting(boxes(points, far), faces.tree, 0.0):
         offset = faces.corners[face] - points[point, None]
         flat, next_flat = offset[:, :, :2], np.roll(offset, -1, axis=1)[:, :, :2]
         turn = flat[:, :, 0] * next_flat[:, :, 1] - flat[:, :, 1] * next_flat[:, :, 0]
