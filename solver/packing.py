@@ -87,7 +87,7 @@ def _wheels(platform: str, folder: Path) -> list[Path]:
     for python, packages in WHEELS.items():
         done = subprocess.run(
             [
-                sys.executable, "-m", "pip", "download", "--quiet", "--no-deps", "--only-binary=:all:",
+                *_pip(), "download", "--quiet", "--no-deps", "--only-binary=:all:",
                 f"--python-version={python}", "--implementation=cp", *tags, f"--dest={folder}", *packages,
             ],
             capture_output=True,
@@ -100,6 +100,15 @@ def _wheels(platform: str, folder: Path) -> list[Path]:
                 "Check the connection to the package index, and that pip is installed.",
             )
     return sorted(folder.glob("*.whl"))
+
+
+def _pip() -> list[str]:
+    """pip's command: of this Python, or of the one that its environment was made from."""
+    pythons = (sys.executable, getattr(sys, "_base_executable", sys.executable))
+    with_pip = [
+        python for python in pythons if not subprocess.run([python, "-c", "import pip"], capture_output=True).returncode
+    ]
+    return [*(with_pip or [sys.executable])[:1], "-m", "pip"]
 
 
 def _last_line(text: str) -> str:

@@ -4,9 +4,8 @@ from __future__ import annotations
 
 import bpy
 
-from ...solver.errors import Trouble
-from .. import contacts, running
-from .telling import TellsTrouble
+from .. import contacts, jobs
+from .telling import Finish, TellsTrouble, WorksBeside
 
 
 class AddContact(TellsTrouble, bpy.types.Operator):
@@ -24,38 +23,23 @@ class AddContact(TellsTrouble, bpy.types.Operator):
             contact.first, contact.second = chosen
 
 
-class FindContacts(TellsTrouble, bpy.types.Operator):
+class FindContacts(WorksBeside, bpy.types.Operator):
     bl_idname = "fluxface.contacts_find"
     bl_label = "Find Contacts"
     bl_description = "List every pair of parts that lie against each other; contacts that are there keep their values"
     bl_options = {"REGISTER"}
+    undo_step = "Find Contacts"
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
         if context.scene.fluxface.collection is None:
             cls.poll_message_set("Choose the collection that holds the parts")
             return False
-        if context.window_manager.fluxface.running:
-            cls.poll_message_set("The solver is running")
-            return False
-        return True
+        return super().poll(context)
 
-    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
-        if bpy.app.background:
-            return self.execute(context)
-        try:
-            search = contacts.start(context)
-        except Trouble as trouble:
-            self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
-            return {"CANCELLED"}
-        running.watch(search.job, lambda ending: contacts.finish(search, ending), "Find Contacts")
-        return {"FINISHED"}
-
-    def act(self, context: bpy.types.Context) -> None:
+    def start(self, context: bpy.types.Context) -> tuple[jobs.Job, Finish]:
         search = contacts.start(context)
-        trouble = contacts.finish(search, running.wait(search.job))
-        if trouble:
-            raise trouble
+        return search.job, lambda ending: contacts.finish(search, ending)
 
 
 class RemoveContact(TellsTrouble, bpy.types.Operator):

@@ -11,42 +11,23 @@ from bpy.props import StringProperty
 from mathutils import Vector
 
 from ...solver.errors import Trouble
-from .. import running, study, tags, view
+from .. import jobs, running, study, tags, view
 from ..units import metres_per_unit
 from .tagging import enter_edit_mode
-from .telling import TellsTrouble
+from .telling import Finish, TellsTrouble, WorksBeside
 
 
-class RunSolver(TellsTrouble, bpy.types.Operator):
+class RunSolver(WorksBeside, bpy.types.Operator):
     bl_idname = "fluxface.run"
     bl_label = "Run"
     bl_description = "Solve for the temperatures of the part; work can go on meanwhile"
     # The undo step is made when the result is there.
     bl_options = {"REGISTER"}
+    undo_step = "Temperatures"
 
-    @classmethod
-    def poll(cls, context: bpy.types.Context) -> bool:
-        if context.window_manager.fluxface.running:
-            cls.poll_message_set("The solver is running")
-            return False
-        return True
-
-    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
-        if bpy.app.background:
-            return self.execute(context)
-        try:
-            run = running.start(context)
-        except Trouble as trouble:
-            self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
-            return {"CANCELLED"}
-        running.watch(run.job, lambda ending: running.finish(run, ending), "Temperatures")
-        return {"FINISHED"}
-
-    def act(self, context: bpy.types.Context) -> None:
+    def start(self, context: bpy.types.Context) -> tuple[jobs.Job, Finish]:
         run = running.start(context)
-        trouble = running.finish(run, running.wait(run.job))
-        if trouble:
-            raise trouble
+        return run.job, lambda ending: running.finish(run, ending)
 
 
 class CancelRun(bpy.types.Operator):
