@@ -12,7 +12,7 @@ import numpy as np
 from .answers import report
 from .case import Case, Surface, Tag
 from .errors import Trouble
-from .fem.mesh import Mesh, joined, quadratic
+from .fem.mesh import Mesh, joined, ordered, quadratic
 from .geometry.carrying import tag_areas
 from .geometry.inspection import Finding, bounds_solid, inspected
 from .geometry.mending import Mended, mended
@@ -230,7 +230,7 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
             bodies[index] = body = _mended_body(case, index, body.surface, body.findings, filled)
         assert body.mended is not None and body.mended.mesh is not None
         meshes.append(body.mended.mesh)
-    mesh = joined(meshes)
+    mesh = ordered(joined(meshes))
     if case.accuracy.order == 2:
         mesh = quadratic(mesh)
     if len(mesh.nodes) > case.accuracy.max_nodes:

@@ -6,16 +6,13 @@ from typing import Any
 
 import numpy as np
 
-from ..fem.mesh import CELL_EDGES, Mesh, smallest_dihedral
-from ..fem.reference import shape_functions
-from ..fem.volume import cell_means, gradients_at
-from ..materials import Material
-from ..physics.conduction import conductivity_tensor
+from ..fem.volume import cell_means, smallest_dihedral
 from ..physics.contact import Bond, Conductance
 from ..physics.laws import Correlated, Linear
 from ..physics.problem import CONVECTION, RADIATION, SOURCE, Patch, Problem, held_nodes
 from ..physics.steady import Solution, heat_through
 from ..result import FORMAT, Field, Summary
+from .flux import heat_flux
 from .sentences import where_heat_goes
 
 HELD = "held"
@@ -25,20 +22,21 @@ def summary(problem: Problem, solution: Solution) -> Summary:
     """``summary.json`` but for the seconds of the stages that are not the solver's."""
     mesh, temperature = problem.mesh, solution.temperature
     entering = heat_by_term(problem, solution)
-    released = problem.heat_density * np.bincount(mesh.cell_part, problem.shape.volume, len(problem.case.parts))
-    parts = [_part_report(problem, temperature, index, heat) for index, heat in enumerate(released.tolist())]
+    part_of_node = np.empty(len(mesh.nodes), np.int32)
+    part_of_node[mesh.cells] = mesh.cell_part[:, None]
+    parts = _part_reports(problem, temperature, part_of_node)
     tags = [
         _tag_report(problem, temperature, patch, split)
         for patch, split in zip(problem.patches, entering, strict=True)
         if patch is not problem.patches[-1] or len(patch.facets)
     ]
-    balanced = balance([*(heat for split in entering for heat in split.values()), *released.tolist()])
+    balanced = balance([*(heat for split in entering for heat in split.values()), *(part["heat"] for part in parts)])
     return {
         "format": FORMAT,
         "title": problem.case.title,
         "state": "solved",
-        "hottest": _extreme(problem, temperature, int(temperature.argmax())),
-        "coldest": _extreme(problem, temperature, int(temperature.argmin())),
+        "hottest": _extreme(problem, temperature, part_of_node, int(temperature.argmax())),
+        "coldest": _extreme(problem, temperature, part_of_node, int(temperature.argmin())),
         "tags": tags,
         "parts": parts,
         "contacts": [_contact_report(problem, temperature, contact) for contact in problem.contacts],
@@ -80,12 +78,11 @@ def balance(heats: list[float]) -> dict[str, float]:
     return {"in": entering, "out": leaving, "relative_gap": gap}
 
 
-def _extreme(problem: Problem, temperature: np.ndarray, node: int) -> dict[str, Any]:
-    cell = np.flatnonzero((problem.mesh.cells == node).any(axis=1))[0]
+def _extreme(problem: Problem, temperature: np.ndarray, part_of_node: np.ndarray, node: int) -> dict[str, Any]:
     return {
         "temperature": float(temperature[node]),
         "at": problem.mesh.nodes[node].tolist(),
-        "part": problem.case.parts[problem.mesh.cell_part[cell]].name,
+        "part": problem.case.parts[part_of_node[node]].name,
     }
 
 
@@ -114,27 +111,28 @@ def _mean_film(patch: Patch, temperature: np.ndarray) -> float | None:
     return law.coefficient if isinstance(law, Linear) else None
 
 
-def _part_report(problem: Problem, temperature: np.ndarray, index: int, heat: float) -> dict[str, Any]:
-    mesh, part = problem.mesh, problem.case.parts[index]
-    mine = mesh.cell_part == index
-    volumes = problem.shape.volume[mine]
-    volume = float(volumes.sum())
-    inside = temperature[np.unique(mesh.cells[mine])]
-    surface = sum(
-        float(patch.points.weight[mesh.boundary_part[patch.points.facet] == index].sum()) for patch in problem.patches
-    )
-    density = part.material.density
-    return {
-        "name": part.name,
-        "material": part.material.name,
-        "volume": volume,
-        "area": surface,
-        "mass": None if density is None else density * volume,
-        "mean": float(volumes @ cell_means(mesh, temperature)[mine] / volume),
-        "min": float(inside.min()),
-        "max": float(inside.max()),
-        "heat": heat,
-    }
+def _part_reports(problem: Problem, temperature: np.ndarray, part_of_node: np.ndarray) -> list[dict[str, Any]]:
+    mesh, count = problem.mesh, len(problem.case.parts)
+    volume = np.bincount(mesh.cell_part, problem.volume, count)
+    warmth = np.bincount(mesh.cell_part, problem.volume * cell_means(mesh, temperature), count)
+    surface = np.zeros(count)
+    for patch in problem.patches:
+        surface += np.bincount(mesh.boundary_part[patch.points.facet], patch.points.weight, count)
+    inside = [temperature[part_of_node == index] for index in range(count)]
+    return [
+        {
+            "name": part.name,
+            "material": part.material.name,
+            "volume": float(volume[index]),
+            "area": float(surface[index]),
+            "mass": None if part.material.density is None else float(part.material.density * volume[index]),
+            "mean": float(warmth[index] / volume[index]),
+            "min": float(inside[index].min()),
+            "max": float(inside[index].max()),
+            "heat": float(problem.heat_density[index] * volume[index]),
+        }
+        for index, part in enumerate(problem.case.parts)
+    ]
 
 
 def _contact_report(problem: Problem, temperature: np.ndarray, contact: Conductance | Bond) -> dict[str, Any]:
@@ -202,36 +200,3 @@ def bonded_faces(problem: Problem) -> np.ndarray:
             for side in (contact.joint.first, contact.joint.second):
                 bonded[side.points.facet] = True
     return bonded & problem.joined
-
-
-def heat_flux(problem: Problem, temperature: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """(M, 3) W/m2 at the middle of each cell, and (N, 3) at the nodes: the volume-weighted mean of the cells there."""
-    mesh, shape = problem.mesh, problem.shape
-    materials = [part.material for part in problem.case.parts]
-    middle = np.full((1, 4), 0.25)
-    in_middle = temperature[mesh.cells] @ shape_functions(middle, mesh.order)[0]
-    at_cells = _fourier(mesh, materials, gradients_at(mesh, shape, temperature, middle)[0], in_middle)
-    at_nodes, weight = np.zeros_like(mesh.nodes), np.zeros(len(mesh.nodes))
-    for local, point in enumerate(_local_nodes(mesh.order)):
-        nodes = mesh.cells[:, local]
-        gradient = gradients_at(mesh, shape, temperature, point[None])[0]
-        flux = shape.volume[:, None] * _fourier(mesh, materials, gradient, temperature[nodes])
-        weight += np.bincount(nodes, shape.volume, len(weight))
-        at_nodes += np.stack([np.bincount(nodes, along, len(weight)) for along in flux.T], axis=1)
-    return at_cells, at_nodes / weight[:, None]
-
-
-def _local_nodes(order: int) -> np.ndarray:
-    """(n, 4) barycentric coordinates of an element's own nodes."""
-    corners = np.eye(4)
-    return corners if order == 1 else np.concatenate([corners, corners[CELL_EDGES].mean(axis=1)])
-
-
-def _fourier(mesh: Mesh, materials: list[Material], gradient: np.ndarray, temperature: np.ndarray) -> np.ndarray:
-    """(M, 3) W/m2: -K grad T of each cell's own material."""
-    flux = np.empty_like(gradient)
-    for index, material in enumerate(materials):
-        mine = mesh.cell_part == index
-        tensor = conductivity_tensor(material, temperature[mine])
-        flux[mine] = -np.einsum("mij,mj->mi", tensor, gradient[mine])
-    return flux

@@ -39,19 +39,25 @@ def points_at(
 ) -> SurfacePoints:
     """Points given one by one: facet (P,) into boundary (B, 3 or 6), barycentric (P, 3), weight (P,) m2."""
     values = shape_functions(barycentric, 1 if boundary.shape[1] == 3 else 2)
-    starts = np.arange(len(facet) + 1) * boundary.shape[1]
-    return SurfacePoints(
-        facet, weight, csr_array((values.ravel(), boundary[facet].ravel(), starts), (len(facet), size))
-    )
+    return _points(boundary, facet, values, weight, size)
+
+
+def _points(
+    boundary: np.ndarray, facet: np.ndarray, values: np.ndarray, weight: np.ndarray, size: int
+) -> SurfacePoints:
+    """values: (P, 3 or 6) of the shape functions of each point's triangle."""
+    starts = values.shape[1] * np.arange(len(facet) + 1, dtype=np.int32)
+    nodes = boundary.take(facet, axis=0)
+    return SurfacePoints(facet, weight, csr_array((values.ravel(), nodes.ravel(), starts), (len(facet), size)))
 
 
 def face_points(nodes: np.ndarray, boundary: np.ndarray, facets: np.ndarray, degree: int) -> SurfacePoints:
     """A rule of ``degree`` on each of the triangles ``facets`` (K,) of boundary (B, 3 or 6); nodes (N, 3) m."""
     points, weights = quadrature(2, degree)
-    # The parent triangle has area 1/2, and the weights sum to 1.
-    weight = 0.5 * weights * surface_jacobian(nodes[boundary[facets, :3]], points)
-    barycentric = np.tile(points, (len(facets), 1))
-    return points_at(boundary, np.repeat(facets, len(points)), barycentric, weight.ravel(), len(nodes))
+    # The parent triangle has area 1/2, and the weights sum to 1. Straight-sided: the Jacobian is the same all over.
+    weight = 0.5 * weights * surface_jacobian(nodes[boundary[facets, :3]], points[:1])
+    values = np.tile(shape_functions(points, 1 if boundary.shape[1] == 3 else 2), (len(facets), 1))
+    return _points(boundary, np.repeat(facets, len(points)), values, weight.ravel(), len(nodes))
 
 
 def both(first: SurfacePoints, second: SurfacePoints) -> SurfacePoints:

@@ -2,18 +2,23 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from scipy.sparse import csr_array
-from scipy.sparse.linalg import LinearOperator, SuperLU, cg, gmres, splu
+from scipy.sparse.linalg import LinearOperator, gmres, splu
 
-from .multigrid import preconditioner
+from .multigrid import Hierarchy, hierarchy
+from .products import in_rows
 
-# Up to here a factorisation is as quick as a hierarchy: multigrid was the quicker one at 1 656 and at 3 947 unknowns.
-DIRECT = 1_500
+# Up to here a factorisation takes less time than setting up a hierarchy (tests/bench prints both).
+DIRECT = 4_000
 MOST_ITERATIONS = 500
 RESTART = 50
 # A preconditioner made for an earlier matrix is dropped when it takes this many times its first iterations.
 STALE = 2.0
+
+Precondition = Callable[[np.ndarray], np.ndarray]
 
 
 class LinearSolver:
@@ -25,50 +30,71 @@ class LinearSolver:
     def __init__(self, symmetric: bool, interpolation: csr_array | None) -> None:
         self.iterations = 0
         self.method = "direct factorisation"
-        self._krylov = _conjugate_gradients if symmetric else _minimal_residuals
+        self._symmetric = symmetric
         self._interpolation = interpolation
-        self._smooth: LinearOperator | None = None
+        self._hierarchy: Hierarchy | None = None
         self._first_iterations = 0
 
     def solve(self, matrix: csr_array, load: np.ndarray, reduction: float) -> np.ndarray:
         """(n,) solution with its residual at most ``reduction`` of the load's norm."""
         if matrix.shape[0] <= DIRECT:
             self.iterations += 1
-            return _factors(matrix).solve(load)
-        if self._smooth is None:
-            self._smooth, self._first_iterations = preconditioner(matrix, self._interpolation), 0
-        solution, taken = self._krylov(matrix, load, reduction, self._smooth)
+            return splu(matrix.tocsc()).solve(load)
+        if self._hierarchy is None:
+            self._hierarchy, self._first_iterations = hierarchy(matrix, self._interpolation), 0
+        krylov = conjugate_gradients if self._symmetric else minimal_residuals
+        solution, taken = krylov(matrix, load[:, None], reduction, self._hierarchy.cycle)
         self.method = "Krylov iteration with multigrid"
         self.iterations += taken
         self._first_iterations = self._first_iterations or taken
         if taken > STALE * self._first_iterations:
-            self._smooth = None
-        return solution
+            self._hierarchy = None
+        return solution[:, 0]
 
 
-def _factors(matrix: csr_array) -> SuperLU:
-    """Ordered as for a symmetric matrix and without pivoting, which a positive definite one does not need."""
-    return splu(matrix.tocsc(), permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
-
-
-def _conjugate_gradients(
-    matrix: csr_array, load: np.ndarray, reduction: float, smooth: LinearOperator
+def conjugate_gradients(
+    matrix: csr_array, loads: np.ndarray, reduction: float, precondition: Precondition
 ) -> tuple[np.ndarray, int]:
-    """Hestenes & Stiefel, J. Res. Nat. Bur. Stand. 49 (1952) 409."""
-    residuals: list[None] = []
-    solution, _ = cg(
-        matrix, load, rtol=reduction, maxiter=MOST_ITERATIONS, M=smooth, callback=lambda _: residuals.append(None)
-    )
-    return solution, len(residuals)
+    """Solutions (n, k) for loads (n, k), each by itself but in step, and the iterations taken.
+
+    Hestenes & Stiefel, J. Res. Nat. Bur. Stand. 49 (1952) 409.
+    """
+    rows = in_rows(matrix)
+    solution, residual = np.zeros_like(loads), loads.copy()
+    enough = reduction * np.linalg.norm(loads, axis=0)
+    direction, before = np.zeros_like(loads), np.ones(loads.shape[1])
+    for iteration in range(MOST_ITERATIONS):
+        if (np.linalg.norm(residual, axis=0) <= enough).all():
+            return solution, iteration
+        corrected = precondition(residual)
+        now = _dots(residual, corrected)
+        direction *= now / before
+        direction += corrected
+        product = rows @ direction
+        # A column that is solved to the last digit stays as it is.
+        step = np.divide(now, _dots(direction, product), out=np.zeros_like(now), where=now > 0)
+        solution += step * direction
+        residual -= step * product
+        before = np.where(now > 0, now, 1.0)
+    return solution, MOST_ITERATIONS
 
 
-def _minimal_residuals(
-    matrix: csr_array, load: np.ndarray, reduction: float, smooth: LinearOperator
+def _dots(first: np.ndarray, second: np.ndarray) -> np.ndarray:
+    """(k,) the scalar products of columns (n, k)."""
+    return np.einsum("nk,nk->k", first, second)
+
+
+def minimal_residuals(
+    matrix: csr_array, loads: np.ndarray, reduction: float, precondition: Precondition
 ) -> tuple[np.ndarray, int]:
-    """Saad & Schultz, SIAM J. Sci. Stat. Comput. 7 (1986) 856."""
+    """The same for one load (n, 1) and a matrix that need not be symmetric.
+
+    Saad & Schultz, SIAM J. Sci. Stat. Comput. 7 (1986) 856.
+    """
     residuals: list[float] = []
     solution, _ = gmres(
-        matrix, load, rtol=reduction, restart=RESTART, maxiter=MOST_ITERATIONS // RESTART, M=smooth,
+        matrix, loads[:, 0], rtol=reduction, restart=RESTART, maxiter=MOST_ITERATIONS // RESTART,
+        M=LinearOperator(matrix.shape, matvec=lambda load: precondition(load.reshape(-1, 1))[:, 0], dtype=float),
         callback=residuals.append, callback_type="pr_norm",
     )  # fmt: skip
-    return solution, len(residuals)
+    return solution[:, None], len(residuals)

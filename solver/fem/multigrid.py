@@ -1,4 +1,4 @@
-"""One V-cycle of algebraic multigrid as a preconditioner: aggregation by PyAMG, smoothing by Chebyshev polynomials.
+"""One V-cycle of algebraic multigrid as a preconditioner: smoothed aggregation, smoothing by Chebyshev polynomials.
 
 Quadratic elements have one level more on top: the exact Galerkin matrix of the linear functions on the same cells.
 
@@ -11,17 +11,21 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-import pyamg
-from scipy.sparse import coo_array, csc_array, csr_array, csr_matrix
-from scipy.sparse.linalg import LinearOperator, SuperLU, splu
+from pyamg.aggregation import standard_aggregation
+from pyamg.strength import symmetric_strength_of_connection
+from scipy.sparse import csc_array, csr_array, csr_matrix
+from scipy.sparse.linalg import SuperLU, splu
 
 from .mesh import CELL_EDGES, Mesh
+from .products import Rows, in_rows, product
 
 # Couplings below this share of their neighbours' are left out of the aggregation, so that aggregates keep to one side
 # of thin insulation.
 WEAK = 0.05
 COARSEST = 500
 POWER_STEPS = 8
+# The power method ends below the largest eigenvalue.
+ABOVE = 1.1
 # The smoother damps the upper part of the spectrum, from this share of the largest eigenvalue; the coarse level does
 # the rest.
 DAMPED_FROM = 0.25
@@ -29,13 +33,22 @@ DAMPED_FROM = 0.25
 
 @dataclass(frozen=True)
 class Level:
-    """matrix: (n, n). prolongation: (n, c) from the next level. inverse_diagonal: (n,). largest: of D^-1 A, a bound."""
+    """matrix: (n, n). prolongation: (n, c) from the next level. Smoothing: see _smoother; first, second: (n, 1)."""
 
-    matrix: csr_array
-    prolongation: csr_array
-    restriction: csr_array
-    inverse_diagonal: np.ndarray
-    largest: float
+    matrix: Rows
+    prolongation: Rows
+    restriction: Rows
+    first: np.ndarray
+    second: np.ndarray
+    growth: float
+
+    def smoothed(self, loads: np.ndarray) -> np.ndarray:
+        """(n, k) two steps of the Chebyshev iteration from zero; a symmetric operation on loads (n, k)."""
+        solution = self.first * loads
+        change = self.second * self.matrix.left(loads, solution)
+        solution *= self.growth
+        solution += change
+        return solution
 
 
 @dataclass(frozen=True)
@@ -43,74 +56,78 @@ class Hierarchy:
     levels: tuple[Level, ...]
     coarsest: SuperLU
 
-    def cycle(self, load: np.ndarray, depth: int = 0) -> np.ndarray:
-        """(n,) an approximate solution for ``load`` (n,): smooth, correct from the next level, smooth."""
+    def cycle(self, loads: np.ndarray, depth: int = 0) -> np.ndarray:
+        """(n, k) approximate solutions for loads (n, k): smooth, correct from the next level, smooth."""
         if depth == len(self.levels):
-            return self.coarsest.solve(load)
+            return self.coarsest.solve(loads)
         level = self.levels[depth]
-        solution = _smooth(level, load)
-        coarse = level.restriction @ (load - level.matrix @ solution)
-        solution += level.prolongation @ self.cycle(coarse, depth + 1)
-        solution += _smooth(level, load - level.matrix @ solution)
+        solution = level.smoothed(loads)
+        coarse = self.cycle(level.restriction @ level.matrix.left(loads, solution), depth + 1)
+        solution += level.prolongation @ coarse
+        solution += level.smoothed(level.matrix.left(loads, solution))
         return solution
 
 
-def preconditioner(matrix: csr_array, interpolation: csr_array | None) -> LinearOperator:
-    """One V-cycle for a symmetric positive definite matrix (n, n); interpolation: (n, c) from linear functions."""
+def hierarchy(matrix: csr_array, interpolation: csr_array | None) -> Hierarchy:
+    """For a symmetric positive definite matrix (n, n); interpolation: (n, c) from linear functions, if there is one."""
     levels = []
     if interpolation is not None:
-        levels.append(_level(matrix, interpolation))
-        matrix = csr_array(interpolation.T @ matrix @ interpolation)
-    aggregated = pyamg.smoothed_aggregation_solver(
-        csr_matrix(matrix),
-        strength=("symmetric", {"theta": WEAK}),
-        max_coarse=COARSEST,
-        presmoother=None,
-        postsmoother=None,
-    ).levels
-    levels += [_level(csr_array(level.A), csr_array(level.P)) for level in aggregated[:-1]]
-    hierarchy = Hierarchy(tuple(levels), splu(csc_array(aggregated[-1].A)))
-    shape = hierarchy.levels[0].matrix.shape if levels else matrix.shape
-    return LinearOperator(shape, matvec=hierarchy.cycle, dtype=float)
+        level, matrix = _coarsened(matrix, interpolation, *_scaling(matrix))
+        levels.append(level)
+    while matrix.shape[0] > COARSEST:
+        inverse_diagonal, largest = _scaling(matrix)
+        smoothed = _smoothed_aggregates(matrix, inverse_diagonal, largest)
+        level, matrix = _coarsened(matrix, smoothed, inverse_diagonal, largest)
+        levels.append(level)
+    return Hierarchy(tuple(levels), splu(csc_array(matrix)))
 
 
-def _level(matrix: csr_array, prolongation: csr_array) -> Level:
-    inverse_diagonal = 1.0 / matrix.diagonal()
-    return Level(
-        matrix=matrix,
-        prolongation=prolongation,
-        restriction=csr_array(prolongation.T),
-        inverse_diagonal=inverse_diagonal,
-        largest=_largest_eigenvalue(matrix, inverse_diagonal),
+def _coarsened(
+    matrix: csr_array, prolongation: csr_array, inverse_diagonal: np.ndarray, largest: float
+) -> tuple[Level, csr_array]:
+    """A level, and the Galerkin matrix of the next."""
+    restriction = csr_array(prolongation.T)
+    coarse = product(restriction, product(matrix, prolongation))
+    fine = Level(
+        in_rows(matrix), in_rows(prolongation), in_rows(restriction), *_smoother(inverse_diagonal[:, None], largest)
     )
+    return fine, coarse
 
 
-def _largest_eigenvalue(matrix: csr_array, inverse_diagonal: np.ndarray) -> float:
-    """Of D^-1 A, a little above what a few steps of the power method find."""
-    vector = np.random.default_rng(0).standard_normal(len(inverse_diagonal))
+def _smoother(inverse_diagonal: np.ndarray, largest: float) -> tuple[np.ndarray, np.ndarray, float]:
+    """What two Chebyshev steps for D^-1 A from zero come to: x = a b and then c x + e (b - A x); a, e and c."""
+    centre, radius = 0.5 * largest * (1.0 + DAMPED_FROM), 0.5 * largest * (1.0 - DAMPED_FROM)
+    share = 1.0 / (2.0 * centre - radius**2 / centre)
+    return inverse_diagonal / centre, 2.0 * share * inverse_diagonal, 1.0 + share * radius**2 / centre
+
+
+def _smoothed_aggregates(matrix: csr_array, inverse_diagonal: np.ndarray, largest: float) -> csr_array:
+    """(n, c) prolongation: one on each aggregate of strongly coupled nodes, smoothed by one damped Jacobi step."""
+    strong = symmetric_strength_of_connection(csr_matrix(matrix), WEAK)
+    aggregates = csr_array(standard_aggregation(strong)[0], dtype=float)
+    step = product(matrix, aggregates)
+    step.data *= np.repeat(-4.0 / 3.0 * ABOVE / largest * inverse_diagonal, np.diff(step.indptr))
+    return aggregates + step
+
+
+def _scaling(matrix: csr_array) -> tuple[np.ndarray, float]:
+    """(n,) 1 over the diagonal D, and the largest eigenvalue of D^-1 A, a little above what the power method finds."""
+    inverse_diagonal = 1.0 / matrix.diagonal()
+    rows = in_rows(matrix)
+    vector = np.random.default_rng(0).standard_normal((matrix.shape[0], 1))
     for _ in range(POWER_STEPS):
         vector /= np.linalg.norm(vector)
-        vector = inverse_diagonal * (matrix @ vector)
-    return 1.1 * float(np.linalg.norm(vector))
+        vector = inverse_diagonal[:, None] * (rows @ vector)
+    return inverse_diagonal, ABOVE * float(np.linalg.norm(vector))
 
 
-def _smooth(level: Level, load: np.ndarray) -> np.ndarray:
-    """(n,) two steps of the Chebyshev iteration for D^-1 A from zero; a symmetric operation on ``load`` (n,)."""
-    centre = 0.5 * level.largest * (1.0 + DAMPED_FROM)
-    radius = 0.5 * level.largest * (1.0 - DAMPED_FROM)
-    first = level.inverse_diagonal * load / centre
-    left = load - level.matrix @ first
-    share = 1.0 / (2.0 * centre - radius**2 / centre)
-    return first + share * (2.0 * level.inverse_diagonal * left + radius**2 / centre * first)
-
-
-def midside_interpolation(mesh: Mesh) -> csr_array | None:
-    """(N, corners) linear interpolation from a quadratic mesh's corner nodes to all its nodes; None if it is linear."""
-    if mesh.order == 1:
-        return None
+def midside_interpolation(mesh: Mesh) -> csr_array:
+    """(N, corners) linear interpolation from a quadratic mesh's corner nodes to all its nodes."""
     corners = int(mesh.cells[:, :4].max()) + 1
-    ends = np.repeat(np.arange(len(mesh.nodes))[:, None], 2, axis=1)
-    ends[mesh.cells[:, 4:]] = mesh.cells[:, CELL_EDGES]
-    rows = np.repeat(np.arange(len(mesh.nodes)), 2)
-    halves = np.full(len(rows), 0.5)
-    return coo_array((halves, (rows, ends.ravel())), shape=(len(mesh.nodes), corners)).tocsr()
+    middles = len(mesh.nodes) - corners
+    ends = np.empty((middles, 2), np.int32)
+    ends[mesh.cells[:, 4:] - corners] = mesh.cells[:, CELL_EDGES]
+    starts = np.concatenate([np.arange(corners), corners + 2 * np.arange(middles + 1)])
+    columns = np.concatenate([np.arange(corners, dtype=np.int32), ends.ravel()])
+    values = np.repeat([1.0, 0.5], [corners, 2 * middles])
+    return csr_array((values, columns, starts), shape=(len(mesh.nodes), corners))

@@ -7,10 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.sparse import csr_array
 
+from ..fem.around import summed_matrix
 from ..fem.mesh import Mesh
 from ..fem.reference import quadrature, shape_functions, shape_gradients
-from ..fem.volume import Geometry, assemble, conduction_blocks, metric
+from ..fem.volume import CELLS_AT_ONCE, conduction_matrix, geometry
 from ..materials import Material, Property, Table
+from ..parallel import slices
 from .laws import STEP
 
 
@@ -39,14 +41,13 @@ def conductivity_tensor(material: Material, temperature: np.ndarray) -> np.ndarr
     return np.einsum("pi,pm,pj->mij", axes, principal_values(material, temperature), axes)
 
 
-def constant_conduction(mesh: Mesh, shape: Geometry, materials: list[Material]) -> csr_array:
+def constant_conduction(mesh: Mesh, materials: list[Material]) -> csr_array:
     """(N, N) W/K: the conduction of all parts whose conductivity does not depend on temperature."""
     tensors = np.zeros((len(materials), 3, 3))
     for index, material in enumerate(materials):
         if is_constant(material):
             tensors[index] = conductivity_tensor(material, np.zeros(1))[0]
-    blocks = conduction_blocks(mesh.order, metric(shape, tensors[mesh.cell_part]))
-    return assemble(mesh.cells, blocks, len(mesh.nodes))
+    return conduction_matrix(mesh, tensors)
 
 
 @dataclass(frozen=True)
@@ -66,28 +67,35 @@ class TabledConduction:
     def residual_and_tangent(self, temperature: np.ndarray) -> tuple[np.ndarray, csr_array]:
         """(N,) W and (N, N) W/K, exact but for the quadrature of the tables; temperature (N,) K."""
         size, nodes = len(temperature), self.cells.shape[1]
-        local = temperature[self.cells]
-        residual, tangent = np.zeros((nodes, len(self.cells))), np.zeros((nodes, nodes, len(self.cells)))
+        residual, tangent = np.zeros((nodes, len(self.cells))), np.zeros((nodes, len(self.cells), nodes))
+        for piece in slices(len(self.cells), CELLS_AT_ONCE):
+            local = temperature.take(self.cells[piece]).T
+            residual[:, piece], tangent[:, piece] = self._of_cells(local, self.volume[piece], self.along[..., piece])
+        return (
+            np.bincount(self.cells.T.ravel(), residual.ravel(), size),
+            summed_matrix(self.cells, lambda place, chosen: tangent[place].take(chosen, axis=0), size),
+        )
+
+    def _of_cells(self, local: np.ndarray, volume: np.ndarray, along: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """The same of some cells alone, (n, c) and (n, c, n); local (n, c) K, volume (c,), along (3, 3, c)."""
+        nodes, count = local.shape
+        residual, tangent = np.zeros((nodes, count)), np.zeros((nodes, nodes, count))
         points, weights = quadrature(3, 2 * self.order)
         for point, weight in zip(points[:, None], weights, strict=True):
             values = shape_functions(point, self.order)[0]
-            slopes = shape_gradients(point, self.order)[0]
-            stepped = principal_values(self.material, local @ values + 1j * STEP)
-            towards = np.einsum("aj,pjc->apc", slopes, self.along)
-            gradient = np.einsum("apc,ca->pc", towards, local)
-            mass = weight * self.volume
-            flux = mass * stepped.real * gradient
-            residual += np.einsum("apc,pc->ac", towards, flux)
-            tangent += np.einsum("apc,bpc->abc", towards, mass * stepped.real * towards, optimize=True)
-            drift = np.einsum("apc,pc->ac", towards, mass * stepped.imag / STEP * gradient)
-            tangent += drift[:, None] * values[None, :, None]
-        return (
-            np.bincount(self.cells.T.ravel(), residual.ravel(), size),
-            assemble(self.cells, tangent, size),
-        )
+            towards = shape_gradients(point, self.order)[0] @ along
+            gradient = (towards * local).sum(axis=1)
+            stepped = weight * volume * principal_values(self.material, values @ local + 1j * STEP)
+            residual += (towards * (stepped.real * gradient)[:, None]).sum(axis=0)
+            for principal, conductance in zip(towards, stepped.real, strict=True):
+                tangent += (conductance * principal)[:, None] * principal
+            drift = (towards * (stepped.imag / STEP * gradient)[:, None]).sum(axis=0)
+            tangent += drift[:, None] * values[:, None]
+        return residual, tangent.transpose(0, 2, 1)
 
 
-def tabled_conduction(mesh: Mesh, shape: Geometry, part: int, name: str, material: Material) -> TabledConduction:
-    mine = mesh.cell_part == part
-    along = np.einsum("pk,jkc->pjc", principal_axes(material), shape.gradients[:, :, mine])
-    return TabledConduction(name, material, mesh.order, mesh.cells[mine], shape.volume[mine], along)
+def tabled_conduction(mesh: Mesh, part: int, name: str, material: Material) -> TabledConduction:
+    mine = np.flatnonzero(mesh.cell_part == part)
+    shape = geometry(mesh, mine)
+    along = np.einsum("pk,jkc->pjc", principal_axes(material), shape.gradients)
+    return TabledConduction(name, material, mesh.order, mesh.cells[mine], shape.volume, along)

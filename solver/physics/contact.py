@@ -16,7 +16,7 @@ from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, points_at
 from ..fem.mesh import CELL_FACES, Mesh, face_keys
 from ..fem.reference import quadrature, shape_gradients
-from ..fem.volume import Geometry
+from ..fem.volume import geometry
 from ..geometry.overlap import Overlap, covered_area, default_gap, overlap
 from ..geometry.surface import area_vectors, areas
 from ..materials import Material, Property, Table
@@ -118,6 +118,8 @@ def piece_points(mesh: Mesh, facet: np.ndarray, corners: np.ndarray, area: np.nd
 
 def wholly_covered(mesh: Mesh, covered: Covered) -> np.ndarray:
     """(B,) whether a boundary triangle lies in contact all over."""
+    if not len(covered.facet):
+        return np.zeros(len(mesh.boundary), bool)
     area = areas(mesh.nodes[mesh.boundary[:, :3]])
     return covered_area(covered.facet, covered.area, len(area)) > WHOLLY * area
 
@@ -209,14 +211,14 @@ class Way:
         return self.conductivity * self.gradient
 
 
-def crossing(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Conductance | Bond:
+def crossing(mesh: Mesh, joint: Joint, case: Case) -> Conductance | Bond:
     """The term by which heat crosses a joint."""
     if joint.contact.conductance is not None:
         return Conductance(joint, joint.contact.conductance)
-    return _bond(mesh, shape, joint, case)
+    return _bond(mesh, joint, case)
 
 
-def _bond(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Bond:
+def _bond(mesh: Mesh, joint: Joint, case: Case) -> Bond:
     sides = (joint.first, joint.second)
     materials = [case.parts[side.part].material for side in sides]
     cells = boundary_cells(mesh)
@@ -224,14 +226,14 @@ def _bond(mesh: Mesh, shape: Geometry, joint: Joint, case: Case) -> Bond:
     # Warburton & Hesthaven, Comput. Methods Appl. Mech. Eng. 192 (2003) 2765.
     trace = mesh.order * (mesh.order + 2) / 3.0
     stiff = [
-        trace * _across(side.normal, material) * _area_per_volume(mesh, shape, side, cells)
+        trace * _across(side.normal, material) * _area_per_volume(mesh, side, cells)
         for side, material in zip(sides, materials, strict=True)
     ]
     total = stiff[0] + stiff[1]
     ways = tuple(
         Way(conductivity, csr_array(diags_array(share / total) @ gradient), side.points.shape)
         for side, material, share in zip(sides, materials, reversed(stiff), strict=True)
-        for conductivity, gradient in _normal_gradients(mesh, shape, side, material, cells)
+        for conductivity, gradient in _normal_gradients(mesh, side, material, cells)
     )
     return Bond(
         name="the bond of " + " and ".join(f"'{case.parts[side.part].name}'" for side in sides),
@@ -270,25 +272,26 @@ def boundary_cells(mesh: Mesh) -> np.ndarray:
     return order[np.searchsorted(known, wanted, sorter=order)] // len(CELL_FACES)
 
 
-def _area_per_volume(mesh: Mesh, shape: Geometry, side: Side, cells: np.ndarray) -> np.ndarray:
+def _area_per_volume(mesh: Mesh, side: Side, cells: np.ndarray) -> np.ndarray:
     """(P,) 1/m: the boundary triangle's area over its cell's volume."""
-    return areas(mesh.nodes[mesh.boundary[side.points.facet, :3]]) / shape.volume[cells[side.points.facet]]
+    return areas(mesh.nodes[mesh.boundary[side.points.facet, :3]]) / geometry(mesh, cells[side.points.facet]).volume
 
 
 def _normal_gradients(
-    mesh: Mesh, shape: Geometry, side: Side, material: Material, cells: np.ndarray
+    mesh: Mesh, side: Side, material: Material, cells: np.ndarray
 ) -> list[tuple[Property, csr_array]]:
     """Each conductivity of the material, and (P, N) the slope along its part of the normal at the points."""
     cell = cells[side.points.facet]
     # Straight-sided elements map their nodes' positions as they do temperatures.
     offset = side.points.shape @ mesh.nodes - mesh.nodes[mesh.cells[cell, 0]]
-    parent = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], offset)
+    gradients = geometry(mesh, cell).gradients
+    parent = np.einsum("ijp,pj->pi", gradients, offset)
     barycentric = np.concatenate([1.0 - parent.sum(axis=1, keepdims=True), parent], axis=1)
     slopes = shape_gradients(barycentric, mesh.order)
     nodes, starts = mesh.cells[cell].ravel(), np.arange(len(cell) + 1) * mesh.cells.shape[1]
     found = []
     for conductivity, along in zip(material.conductivity, _directions(side.normal, material), strict=True):
-        towards = np.einsum("ijp,pj->pi", shape.gradients[:, :, cell], along)
+        towards = np.einsum("ijp,pj->pi", gradients, along)
         values = np.einsum("pai,pi->pa", slopes, towards)
         found.append((conductivity, csr_array((values.ravel(), nodes, starts), (len(cell), len(mesh.nodes)))))
     return found

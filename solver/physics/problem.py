@@ -6,14 +6,14 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.sparse import coo_array
+from scipy.sparse import coo_array, csr_array
 from scipy.sparse.csgraph import connected_components
 
 from ..case import Case, Tag
 from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, both, face_points
 from ..fem.mesh import Mesh
-from ..fem.volume import Geometry, geometry
+from ..fem.volume import volumes
 from ..geometry.surface import area_vectors
 from .contact import Bond, Conductance, Covered, crossing, joints, piece_points, wholly_covered
 from .film import film_law
@@ -44,14 +44,15 @@ class Patch:
 
 @dataclass(frozen=True)
 class Problem:
-    """heat_density: (P,) W/m3 of each part. patches: one for each tag of the case, then the untagged faces.
+    """volume: (M,) m3 of each cell. heat_density: (P,) W/m3 of each part.
 
-    contacts: one for each contact of the case. joined: (B,) boundary triangles that lie wholly within contacts.
+    patches: one for each tag of the case, then the untagged faces. contacts: one for each contact of the case.
+    joined: (B,) boundary triangles that lie wholly within contacts.
     """
 
     case: Case
     mesh: Mesh
-    shape: Geometry
+    volume: np.ndarray
     heat_density: np.ndarray
     patches: tuple[Patch, ...]
     contacts: tuple[Conductance | Bond, ...]
@@ -60,19 +61,19 @@ class Problem:
 
 def put_together(case: Case, mesh: Mesh) -> Problem:
     """Raises Trouble of kind "case" for a tag that carries terms and has no faces."""
-    shape = geometry(mesh)
-    volumes = np.bincount(mesh.cell_part, shape.volume, len(case.parts))
-    heat = np.array([part.heat for part in case.parts]) / volumes + [part.heat_density for part in case.parts]
+    volume = volumes(mesh)
+    of_parts = np.bincount(mesh.cell_part, volume, len(case.parts))
+    heat = np.array([part.heat for part in case.parts]) / of_parts + [part.heat_density for part in case.parts]
     met, covered = joints(case, mesh)
     joined = wholly_covered(mesh, covered)
     tags = [*enumerate(case.tags), (-1, case.untagged)]
     return Problem(
         case=case,
         mesh=mesh,
-        shape=shape,
+        volume=volume,
         heat_density=heat,
         patches=tuple(_patch(case, mesh, number, tag, covered, joined) for number, tag in tags),
-        contacts=tuple(crossing(mesh, shape, joint, case) for joint in met),
+        contacts=tuple(crossing(mesh, joint, case) for joint in met),
         joined=joined,
     )
 
@@ -141,23 +142,29 @@ def check_sheds_heat(problem: Problem) -> None:
 
     Raises Trouble of kind "adrift" that names the part otherwise.
     """
-    mesh = problem.mesh
-    count = len(mesh.nodes)
-    starts, ends = mesh.cells[:, :1], mesh.cells[:, 1:]
-    across = [contact.joint for contact in problem.contacts]
-    one = [np.broadcast_to(starts, ends.shape).ravel(), *(mesh.boundary[j.first.points.facet, 0] for j in across)]
-    other = [ends.ravel(), *(mesh.boundary[j.second.points.facet, 0] for j in across)]
-    links = np.concatenate(one), np.concatenate(other)
-    graph = coo_array((np.ones(len(links[0]), bool), links), shape=(count, count))
-    _, body = connected_components(graph, directed=False)
+    mesh, body = problem.mesh, _bodies(problem)
     fixed = np.zeros(body.max() + 1, bool)
     for patch in problem.patches:
         if patch.held is not None or any(law.sheds for law in patch.laws.values()):
-            fixed[body[mesh.boundary[patch.facets].ravel()]] = True
-    if not fixed.all():
-        first = mesh.cells[~fixed[body[mesh.cells[:, 0]]]][0, 0]
-        part = mesh.cell_part[np.flatnonzero(mesh.cells[:, 0] == first)[0]]
-        raise adrift(problem.case.parts[part].name, mesh.nodes[first])
+            fixed[body[mesh.boundary[patch.facets, 0]]] = True
+    cold = np.flatnonzero(~fixed[body[mesh.cells[:, 0]]])
+    if len(cold):
+        raise adrift(problem.case.parts[mesh.cell_part[cold[0]]].name, mesh.nodes[mesh.cells[cold[0], 0]])
+
+
+def _bodies(problem: Problem) -> np.ndarray:
+    """(N,) the connected body of each corner node, parts in contact being one."""
+    mesh = problem.mesh
+    nodes, cells = len(mesh.nodes), len(mesh.cells)
+    # Cells are vertices of the graph too, linked to their corners: its rows then need no sorting.
+    starts = np.concatenate([np.zeros(nodes, np.int32), 4 * np.arange(cells + 1, dtype=np.int32)])
+    corners = mesh.cells[:, :4].ravel()
+    graph = csr_array((np.ones(len(corners)), corners, starts), shape=(nodes + cells, nodes + cells))
+    for contact in problem.contacts:
+        one, other = (mesh.boundary[side.points.facet, 0] for side in (contact.joint.first, contact.joint.second))
+        graph = graph + coo_array((np.ones(len(one)), (one, other)), shape=graph.shape)
+    _, body = connected_components(graph, directed=True, connection="weak")
+    return body[:nodes]
 
 
 def adrift(name: str, point: np.ndarray) -> Trouble:

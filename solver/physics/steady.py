@@ -13,6 +13,8 @@ from __future__ import annotations
 import time
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import reduce
+from operator import add
 
 import numpy as np
 from scipy.optimize import brentq
@@ -21,6 +23,7 @@ from scipy.sparse import csr_array
 from ..errors import Trouble
 from ..fem.boundary import SurfacePoints, film_matrix, flux_load
 from ..fem.linear_algebra import LinearSolver
+from ..fem.mesh import Mesh
 from ..fem.multigrid import midside_interpolation
 from ..fem.volume import heat_load
 from .conduction import TabledConduction, constant_conduction, is_constant, tabled_conduction
@@ -83,33 +86,35 @@ class System:
     def residual_and_tangent(self, rise: np.ndarray) -> tuple[list[np.ndarray], csr_array]:
         """Residual (N,) W of the linear terms and of each nonlinear one, and the tangent (N, N) W/K of all."""
         found = [term.residual_and_tangent(self.reference + rise) for term in self.nonlinear]
-        tangent = sum((tangent for _, tangent in found), self.matrix)
+        # The large one last here as below: adding copies.
+        tangent = reduce(add, [*(tangent for _, tangent in found), self.matrix])
         return [self.matrix @ rise - self.load, *(residual for residual, _ in found)], tangent
 
 
 def assembled(problem: Problem, reference: float) -> System:
     """The system of all terms of the problem, temperatures counted from ``reference`` (K)."""
     mesh, parts = problem.mesh, problem.case.parts
-    matrix = constant_conduction(mesh, problem.shape, [part.material for part in parts])
-    load = heat_load(mesh, problem.shape, problem.heat_density[mesh.cell_part])
+    load = heat_load(mesh, problem.volume, problem.heat_density[mesh.cell_part])
+    matrices = []
     nonlinear: list[NonlinearSurface | TabledConduction | Bond] = [
-        tabled_conduction(mesh, problem.shape, index, f"the conductivity of '{part.name}'", part.material)
+        tabled_conduction(mesh, index, f"the conductivity of '{part.name}'", part.material)
         for index, part in enumerate(parts)
         if not is_constant(part.material)
     ]
     for patch in problem.patches:
         for kind, law in patch.laws.items():
             if isinstance(law, Linear):
-                matrix = matrix + film_matrix(patch.points, law.coefficient)
+                matrices += [film_matrix(patch.points, law.coefficient)] if law.coefficient else []
                 load = load + flux_load(patch.points, law.flux(np.full(1, reference), patch.facets[:1]))
             else:
                 nonlinear.append(NonlinearSurface(f"the {kind} of '{patch.name}'", patch.points, law))
     for contact in problem.contacts:
         if isinstance(contact, Conductance) or contact.is_constant:
-            matrix = matrix + contact.residual_and_tangent(np.zeros(len(mesh.nodes)))[1]
+            matrices.append(contact.residual_and_tangent(np.zeros(len(mesh.nodes)))[1])
         else:
             nonlinear.append(contact)
-    return System(reference, matrix, load, tuple(nonlinear))
+    matrices.append(constant_conduction(mesh, [part.material for part in parts]))
+    return System(reference, reduce(add, matrices), load, tuple(nonlinear))
 
 
 def balanced_temperature(problem: Problem) -> float:
@@ -119,7 +124,7 @@ def balanced_temperature(problem: Problem) -> float:
         temperatures, areas = np.array(held).T
         return float(temperatures @ areas / areas.sum())
 
-    released = float(problem.heat_density[problem.mesh.cell_part] @ problem.shape.volume)
+    released = float(problem.heat_density[problem.mesh.cell_part] @ problem.volume)
 
     def surplus(temperature: float) -> float:
         return released + sum(
@@ -156,8 +161,8 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
     system = assembled(problem, balanced_temperature(problem) if start is None else start)
     assembly_seconds = time.perf_counter() - began
     nodes, held, _ = held_nodes(problem)
-    free = np.setdiff1d(np.arange(len(problem.mesh.nodes)), nodes)
-    linear_solver = LinearSolver(system.symmetric, _on_free(midside_interpolation(problem.mesh), free))
+    free = np.delete(np.arange(len(problem.mesh.nodes)), nodes)
+    linear_solver = LinearSolver(system.symmetric, _free_interpolation(problem.mesh, free))
     reduction = NEWTON_REDUCTION if system.nonlinear else LINEAR_REDUCTION
 
     rise = np.zeros(len(problem.mesh.nodes))
@@ -170,7 +175,7 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
             break
         left = f"{100 * share:.2g} % of the heat is still unbalanced" if steps else f"{len(free)} temperatures"
         progress(min(0.95, steps / 10.0), left)
-        change = linear_solver.solve(iterate.tangent[free][:, free], -iterate.residual[free], reduction)
+        change = linear_solver.solve(_on_free(iterate.tangent, free, free), -iterate.residual[free], reduction)
         following = _damped(system, iterate, free, change, SMALLEST_DAMPING if share > ROUNDING else 1.0)
         steps += 1
         if following is None and share <= ROUNDING:
@@ -203,11 +208,18 @@ class Iterate:
         return np.sum(self.residuals, axis=0)
 
 
-def _on_free(interpolation: csr_array | None, free: np.ndarray) -> csr_array | None:
-    """The interpolation between the free nodes of both levels."""
-    if interpolation is None:
+def _on_free(matrix: csr_array, rows: np.ndarray, columns: np.ndarray) -> csr_array:
+    """The rows and columns of those numbers, rising; the matrix itself where they are all."""
+    some = matrix if len(rows) == matrix.shape[0] else matrix[rows]
+    return some if len(columns) == matrix.shape[1] else some[:, columns]
+
+
+def _free_interpolation(mesh: Mesh, free: np.ndarray) -> csr_array | None:
+    """From linear functions to quadratic ones, between the free nodes of both; None for a linear mesh."""
+    if mesh.order == 1:
         return None
-    return interpolation[free][:, free[free < interpolation.shape[1]]]
+    whole = midside_interpolation(mesh)
+    return _on_free(whole, free, free[free < whole.shape[1]])
 
 
 def _unbalanced_share(problem: Problem, system: System, iterate: Iterate, free: np.ndarray) -> float:
@@ -217,17 +229,25 @@ def _unbalanced_share(problem: Problem, system: System, iterate: Iterate, free: 
     """
     left = np.abs(iterate.residual[free]).sum()
     terms = [heat for heats in heat_through(problem, system.reference + iterate.rise) for heat in heats.values()]
-    released = problem.heat_density[problem.mesh.cell_part] * problem.shape.volume
+    released = problem.heat_density[problem.mesh.cell_part] * problem.volume
     held = np.delete(iterate.residual, free)
     passing = 0.5 * (np.abs(terms).sum() + np.abs(released).sum() + np.abs(held).sum())
-    rounding = np.finfo(float).eps * _summed(system, iterate)[free].sum()
-    return float(left / (passing + rounding / ROUNDING)) if left else 0.0
+    if left <= TOLERANCE * passing:
+        return float(left / passing) if left else 0.0
+    return float(left / (passing + np.finfo(float).eps / ROUNDING * _summed(system, iterate)[free].sum()))
 
 
 def _summed(system: System, iterate: Iterate) -> np.ndarray:
     """(N,) W, the size of what adds up to each node's residual: linear terms by the rise, the others by all of T."""
-    others = iterate.tangent - system.matrix
-    return abs(system.matrix) @ np.abs(iterate.rise) + abs(others) @ np.abs(system.reference + iterate.rise)
+    summed = _sizes(system.matrix) @ np.abs(iterate.rise)
+    if system.nonlinear:
+        summed += _sizes(iterate.tangent - system.matrix) @ np.abs(system.reference + iterate.rise)
+    return summed
+
+
+def _sizes(matrix: csr_array) -> csr_array:
+    """The absolute values of all entries."""
+    return csr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape)
 
 
 def _damped(system: System, iterate: Iterate, free: np.ndarray, change: np.ndarray, smallest: float) -> Iterate | None:

@@ -19,7 +19,7 @@ from fluxface.solver.case import Accuracy, Case, Convection, Part, Tag
 from fluxface.solver.fem.boundary import face_points, flux_load
 from fluxface.solver.fem.mesh import Mesh, quadratic
 from fluxface.solver.fem.reference import quadrature, shape_functions
-from fluxface.solver.fem.volume import gradients_at, heat_load
+from fluxface.solver.fem.volume import geometry, gradients_at, heat_load
 from fluxface.solver.geometry.tetrahedra import outer_faces
 from fluxface.solver.materials import Material
 from fluxface.solver.physics.problem import Problem, held_nodes, put_together
@@ -87,7 +87,7 @@ def solved(problem: Problem) -> np.ndarray:
     system = assembled(problem, AMBIENT)
     points, weights = quadrature(3, mesh.order + 4)
     released = SOURCE * rise(places(mesh, points))
-    shares = np.einsum("p,pm,pa,m->ma", weights, released, shape_functions(points, mesh.order), problem.shape.volume)
+    shares = np.einsum("p,pm,pa,m->ma", weights, released, shape_functions(points, mesh.order), problem.volume)
     load = system.load + np.bincount(mesh.cells.ravel(), shares.ravel(), len(mesh.nodes))
     nodes, held, _ = held_nodes(problem)
     assert (held == AMBIENT).all()
@@ -100,13 +100,14 @@ def solved(problem: Problem) -> np.ndarray:
 def errors(divisions: int, order: int) -> tuple[float, float]:
     """The L2 norms of the error and of its gradient."""
     problem = problem_of(cube(divisions, order))
-    mesh, shape = problem.mesh, problem.shape
+    mesh = problem.mesh
     found = solved(problem)
     points, weights = quadrature(3, 2 * order + 4)
     values = shape_functions(points, order) @ found[mesh.cells].T - rise(places(mesh, points))
-    slopes = gradients_at(mesh, shape, found, points) - rise_gradient(places(mesh, points))
+    slopes = gradients_at(geometry(mesh), found[mesh.cells], points).transpose(0, 2, 1)
+    slopes -= rise_gradient(places(mesh, points))
     squares = values**2, (slopes**2).sum(axis=-1)
-    value, slope = (float(np.sqrt(weights @ square @ shape.volume)) for square in squares)
+    value, slope = (float(np.sqrt(weights @ square @ problem.volume)) for square in squares)
     return value, slope
 
 
@@ -145,7 +146,7 @@ def test_nodal_loads_of_uniform_heat() -> None:
 
         alone = np.zeros(len(mesh.cells))
         alone[0] = 9e5
-        load = heat_load(mesh, problem.shape, alone)
-        expected = np.array(volumes[order]) * 9e5 * problem.shape.volume[0]
+        load = heat_load(mesh, problem.volume, alone)
+        expected = np.array(volumes[order]) * 9e5 * problem.volume[0]
         assert load[mesh.cells[0]] == pytest.approx(expected, rel=1e-12)
         assert not np.delete(load, mesh.cells[0]).any()

@@ -60,7 +60,7 @@ def reference(problem: Problem) -> Reference:
     library = MeshTet(mesh.nodes[: corners.max() + 1].T, corners.T.astype(np.int64))
     inside = Basis(library, element, intorder=4)
     on = [FacetBasis(library, element, facets=facets_in(library, mesh, tag), intorder=4) for tag in range(3)]
-    volume = problem.shape.volume.sum()
+    volume = problem.volume.sum()
 
     conduction = BilinearForm(lambda u, v, w: CONDUCTIVITY * dot(grad(u), grad(v)))
     film = BilinearForm(lambda u, v, w: FILM * u * v)

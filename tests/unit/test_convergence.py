@@ -87,7 +87,7 @@ def solved(mesh: Mesh) -> np.ndarray:
     """(N,) K: the foot (z = 0) held, the head in air, flux through everything else."""
     normal = normals(mesh)
     held_facets, head = normal[:, 2] < -0.999, normal[:, 2] > 0.999
-    matrix = constant_conduction(mesh, geometry(mesh), [metal(CONDUCTIVITY)])
+    matrix = constant_conduction(mesh, [metal(CONDUCTIVITY)])
 
     points = face_points(mesh.nodes, mesh.boundary, np.flatnonzero(~held_facets), 2 * mesh.order)
     position = points.shape @ mesh.nodes

@@ -16,7 +16,7 @@ from fluxface.solver import pipeline
 from fluxface.solver.case import Convection, Surface, Tag
 from fluxface.solver.fem.boundary import SurfacePoints, face_points, film_matrix, flux_load
 from fluxface.solver.fem.mesh import Mesh
-from fluxface.solver.fem.volume import geometry, heat_load
+from fluxface.solver.fem.volume import heat_load, volumes
 from fluxface.solver.materials import Material
 from fluxface.solver.physics.conduction import constant_conduction
 from scipy.sparse.linalg import splu
@@ -54,9 +54,8 @@ def temperatures_with_mixed_faces(mesh: Mesh, field: Field, slope: Field, heat_d
     """(N,) the element solution where a third of the faces is held, a third given its flux, a third in moving air."""
     kind = mesh.boundary_face % 3
     size = len(mesh.nodes)
-    shape = geometry(mesh)
-    matrix = constant_conduction(mesh, shape, [LAMINATE])
-    load = heat_load(mesh, shape, np.full(len(mesh.cells), heat_density))
+    matrix = constant_conduction(mesh, [LAMINATE])
+    load = heat_load(mesh, volumes(mesh), np.full(len(mesh.cells), heat_density))
 
     def points_and_flux(of_kind: int) -> tuple[SurfacePoints, np.ndarray, np.ndarray]:
         points = face_points(mesh.nodes, mesh.boundary, np.flatnonzero(kind == of_kind), 2 * mesh.order)
