@@ -7,8 +7,8 @@ import sys
 for variable in ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS"):
     os.environ.setdefault(variable, "1")
 
-from .command_line import main as command_line
-from .memory import keep_freed_memory
+from .command_line import main as command_line  # noqa: E402
+from .memory import keep_freed_memory  # noqa: E402
 
 
 def main() -> int:

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from pyamg.aggregation import standard_aggregation
 from pyamg.strength import symmetric_strength_of_connection
+from scipy.linalg import eigh_tridiagonal
 from scipy.sparse import csc_array, csr_array, csr_matrix
 from scipy.sparse.linalg import SuperLU, splu
 
@@ -23,9 +24,7 @@ from .products import Rows, in_rows, product
 # of thin insulation.
 WEAK = 0.05
 COARSEST = 500
-POWER_STEPS = 8
-# The power method ends below the largest eigenvalue.
-ABOVE = 1.1
+LANCZOS_STEPS = 10
 # The smoother damps the upper part of the spectrum, from this share of the largest eigenvalue; the coarse level does
 # the rest.
 DAMPED_FROM = 0.25
@@ -106,19 +105,28 @@ def _smoothed_aggregates(matrix: csr_array, inverse_diagonal: np.ndarray, larges
     strong = symmetric_strength_of_connection(csr_matrix(matrix), WEAK)
     aggregates = csr_array(standard_aggregation(strong)[0], dtype=float)
     step = product(matrix, aggregates)
-    step.data *= np.repeat(-4.0 / 3.0 * ABOVE / largest * inverse_diagonal, np.diff(step.indptr))
+    step.data *= np.repeat(-4.0 / 3.0 / largest * inverse_diagonal, np.diff(step.indptr))
     return aggregates + step
 
 
 def _scaling(matrix: csr_array) -> tuple[np.ndarray, float]:
-    """(n,) 1 over the diagonal D, and the largest eigenvalue of D^-1 A, a little above what the power method finds."""
+    """(n,) 1 over the diagonal D, and the largest eigenvalue of D^-1 A, or a little more.
+
+    The largest Ritz value of some Lanczos steps and its residual: Parlett, The Symmetric Eigenvalue Problem (1980).
+    """
     inverse_diagonal = 1.0 / matrix.diagonal()
-    rows = in_rows(matrix)
+    rows, scale = in_rows(matrix), np.sqrt(inverse_diagonal)[:, None]
     vector = np.random.default_rng(0).standard_normal((matrix.shape[0], 1))
-    for _ in range(POWER_STEPS):
-        vector /= np.linalg.norm(vector)
-        vector = inverse_diagonal[:, None] * (rows @ vector)
-    return inverse_diagonal, ABOVE * float(np.linalg.norm(vector))
+    vector /= np.linalg.norm(vector)
+    before, along, across = np.zeros_like(vector), [], [0.0]
+    for _ in range(LANCZOS_STEPS):
+        following = scale * (rows @ (scale * vector)) - across[-1] * before
+        along.append(float(np.vdot(vector, following)))
+        following -= along[-1] * vector
+        across.append(float(np.linalg.norm(following)))
+        before, vector = vector, following / across[-1]
+    values, vectors = eigh_tridiagonal(along, across[1:-1])
+    return inverse_diagonal, float(values[-1] + across[-1] * abs(vectors[-1, -1]))
 
 
 def midside_interpolation(mesh: Mesh) -> csr_array:
