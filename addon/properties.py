@@ -18,7 +18,7 @@ from bpy.props import (
     StringProperty,
 )
 
-from . import materials
+from . import history, materials
 
 ROOM = 298.15
 
@@ -168,10 +168,29 @@ class MaterialValues(bpy.types.PropertyGroup):
     heat_capacity: PointerProperty(type=MaterialProperty)
 
 
-class Outcome(bpy.types.PropertyGroup):
-    """What the last run left: a result, and the trouble of a run that failed after it."""
+def _note_run(run: KeptRun, _context: bpy.types.Context) -> None:
+    history.write_note(run)
+
+
+class KeptRun(bpy.types.PropertyGroup):
+    """A run whose folder is kept; name: of the folder, and when it was. hottest: K. heat: W that came in."""
 
     folder: StringProperty(subtype="DIR_PATH")
+    note: StringProperty(name="Note", description="What was changed for this run", update=_note_run)
+    hottest: FloatProperty()
+    heat: FloatProperty()
+
+
+class Outcome(bpy.types.PropertyGroup):
+    """What the last run left: a result, and the trouble of a run that failed after it.
+
+    folder: of the result. lost: it is not there any more. runs: those that are kept, the latest first.
+    """
+
+    folder: StringProperty(subtype="DIR_PATH")
+    lost: BoolProperty()
+    runs: CollectionProperty(type=KeptRun)
+    active_run: IntProperty()
     summary: StringProperty()
     inputs: StringProperty()
     message: StringProperty()
@@ -277,6 +296,7 @@ CLASSES = (
     TablePoint,
     MaterialProperty,
     MaterialValues,
+    KeptRun,
     Outcome,
     PartSettings,
     CollectionSettings,

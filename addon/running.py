@@ -13,7 +13,7 @@ import bpy
 from ..solver.case import write_case
 from ..solver.errors import Trouble
 from ..solver.result import read_summary
-from . import host, jobs, study, tags, upkeep, view
+from . import history, host, jobs, study, tags, upkeep, view
 from .cases import build_case
 from .parts import in_sight
 from .properties import Outcome
@@ -139,8 +139,21 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
     except Trouble as trouble:
         keep_trouble(left, trouble)
         return trouble
-    keep_trouble(left, None)
     left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
+    left.lost = False
+    keep_trouble(left, None)
+    return _kept(left, run.result.parent)
+
+
+def _kept(left: Outcome, case: Path) -> Trouble | None:
+    """Keep the run with those before it; a result that cannot be kept is shown all the same."""
+    try:
+        history.keep(case)
+    except Trouble as trouble:
+        keep_trouble(left, trouble)
+        return trouble
+    finally:
+        history.refresh(left, case)
     return None
 
 

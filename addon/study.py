@@ -48,7 +48,12 @@ def outcome(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Outc
 
 def folder(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Path:
     """The case folder: beside the saved file, or in the session's temporary folder."""
-    name = bpy.path.clean_name((scene.fluxface.collection or members[0]).name)
+    return folder_of(scene.fluxface.collection or members[0])
+
+
+def folder_of(owner: bpy.types.Object | bpy.types.Collection) -> Path:
+    """The case folder of the study whose outcome is kept with ``owner``."""
+    name = bpy.path.clean_name(owner.name)
     if not bpy.data.filepath:
         return Path(bpy.app.tempdir) / "fluxface" / name
     file = Path(bpy.data.filepath)

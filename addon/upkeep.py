@@ -10,7 +10,7 @@ import bpy
 from bpy.app.handlers import persistent
 
 from ..solver.errors import Trouble
-from . import host, jobs, study, tags
+from . import history, host, jobs, study, tags
 from .overlay import tag_colours
 from .parts import Skin, modelled, placed, world_matrix
 
@@ -89,7 +89,21 @@ def before_load(_file: str) -> None:
     tag_colours.forget()
 
 
-HANDLERS = (("depsgraph_update_post", on_change), ("save_pre", before_save), ("load_pre", before_load))
+@persistent
+def follow_file(_file: str) -> None:
+    """Results stand beside the file: where it went, they are found or brought."""
+    for owner in (*bpy.data.objects, *bpy.data.collections):
+        if owner.library is None:
+            history.follow(owner.fluxface.outcome, study.folder_of(owner))
+
+
+HANDLERS = (
+    ("depsgraph_update_post", on_change),
+    ("save_pre", before_save),
+    ("save_post", follow_file),
+    ("load_pre", before_load),
+    ("load_post", follow_file),
+)
 
 
 def _stop_waiting() -> None:

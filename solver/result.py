@@ -18,6 +18,10 @@ from .errors import Trouble
 FORMAT = "fluxface.result/1"
 SUMMARY_FILE = "summary.json"
 FIELD_FILE = "field.npz"
+SKIN_FILE = "skin.npz"
+
+# A 6-node triangle (mid-sides 01 12 20) as four, so that a temperature quadratic over it is seen as such.
+QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
 
 # summary.json, as the contract lists it; kept as plain JSON so that a newer summary still reads.
 Summary = dict[str, Any]
@@ -42,6 +46,39 @@ class Field:
     boundary_face: np.ndarray
     heat_flux: np.ndarray
     cell_heat_flux: np.ndarray
+
+
+@dataclass(frozen=True)
+class HotSkin:
+    """What is seen of a field: the surfaces of all parts in plain triangles, small enough to be kept of every run.
+
+    places: (P, 3) m. triangles: (T, 3), outward. part: (T,). temperature: (P,) K, linear over each triangle.
+    """
+
+    places: np.ndarray
+    triangles: np.ndarray
+    part: np.ndarray
+    temperature: np.ndarray
+
+
+def hot_skin(field: Field) -> HotSkin:
+    """The boundary of a field; a place where two parts meet is there once for each of them."""
+    faces, part = field.boundary, field.boundary_part
+    if faces.shape[1] == 6:
+        faces, part = faces[:, QUARTERS].reshape(-1, 3), np.repeat(part, 4)
+    corners = np.stack([np.broadcast_to(part[:, None], faces.shape), faces], axis=-1).reshape(-1, 2)
+    keys, triangles = np.unique(corners @ (len(field.nodes), 1), return_inverse=True)
+    used = keys % len(field.nodes)
+    return HotSkin(field.nodes[used], triangles.reshape(-1, 3), part, field.temperature[used])
+
+
+def write_skin(skin: HotSkin, folder: Path) -> None:
+    np.savez_compressed(folder / SKIN_FILE, **vars(skin))
+
+
+def read_skin(folder: Path) -> HotSkin:
+    """Raises Trouble of kind "case" when there is no sound skin in ``folder``."""
+    return HotSkin(**read_arrays(folder / SKIN_FILE, HotSkin.__dataclass_fields__))
 
 
 def write_result(summary: Summary, field: Field, folder: Path) -> None:

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from . import contacts, materials, running, tagging
+from . import contacts, history, materials, running, tagging
 
-ROOMS = (tagging, materials, contacts, running)
+ROOMS = (tagging, materials, contacts, running, history)
 
 
 def register() -> None:

@@ -9,7 +9,7 @@ import bpy
 import numpy as np
 
 from ...solver.errors import Trouble
-from ...solver.result import Field, read_field
+from ...solver.result import Field, HotSkin, hot_skin, read_field
 from ..units import metres_per_unit
 from .lines import CREASE
 from .material import SHOWN
@@ -18,9 +18,6 @@ from .scale import Scale
 MARK = "fluxface_result"
 TEMPERATURE = "temperature"
 COLOUR = "temperature_colour"
-
-# A 6-node triangle (mid-sides 01 12 20) as four, so that a temperature quadratic over it is seen as such.
-QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
 
 
 def result_of(part: bpy.types.Object) -> bpy.types.Object | None:
@@ -53,7 +50,8 @@ def build_results(
     field = read_field(folder)
     _check(field, len(parts))
     settle(scene)
-    return [_build_result(scene, part, *_surface_of(field, index), material) for index, part in enumerate(parts)]
+    skin = hot_skin(field)
+    return [_build_result(scene, part, *_surface_of(skin, index), material) for index, part in enumerate(parts)]
 
 
 def _check(field: Field, parts: int) -> None:
@@ -66,13 +64,10 @@ def _check(field: Field, parts: int) -> None:
         raise Trouble("case", "The result holds temperatures or places that are not numbers.", "Run again.")
 
 
-def _surface_of(field: Field, part: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def _surface_of(skin: HotSkin, part: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """The part's own boundary: places (P, 3) m, triangles (T, 3), temperature (P,) K."""
-    faces = field.boundary[field.boundary_part == part]
-    if faces.shape[1] == 6:
-        faces = faces[:, QUARTERS].reshape(-1, 3)
-    used, triangles = np.unique(faces, return_inverse=True)
-    return field.nodes[used], triangles.reshape(-1, 3), field.temperature[used]
+    used, triangles = np.unique(skin.triangles[skin.part == part], return_inverse=True)
+    return skin.places[used], triangles.reshape(-1, 3), skin.temperature[used]
 
 
 def _build_result(

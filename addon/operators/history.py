@@ -1,0 +1,66 @@
+"""Look at a kept run's folder, or let the run go."""
+
+from __future__ import annotations
+
+import shutil
+from pathlib import Path
+
+import bpy
+
+from ...solver.errors import Trouble
+from .. import history, study
+from ..properties import KeptRun, Outcome
+from .telling import TellsTrouble
+
+
+def chosen(context: bpy.types.Context) -> tuple[Outcome, KeptRun] | None:
+    """What is left of the present study and the run that is chosen in its list."""
+    try:
+        left = study.outcome(context.scene, study.parts(context))
+    except Trouble:
+        return None
+    return (left, left.runs[left.active_run]) if left.active_run < len(left.runs) else None
+
+
+class _OfRun(TellsTrouble):
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if chosen(context) is None:
+            cls.poll_message_set("No run is kept yet")
+            return False
+        return True
+
+
+class OpenRunFolder(_OfRun, bpy.types.Operator):
+    bl_idname = "fluxface.run_folder"
+    bl_label = "Open Its Folder"
+    bl_description = "Open the folder that holds the chosen run: its case, what came of it, and its pictures"
+
+    def act(self, context: bpy.types.Context) -> None:
+        _, run = chosen(context)
+        if not Path(run.folder).is_dir():
+            raise Trouble("case", f"The folder {run.folder} is not there any more.", "Put it back, or run again.")
+        bpy.ops.wm.path_open(filepath=run.folder)
+
+
+class ForgetRun(_OfRun, bpy.types.Operator):
+    bl_idname = "fluxface.run_forget"
+    bl_label = "Delete This Run"
+    bl_description = "Delete the chosen run's folder from the disk; what is shown on the part stays"
+
+    def invoke(self, context: bpy.types.Context, event: bpy.types.Event) -> set[str]:
+        return context.window_manager.invoke_confirm(self, event)
+
+    def act(self, context: bpy.types.Context) -> None:
+        left, run = chosen(context)
+        case = Path(run.folder).parent.parent
+        try:
+            shutil.rmtree(run.folder)
+        except FileNotFoundError:
+            pass
+        except OSError as error:
+            raise Trouble("case", f"The run cannot be deleted: {error.strerror}.", f"Look at {run.folder}.") from error
+        history.refresh(left, case)
+
+
+register, unregister = bpy.utils.register_classes_factory((OpenRunFolder, ForgetRun))

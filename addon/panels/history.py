@@ -1,0 +1,52 @@
+"""The runs that are kept, and what was changed for each."""
+
+from __future__ import annotations
+
+import bpy
+
+from ...solver.errors import Trouble
+from .. import history, study
+from ..units import power_text, temperature_text
+from .sidebar import Sidebar, paragraph
+
+
+class RunList(bpy.types.UIList):
+    bl_idname = "FLUXFACE_UL_runs"
+
+    def draw_item(self, context, layout, _left, run, _icon, _active, _property, _index) -> None:
+        lines = layout.column(align=True)
+        split = lines.split(factor=0.45)
+        split.label(text=history.when(run))
+        end = split.row()
+        end.alignment = "RIGHT"
+        end.label(text=f"{temperature_text(context.scene, run.hottest)}, {power_text(run.heat)}")
+        lines.prop(run, "note", text="", emboss=False, placeholder="What was changed?")
+
+
+class RunsPanel(Sidebar, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_runs"
+    bl_label = "Earlier Runs"
+    bl_options = {"DEFAULT_CLOSED"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        try:
+            left = study.outcome(context.scene, study.parts(context))
+        except Trouble:
+            return False
+        return bool(left.runs) or left.lost
+
+    def draw(self, context: bpy.types.Context) -> None:
+        layout, left = self.layout, study.outcome(context.scene, study.parts(context))
+        if left.lost:
+            paragraph(context, layout, f"The folder of the last result is not where it was ({left.folder}).", "ERROR")
+            paragraph(context, layout, "Put it back beside the file, or run again; the colours shown are still its.")
+        row = layout.row()
+        row.template_list("FLUXFACE_UL_runs", "", left, "runs", left, "active_run", rows=3)
+        buttons = row.column(align=True)
+        buttons.operator("fluxface.run_folder", text="", icon="FILE_FOLDER")
+        buttons.operator("fluxface.run_forget", text="", icon="TRASH")
+        paragraph(context, layout, f"The latest {history.KEPT} are kept beside the file.")
+
+
+register, unregister = bpy.utils.register_classes_factory((RunList, RunsPanel))
