@@ -125,6 +125,7 @@ def _part(part: bpy.types.Object) -> Part:
 
 
 def _tag(terms: Terms, name: str, metres: float) -> Tag:
+    """Raises Trouble when the terms exclude each other or lack something."""
     others = [
         words
         for words, used in (
@@ -141,17 +142,26 @@ def _tag(terms: Terms, name: str, metres: float) -> Tag:
             f"The tag '{name}' holds a temperature and also carries {' and '.join(others)}.",
             "A held temperature excludes every other term: switch off one or the other.",
         )
+    needed = FILM_NEEDS.get(terms.film, ()) if terms.use_convection else ()
+    for key, what in (("gap", "the gap between its fins"), ("speed", "the speed of its flow")):
+        if key in needed and not getattr(terms, key):
+            raise Trouble("case", f"The tag '{name}' lacks {what}.", "Give it, or choose another film.")
+    return as_tag(terms, name, metres)
+
+
+def as_tag(terms: Terms, name: str, metres: float) -> Tag:
+    """The terms that are switched on, whether or not they go together."""
     return Tag(
         name=name,
         heat=as_typed(terms.heat) if terms.use_heat else 0.0,
         heat_flux=as_typed(terms.heat_flux) if terms.use_heat_flux else 0.0,
-        convection=_convection(terms, name, metres) if terms.use_convection else None,
+        convection=_convection(terms, metres) if terms.use_convection else None,
         radiation=Radiation(as_typed(terms.emissivity), as_typed(terms.surroundings)) if terms.use_radiation else None,
         temperature=as_typed(terms.temperature) if terms.use_temperature else None,
     )
 
 
-def _convection(terms: Terms, name: str, metres: float) -> Convection:
+def _convection(terms: Terms, metres: float) -> Convection:
     ambient = as_typed(terms.ambient)
     if terms.film == "COEFFICIENT":
         return Convection(ambient, coefficient=as_typed(terms.coefficient))
@@ -159,9 +169,6 @@ def _convection(terms: Terms, name: str, metres: float) -> Convection:
         key: as_typed(getattr(terms, key)) * (1.0 if key == "speed" else metres) or None
         for key in FILM_NEEDS.get(terms.film, ())
     }
-    for key, what in (("gap", "the gap between its fins"), ("speed", "the speed of its flow")):
-        if key in given and given[key] is None:
-            raise Trouble("case", f"The tag '{name}' lacks {what}.", "Give it, or choose another film.")
     return Convection(ambient, correlation=terms.film, fluid=terms.fluid, **given)
 
 

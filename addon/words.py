@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import bpy
 
+from ..solver.case import Convection, Tag
+from .cases import as_tag
 from .properties import ContactSettings, Terms
 from .units import as_typed, metres_per_unit, power_text, short_temperature_text
 
@@ -16,28 +18,33 @@ CAUTIONS = (
 
 def carries(scene: bpy.types.Scene, terms: Terms) -> str:
     """The terms of a tag in short, as in "12 W" or "8 W/m²K to 25 °C"; empty when it carries none."""
+    return carried(scene, as_tag(terms, "", metres_per_unit(scene)))
+
+
+def carried(scene: bpy.types.Scene, tag: Tag) -> str:
+    """The same of a tag of a case."""
     texts = []
-    if terms.use_temperature:
-        texts.append(f"held at {short_temperature_text(scene, as_typed(terms.temperature))}")
-    if terms.use_heat:
-        texts.append(power_text(as_typed(terms.heat)))
-    if terms.use_heat_flux:
-        texts.append(f"{as_typed(terms.heat_flux):g} W/m²".replace("-", "−"))
-    if terms.use_convection:
-        to_one_room = terms.use_radiation and terms.surroundings == terms.ambient
-        ambient = f" to {short_temperature_text(scene, as_typed(terms.ambient))}"
-        texts.append(_film(terms) + ("" if to_one_room else ambient))
-    if terms.use_radiation:
-        surroundings = short_temperature_text(scene, as_typed(terms.surroundings))
-        texts.append(f"ε {as_typed(terms.emissivity):g} to {surroundings}")
+    if tag.temperature is not None:
+        texts.append(f"held at {short_temperature_text(scene, tag.temperature)}")
+    if tag.heat:
+        texts.append(power_text(tag.heat))
+    if tag.heat_flux:
+        texts.append(f"{tag.heat_flux:g} W/m²".replace("-", "−"))
+    if tag.convection:
+        to_one_room = tag.radiation and tag.radiation.ambient == tag.convection.ambient
+        ambient = f" to {short_temperature_text(scene, tag.convection.ambient)}"
+        texts.append(_film(tag.convection) + ("" if to_one_room else ambient))
+    if tag.radiation:
+        surroundings = short_temperature_text(scene, tag.radiation.ambient)
+        texts.append(f"ε {tag.radiation.emissivity:g} to {surroundings}")
     return ", ".join(texts)
 
 
-def _film(terms: Terms) -> str:
-    if terms.film == "COEFFICIENT":
-        return f"{as_typed(terms.coefficient):g} W/m²K"
-    moving = terms.film in ("flat_plate_flow", "cylinder_crossflow")
-    return f"{'moving' if moving else 'still'} {terms.fluid}"
+def _film(convection: Convection) -> str:
+    if convection.coefficient is not None:
+        return f"{convection.coefficient:g} W/m²K"
+    moving = convection.correlation in ("flat_plate_flow", "cylinder_crossflow")
+    return f"{'moving' if moving else 'still'} {convection.fluid or 'air'}"
 
 
 def clash(terms: Terms) -> str:

@@ -1,17 +1,14 @@
-"""Run, cancel, look at the place of a trouble, and render the picture."""
+"""Run, cancel, and look at the place of a trouble."""
 
 from __future__ import annotations
 
 import json
-from pathlib import Path
 
 import bpy
 import numpy as np
-from bpy.props import StringProperty
 from mathutils import Vector
 
-from ...solver.errors import Trouble
-from .. import jobs, running, study, tags, view
+from .. import jobs, running, study, tags
 from ..units import metres_per_unit
 from .tagging import enter_edit_mode
 from .telling import Finish, TellsTrouble, WorksBeside
@@ -73,38 +70,4 @@ def _select(context: bpy.types.Context, part: bpy.types.Object, faces: np.ndarra
     tags.select(part.data, chosen)
 
 
-class RenderPicture(TellsTrouble, bpy.types.Operator):
-    bl_idname = "fluxface.render_picture"
-    bl_label = "Render Picture"
-    bl_description = "Render the part in its temperatures with the legend, and save it as PNG"
-
-    filepath: StringProperty(name="Picture", subtype="FILE_PATH")
-    filter_glob: StringProperty(default="*.png", options={"HIDDEN"})
-
-    @classmethod
-    def poll(cls, context: bpy.types.Context) -> bool:
-        try:
-            shown = all(view.has_result(part) for part in study.parts(context))
-        except Trouble:
-            shown = False
-        if not shown:
-            cls.poll_message_set("There is no result yet: press Run first")
-        return shown
-
-    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
-        self.filepath = self.filepath or str(_picture(context))
-        context.window_manager.fileselect_add(self)
-        return {"RUNNING_MODAL"}
-
-    def act(self, context: bpy.types.Context) -> None:
-        path = Path(bpy.path.abspath(self.filepath)) if self.filepath else _picture(context)
-        made = view.render_picture(context.scene, study.parts(context), path.with_suffix(".png"))
-        self.report({"INFO"}, f"Picture saved as {made}")
-
-
-def _picture(context: bpy.types.Context) -> Path:
-    folder = study.folder(context.scene, study.parts(context))
-    return folder.with_name(f"{folder.name}.png")
-
-
-register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace, RenderPicture))
+register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace))

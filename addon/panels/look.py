@@ -1,4 +1,4 @@
-"""How the result is shown, and the picture of it."""
+"""How the result is shown, and the picture and report of it."""
 
 from __future__ import annotations
 
@@ -15,6 +15,7 @@ class LookPanel(OfResult, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         view.draw_settings(self.layout, context.scene)
         self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
+        self.layout.operator("fluxface.write_report", icon="DOCUMENTS")
 
 
 register, unregister = bpy.utils.register_classes_factory((LookPanel,))

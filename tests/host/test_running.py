@@ -346,9 +346,9 @@ def test_parts_that_run_through_each_other_are_told_with_the_place(scene, assemb
 
 @pytest.mark.slow
 def test_the_picture_is_rendered_beside_the_file(scene, tmp_path):
-    lamp(scene)
+    part = lamp(scene)
     assert not bpy.ops.fluxface.render_picture.poll()
     bpy.ops.wm.save_as_mainfile(filepath=str(tmp_path / "lamp.blend"))
     bpy.ops.fluxface.run()
     bpy.ops.fluxface.render_picture()
-    assert (tmp_path / "lamp.fluxface" / "lamp.png").read_bytes().startswith(b"\x89PNG")
+    assert (Path(part.fluxface.outcome.runs[0].folder) / "picture.png").read_bytes().startswith(b"\x89PNG")

@@ -1,0 +1,86 @@
+"""What leaves the file: the picture and the report."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import bpy
+from bpy.props import StringProperty
+
+from ...solver.errors import Trouble
+from .. import report, study, view
+from .telling import TellsTrouble
+
+PICTURE, REPORT = "picture.png", "report.html"
+
+
+class _Publishes(TellsTrouble):
+    """Asks where to, and proposes ``file_name`` in the folder of the run that is shown."""
+
+    file_name = ""
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        try:
+            shown = all(view.has_result(part) for part in study.parts(context))
+        except Trouble:
+            shown = False
+        if not shown:
+            cls.poll_message_set("There is no result yet: press Run first")
+        return shown
+
+    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
+        self.filepath = self.filepath or str(_beside_run(context) / self.file_name)
+        context.window_manager.fileselect_add(self)
+        return {"RUNNING_MODAL"}
+
+    def path(self, context: bpy.types.Context) -> Path:
+        given = Path(bpy.path.abspath(self.filepath)) if self.filepath else _beside_run(context) / self.file_name
+        return given.with_suffix(Path(self.file_name).suffix)
+
+
+def _beside_run(context: bpy.types.Context) -> Path:
+    """The folder of the run that is shown, or of its case where no run is kept."""
+    members = study.parts(context)
+    runs = study.outcome(context.scene, members).runs
+    return Path(runs[0].folder) if runs else study.folder(context.scene, members)
+
+
+class RenderPicture(_Publishes, bpy.types.Operator):
+    bl_idname = "fluxface.render_picture"
+    bl_label = "Render Picture"
+    bl_description = "Render the part in its temperatures with the legend, and save it as PNG"
+    file_name = PICTURE
+
+    filepath: StringProperty(name="Picture", subtype="FILE_PATH")
+    filter_glob: StringProperty(default="*.png", options={"HIDDEN"})
+
+    def act(self, context: bpy.types.Context) -> None:
+        made = view.render_picture(context.scene, study.parts(context), self.path(context))
+        self.report({"INFO"}, f"Picture saved as {made}")
+
+
+class WriteReport(_Publishes, bpy.types.Operator):
+    bl_idname = "fluxface.write_report"
+    bl_label = "Write Report"
+    bl_description = "One page on what was solved and what came of it: a single HTML file that prints to one A4"
+    file_name = REPORT
+
+    filepath: StringProperty(name="Report", subtype="FILE_PATH")
+    filter_glob: StringProperty(default="*.html", options={"HIDDEN"})
+
+    def act(self, context: bpy.types.Context) -> None:
+        members = study.parts(context)
+        runs = study.outcome(context.scene, members).runs
+        if not runs:
+            raise Trouble("case", "The run that is shown is not kept any more.", "Run again.")
+        picture = Path(runs[0].folder) / PICTURE
+        if not picture.is_file():
+            view.render_picture(context.scene, members, picture)
+        made = report.write_report(context.scene, Path(runs[0].folder), picture, runs[0].note, self.path(context))
+        self.report({"INFO"}, f"Report saved as {made}")
+        if not bpy.app.background:
+            bpy.ops.wm.url_open(url=made.as_uri())
+
+
+register, unregister = bpy.utils.register_classes_factory((RenderPicture, WriteReport))
