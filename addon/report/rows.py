@@ -15,7 +15,7 @@ from .. import words
 from ..units import area_text, difference_text, power_text, temperature_text
 
 # So many fit on the page together with the picture; of more, the ones that move the most heat are shown.
-MOST_TAGS, MOST_PARTS, MOST_CONTACTS, MOST_SENTENCES, MOST_WARNINGS = 9, 5, 4, 5, 4
+MOST_TAGS, MOST_PARTS, MOST_CONTACTS, MOST_SENTENCES, MOST_WARNINGS = 7, 4, 3, 4, 2
 
 
 def written(scene: bpy.types.Scene, case: Case, summary: Summary) -> dict[str, str]:
