@@ -35,3 +35,9 @@ def redraw() -> None:
         for area in window.screen.areas:
             if area.type == "VIEW_3D":
                 area.tag_redraw()
+
+
+def engine(name: str) -> str:
+    """What the host calls the renderer ``name``: CYCLES, EEVEE or WORKBENCH."""
+    names = {"CYCLES": "CYCLES", "EEVEE": "BLENDER_EEVEE_NEXT", "WORKBENCH": "BLENDER_WORKBENCH"}
+    return "BLENDER_EEVEE" if name == "EEVEE" and bpy.app.version >= (5, 0) else names[name]

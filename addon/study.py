@@ -60,9 +60,21 @@ def folder_of(owner: bpy.types.Object | bpy.types.Collection) -> Path:
     return file.with_name(f"{file.stem}.fluxface") / name
 
 
+def run_folder(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Path:
+    """The folder of the run that is shown, or of its case where no run is kept."""
+    runs = outcome(scene, members).runs
+    return Path(runs[0].folder) if runs else folder(scene, members)
+
+
 def summary(left: Outcome) -> Summary | None:
     """The summary of the last run that was solved."""
     return json.loads(left.summary) if left.summary else None
+
+
+def is_current(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> bool:
+    """Whether there is a result and nothing it depends on has changed since."""
+    left = outcome(scene, members)
+    return bool(left.summary) and left.inputs == inputs(scene, members)
 
 
 def inputs(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> str:

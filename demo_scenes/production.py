@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import importlib
-import os
 import sys
 import time
 from collections.abc import Iterator
@@ -15,6 +14,7 @@ import designer
 import table
 from fluxface import addon
 from fluxface.addon import study
+from fluxface.addon.unattended import hushed
 from fluxface.solver.case import CASE_FILE
 from fluxface.solver.result import SUMMARY_FILE
 
@@ -27,21 +27,6 @@ def timed(seconds: Seconds, what: str) -> Iterator[None]:
     start = time.perf_counter()
     yield
     seconds[what] = time.perf_counter() - start
-
-
-@contextmanager
-def hushed() -> Iterator[None]:
-    """Without the host's own lines on standard output, which it writes past Python."""
-    sys.stdout.flush()
-    kept = os.dup(1)
-    with open(os.devnull, "w") as nothing:
-        os.dup2(nothing.fileno(), 1)
-    try:
-        yield
-    finally:
-        sys.stdout.flush()
-        os.dup2(kept, 1)
-        os.close(kept)
 
 
 def produce(scene: str, out: Path) -> int:

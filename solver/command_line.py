@@ -12,6 +12,7 @@ from typing import Any
 from .case import read_case
 from .errors import Trouble
 from .packing import PLATFORMS, pack
+from .rendering import render
 from .result import Summary, write_result
 
 BAR_LENGTH = 30
@@ -20,8 +21,11 @@ ZERO_CELSIUS = 273.15
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """The exit code; on failure the last line of stderr is JSON, as the contract gives it."""
-    options = _parser().parse_args(arguments)
+    given = sys.argv[1:] if arguments is None else list(arguments)
     try:
+        if given[:1] == ["render"]:
+            return render(given[1:])
+        options = _parser().parse_args(given)
         options.run(options)
     except Trouble as trouble:
         return _failed(trouble)
@@ -47,6 +51,8 @@ def _parser() -> argparse.ArgumentParser:
     checking.add_argument("case", type=Path, metavar="CASE", help="the case folder")
     checking.add_argument("--json", action="store_true", help="tell the measures as JSON")
     checking.set_defaults(run=_check)
+    # Its options are the add-on's, which has its own reader of them.
+    commands.add_parser("render", help="solve a .blend file and render its result, in Blender", add_help=False)
     packing_up = commands.add_parser("pack", help="build the extension to install in the 3D suite")
     packing_up.add_argument("--platform", choices=(*PLATFORMS, "all"), default="all", help="default: all")
     packing_up.add_argument("--out", type=Path, default=Path("dist"), metavar="DIR", help="where to (default: dist)")

@@ -9,9 +9,8 @@ from bpy.props import StringProperty
 
 from ...solver.errors import Trouble
 from .. import report, study, view
+from ..report import PICTURE, REPORT
 from .telling import TellsTrouble
-
-PICTURE, REPORT = "picture.png", "report.html"
 
 
 class _Publishes(TellsTrouble):
@@ -30,20 +29,17 @@ class _Publishes(TellsTrouble):
         return shown
 
     def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
-        self.filepath = self.filepath or str(_beside_run(context) / self.file_name)
+        self.filepath = self.filepath or str(study.run_folder(context.scene, study.parts(context)) / self.file_name)
         context.window_manager.fileselect_add(self)
         return {"RUNNING_MODAL"}
 
     def path(self, context: bpy.types.Context) -> Path:
-        given = Path(bpy.path.abspath(self.filepath)) if self.filepath else _beside_run(context) / self.file_name
+        given = (
+            Path(bpy.path.abspath(self.filepath))
+            if self.filepath
+            else study.run_folder(context.scene, study.parts(context)) / self.file_name
+        )
         return given.with_suffix(Path(self.file_name).suffix)
-
-
-def _beside_run(context: bpy.types.Context) -> Path:
-    """The folder of the run that is shown, or of its case where no run is kept."""
-    members = study.parts(context)
-    runs = study.outcome(context.scene, members).runs
-    return Path(runs[0].folder) if runs else study.folder(context.scene, members)
 
 
 class RenderPicture(_Publishes, bpy.types.Operator):
@@ -70,14 +66,7 @@ class WriteReport(_Publishes, bpy.types.Operator):
     filter_glob: StringProperty(default="*.html", options={"HIDDEN"})
 
     def act(self, context: bpy.types.Context) -> None:
-        members = study.parts(context)
-        runs = study.outcome(context.scene, members).runs
-        if not runs:
-            raise Trouble("case", "The run that is shown is not kept any more.", "Run again.")
-        picture = Path(runs[0].folder) / PICTURE
-        if not picture.is_file():
-            view.render_picture(context.scene, members, picture)
-        made = report.write_report(context.scene, Path(runs[0].folder), picture, runs[0].note, self.path(context))
+        made = report.report_of(context.scene, study.parts(context), self.path(context))
         self.report({"INFO"}, f"Report saved as {made}")
         if not bpy.app.background:
             bpy.ops.wm.url_open(url=made.as_uri())

@@ -6,6 +6,7 @@ import bpy
 
 from .. import view
 from .result import OfResult
+from .sidebar import named
 
 
 class LookPanel(OfResult, bpy.types.Panel):
@@ -14,6 +15,7 @@ class LookPanel(OfResult, bpy.types.Panel):
 
     def draw(self, context: bpy.types.Context) -> None:
         view.draw_settings(self.layout, context.scene)
+        named(self.layout, "Render with").prop(view.settings_of(context.scene), "engine", text="")
         self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
         self.layout.operator("fluxface.write_report", icon="DOCUMENTS")
 

@@ -38,7 +38,7 @@ def standing(context: bpy.types.Context, left: Outcome) -> tuple[str, str]:
     """An icon and a few words for how the result shown relates to the present settings."""
     if not left.summary:
         return "BLANK1", "Not run yet"
-    if left.inputs == study.inputs(context.scene, study.parts(context)):
+    if study.is_current(context.scene, study.parts(context)):
         return "CHECKMARK", "The result is current"
     return "FILE_REFRESH", "Changed since the last run"
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import base64
+from collections.abc import Sequence
 from datetime import datetime
 from importlib.resources import files
 from pathlib import Path
@@ -13,7 +14,24 @@ import bpy
 from ...solver.case import read_case
 from ...solver.errors import Trouble
 from ...solver.result import read_summary
+from .. import study, view
 from . import rows
+
+PICTURE, REPORT = "picture.png", "report.html"
+
+
+def report_of(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], path: Path) -> Path:
+    """Write the page of the run that is shown to ``path``, its picture rendered when there is none yet.
+
+    Raises Trouble when the run is not kept, or what is made cannot be written.
+    """
+    runs = study.outcome(scene, members).runs
+    if not runs:
+        raise Trouble("case", "The run that is shown is not kept any more.", "Run again.")
+    run = Path(runs[0].folder)
+    if not (run / PICTURE).is_file():
+        view.render_picture(scene, members, run / PICTURE)
+    return write_report(scene, run, run / PICTURE, runs[0].note, path)
 
 
 def write_report(scene: bpy.types.Scene, run: Path, picture: Path, note: str, path: Path) -> Path:

@@ -13,7 +13,15 @@ from .result_object import build_results, part_of, remove_result, result_of
 from .settings import draw_settings, material_of, refresh, settings_of
 
 __all__ = [
-    "clear", "draw_settings", "has_result", "part_of", "picture_frame", "register", "render_picture", "show",
+    "clear",
+    "draw_settings",
+    "has_result",
+    "part_of",
+    "picture_frame",
+    "register",
+    "render_picture",
+    "settings_of",
+    "show",
     "unregister",
 ]  # fmt: skip
 

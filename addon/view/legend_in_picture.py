@@ -15,6 +15,8 @@ MARGIN, COLUMN = 5.0, 16.0
 BAR_WIDTH, BAR_BOTTOM, BAR_TOP = 2.6, 24.0, 24.0
 TITLE, VALUE, LABEL, SMALL = 4.0, 3.4, 2.0, 1.6
 TICK, LINE = 0.9, 0.16
+# Where vertices alone are coloured, what lies between two is a blend: of so many it cannot be told from the map.
+BAR_ROWS = 128
 
 # About the hottest place in view; nothing else is drawn inside it.
 RING, RING_LINE = 1.3, 0.28
@@ -81,11 +83,14 @@ def _draw_bar(
     middle, point = (left + right) / 2, 0.7 * (right - left)
     below, above = (point * is_open for is_open in legend.ends_open)
     low, high = legend.scale.low, legend.scale.high
-    corners = [(left, bottom, 0), (right, bottom, 0), (left, top, 0), (right, top, 0)]
-    places = np.array([(middle, bottom - below, 0), *corners, (middle, top + above, 0)])
-    triangles = np.array([[0, 2, 1], [1, 2, 4], [1, 4, 3], [3, 4, 5]])
-    mesh = studio.draw(places, triangles, studio.pane, coloured)
-    write_kelvin(mesh, SHOWN, np.array((low, low, low, high, high, high)))
+    share = np.linspace(0.0, 1.0, BAR_ROWS)
+    rows = np.stack([np.tile((left, right), BAR_ROWS), np.repeat(bottom + share * (top - bottom), 2)], axis=1)
+    places = np.pad(np.concatenate([[(middle, bottom - below)], rows, [(middle, top + above)]]), ((0, 0), (0, 1)))
+    starts = 1 + 2 * np.arange(BAR_ROWS - 1)[:, None, None]
+    quads = (starts + np.array([[0, 1, 3], [0, 3, 2]])).reshape(-1, 3)
+    last = len(places) - 1
+    mesh = studio.draw(places, np.concatenate([quads, [[0, 2, 1], [last - 2, last - 1, last]]]), studio.pane, coloured)
+    write_kelvin(mesh, SHOWN, np.concatenate([[low], np.repeat(low + share * (high - low), 2), [high]]))
 
 
 def draw_ring(studio: Studio, pixel: np.ndarray, ink: Colour) -> None:

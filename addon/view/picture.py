@@ -22,8 +22,8 @@ from .legend import Legend
 from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
 from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
-from .result_object import result_of, settle, write_kelvin
-from .settings import material_of, refresh, scale_of
+from .result_object import read_kelvin, result_of, settle, write_kelvin
+from .settings import material_of, refresh, scale_of, settings_of
 from .skin import Skin, hottest_in_view, skin_of
 from .studio import Studio, opened
 
@@ -50,14 +50,15 @@ def render_picture(
     parts: Sequence[bpy.types.Object],
     path: Path,
     *,
-    engine: str = "CYCLES",
+    engine: str | None = None,
     size: tuple[int, int] = (1600, 1000),
 ) -> Path:
     """Render the results of ``parts`` with their legend as a PNG of ``size`` pixels at ``path``, and return the path.
 
+    engine: CYCLES, EEVEE or WORKBENCH; None = as the scene's settings have it.
     The view is that of the scene's camera, or three-quarter where there is none, moved so that the parts fill it. The
-    picture is taken in a scene of its own, and nothing of the designer's is touched. Any engine of the host gives the
-    same colours; the shadow is there with Cycles, which needs no window and no graphics library.
+    picture is taken in a scene of its own, and nothing of the designer's is touched. Every engine of the host gives the
+    same colours. Cycles needs no window and no graphics library; Workbench is the quickest, and leaves out the shadow.
     Raises Trouble when there is no result to show or the picture cannot be rendered or written.
     """
     frame = picture_frame(scene, parts, size)
@@ -67,10 +68,14 @@ def render_picture(
     marked = hottest_in_view(skin, frame)
     in_view, ringed = (None, None) if marked is None else (skin.temperature[marked], frame.pixels(skin.places[marked]))
     legend = Legend(scale, scale.ticks(), skin.temperature.min(), skin.temperature.max(), in_view)
-    with tempfile.TemporaryDirectory() as folder, opened(frame, engine, BACKDROP) as studio:
+    with (
+        tempfile.TemporaryDirectory() as folder,
+        opened(frame, engine or settings_of(scene).engine, BACKDROP) as studio,
+    ):
+        studio.colours[coloured.name] = lambda mesh: scale.colours(read_kelvin(mesh, SHOWN))
         for result in results:
             studio.place(result.data, studio.scaled @ result.matrix_world, coloured)
-        if frame.axes[2, 2] > LOWEST:
+        if frame.axes[2, 2] > LOWEST and not studio.sees_vertices_alone:
             studio.cast_shadow(skin.places[:, 2].min(), BACKDROP, Path(folder))
         _draw_lines(studio, skin, legend, ringed)
         write_legend(studio, ", ".join(part.name for part in parts), legend, coloured, INK)
@@ -103,7 +108,9 @@ def _draw_lines(studio: Studio, skin: Skin, legend: Legend, ringed: np.ndarray |
     curves, at = isotherms(skin.places, skin.triangles, skin.temperature, levels)
     # Inked over the colours in a darker or lighter shade of them, so that lines are seen on all of them.
     shades = studio.new_material()
-    paint(shades, replace(legend.scale, colour_map=inked(legend.scale.colour_map)))
+    inked_scale = replace(legend.scale, colour_map=inked(legend.scale.colour_map))
+    paint(shades, inked_scale)
+    studio.colours[shades.name] = lambda mesh: inked_scale.colours(read_kelvin(mesh, SHOWN))
     step = min(studio.frame.size) / 100.0
     for segments, temperature, width, material in (
         (skin.places[outlines], skin.temperature[outlines], OUTLINE, studio.ink(INK)),

@@ -135,8 +135,13 @@ def _drop(mesh: bpy.types.Mesh) -> None:
 
 def temperatures(result: bpy.types.Object) -> np.ndarray:
     """(P,) kelvin at the vertices of a result object."""
-    values = np.empty(len(result.data.vertices), dtype=np.float32)
-    result.data.attributes[TEMPERATURE].data.foreach_get("value", values)
+    return read_kelvin(result.data, TEMPERATURE)
+
+
+def read_kelvin(mesh: bpy.types.Mesh, name: str) -> np.ndarray:
+    """(P,) kelvin at the vertices, from the attribute ``name``."""
+    values = np.empty(len(mesh.vertices), dtype=np.float32)
+    mesh.attributes[name].data.foreach_get("value", values)
     return values
 
 
@@ -155,10 +160,14 @@ def places_and_triangles(result: bpy.types.Object) -> tuple[np.ndarray, np.ndarr
 
 def colour(result: bpy.types.Object, scale: Scale) -> None:
     """Give the vertices the scale's colours, which is what Solid shading shows."""
-    mesh = result.data
+    write_colours(result.data, scale.colours(temperatures(result)))
+    result.data.update()
+
+
+def write_colours(mesh: bpy.types.Mesh, linear: np.ndarray) -> None:
+    """Give the vertices colours (P, 3) in linear light, and have them shown where vertices' colours are."""
     attribute = mesh.color_attributes.get(COLOUR) or mesh.color_attributes.new(COLOUR, "FLOAT_COLOR", "POINT")
     colours = np.ones((len(mesh.vertices), 4), dtype=np.float32)
-    colours[:, :3] = scale.colours(temperatures(result))
+    colours[:, :3] = linear
     attribute.data.foreach_set("color", colours.ravel())
     mesh.color_attributes.active_color = attribute
-    mesh.update()

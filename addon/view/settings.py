@@ -77,6 +77,16 @@ class ViewSettings(bpy.types.PropertyGroup):
     legend: BoolProperty(
         name="Legend", description="Draw the legend in the 3D view", default=True, update=lambda _self, _c: redraw()
     )
+    engine: EnumProperty(
+        name="Render with",
+        description="What renders pictures; their colours are the same with each",
+        items=(
+            ("CYCLES", "Cycles", "With a soft shadow; needs no graphics card"),
+            ("EEVEE", "Eevee", "With a soft shadow; quick where there is a graphics card"),
+            ("WORKBENCH", "Workbench", "The quickest; without a shadow"),
+        ),
+        default="CYCLES",
+    )
     coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
     hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")
     material: PointerProperty(type=bpy.types.Material, options={"HIDDEN"})

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -12,9 +12,10 @@ import numpy as np
 from mathutils import Matrix
 
 from ...solver.errors import Trouble
+from .. import host
 from .framing import Frame
 from .material import Colour, light_evenly, paint_matt, paint_plain, show_image
-from .result_object import mesh_of
+from .result_object import mesh_of, write_colours
 
 # Enough for smooth edges of lines and letters; within plain surfaces, which need few, sampling stops by itself.
 SAMPLES, LEAST_SAMPLES, NOISE = 32, 6, 0.01
@@ -28,17 +29,23 @@ PANE = 0.1
 GROUND = 8.0
 
 
+# (P, 3) linear light at the vertices of a mesh.
+VertexColours = Callable[[bpy.types.Mesh], np.ndarray]
+
+
 @dataclass
 class Studio:
     """scene: where the picture is taken. scaled: world to studio, so that parts of every size are lit and cut alike.
 
-    made: what has been made for it and goes when it is closed.
+    made: what has been made for it and goes when it is closed. colours: what the vertices of a mesh look like in a
+    material, by its name, for engines that look at vertices alone.
     """
 
     scene: bpy.types.Scene
     frame: Frame
     scaled: Matrix
     made: list[bpy.types.ID] = field(default_factory=list)
+    colours: dict[str, VertexColours] = field(default_factory=dict)
 
     @property
     def pane(self) -> Matrix:
@@ -55,6 +62,7 @@ class Studio:
     def ink(self, colour: Colour) -> bpy.types.Material:
         material = self.new_material()
         paint_plain(material, colour)
+        self.colours[material.name] = lambda mesh: np.tile(colour, (len(mesh.vertices), 1))
         return material
 
     def place(self, data: bpy.types.ID, matrix: Matrix, material: bpy.types.Material) -> bpy.types.Object:
@@ -95,13 +103,14 @@ class Studio:
         standing = list(self.scene.objects)
         ground = self._lay_ground(height, colour)
         render, cycles = self.scene.render, self.scene.cycles
+        engine, render.engine = render.engine, host.engine("CYCLES")
         for object_ in standing:
             object_.visible_camera = False
         cycles.samples, render.resolution_percentage = SHADOW_SAMPLES, SHADOW_PERCENTAGE
         render.image_settings.file_format = "OPEN_EXR"
         self.render(folder / "shadow.exr")
         render.image_settings.file_format = "PNG"
-        cycles.samples, render.resolution_percentage = SAMPLES, 100
+        cycles.samples, render.resolution_percentage, render.engine = SAMPLES, 100, engine
         for object_ in standing:
             object_.visible_camera = True
         ground.hide_render = True
@@ -117,8 +126,31 @@ class Studio:
         mesh = self.keep(mesh_of("studio", places, np.array([[0, 1, 2], [0, 2, 3]])))
         return self.place(mesh, self.scaled, matt)
 
+    @property
+    def sees_vertices_alone(self) -> bool:
+        """Whether the engine knows no shaders and shows the colours of vertices."""
+        return self.scene.render.engine == host.engine("WORKBENCH")
+
+    def colour_vertices(self) -> None:
+        """Give all that stands here the colours of its materials, vertex by vertex."""
+        for object_ in list(self.scene.objects):
+            if object_.type == "FONT":
+                mesh = self.keep(bpy.data.meshes.new_from_object(object_.evaluated_get(self._depsgraph())))
+                self.place(mesh, object_.matrix_world, object_.material_slots[0].material)
+                self.scene.collection.objects.unlink(object_)
+        for object_ in self.scene.objects:
+            if object_.type == "MESH" and object_.data.color_attributes.active_color is None:
+                write_colours(object_.data, self.colours[object_.material_slots[0].material.name](object_.data))
+
+    def _depsgraph(self) -> bpy.types.Depsgraph:
+        layer = self.scene.view_layers[0]
+        layer.update()
+        return layer.depsgraph
+
     def render(self, path: Path) -> None:
         """Render to ``path``. Raises Trouble when that does not come to its end."""
+        if self.sees_vertices_alone:
+            self.colour_vertices()
         self.scene.render.filepath = str(path)
         try:
             bpy.ops.render.render(write_still=True, scene=self.scene.name)
@@ -187,9 +219,10 @@ def _set_up(studio: Studio, engine: str, backdrop: Colour) -> None:
 
     scene.world = studio.keep(bpy.data.worlds.new("studio"))
     light_evenly(scene.world, backdrop)
+    scene.world.color = backdrop
 
     render = scene.render
-    render.engine = engine
+    render.engine = host.engine(engine)
     render.resolution_x, render.resolution_y, render.resolution_percentage = width, height, 100
     render.use_compositing = render.use_sequencer = False
     render.use_file_extension = False
@@ -201,6 +234,9 @@ def _set_up(studio: Studio, engine: str, backdrop: Colour) -> None:
     scene.display_settings.display_device = "sRGB"
     scene.view_settings.view_transform, scene.view_settings.look = "Standard", "None"
     scene.view_settings.exposure, scene.view_settings.gamma = 0.0, 1.0
+
+    scene.display.render_aa = "16"
+    scene.display.shading.light, scene.display.shading.color_type = "FLAT", "VERTEX"
 
     cycles = scene.cycles
     cycles.device, cycles.use_denoising = "CPU", False

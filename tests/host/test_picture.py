@@ -109,6 +109,20 @@ def test_surfaces_everywhere_are_read_back(scene, tmp_path: Path) -> None:
     assert np.quantile(wrong[plain], 0.99) < 0.01
 
 
+@pytest.mark.slow
+@pytest.mark.parametrize("engine", ["WORKBENCH", "EEVEE"])
+def test_other_engines_show_the_same_colours(scene, tmp_path: Path, engine: str) -> None:
+    """The hottest point is read back, and pixel by pixel the parts and the bar are as with Cycles."""
+    part = shown_part(tmp_path, warmest_at(0.12, 0.04, 0.024))
+    shown = pixels_of(view.render_picture(scene, [part], tmp_path / "picture.png", engine=engine, size=SIZE))
+    usual = pixels_of(view.render_picture(scene, [part], tmp_path / "usual.png", size=SIZE))
+    scale = scale_of(scene)
+    x, y = view.picture_frame(scene, [part], SIZE).pixels(np.array((0.12, 0.04, 0.024))).astype(int)
+    assert read_through_legend(shown, shown[None, y, x], scale.low, scale.high)[0] == pytest.approx(350.0, abs=1.0)
+    coloured = fractions_of(scale.colour_map, usual.reshape(-1, 3))[1].reshape(SIZE[::-1]) < 0.02
+    assert np.quantile(np.abs(shown - usual)[coloured].max(axis=1), 0.9) < 0.03
+
+
 def test_a_locked_range_is_read_back_too(scene, tmp_path: Path) -> None:
     part = shown_part(tmp_path, warmest_at(0.12, 0.04, 0.024))
     settings = settings_of(scene)
