@@ -47,7 +47,7 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
     return Case(
         surface=_joined(skins, [tag.uid for tag in used]),
         parts=tuple(_part(part) for part in parts),
-        tags=tuple(_tag(tag, tag.name, metres) for tag in used),
+        tags=tuple(_sized_tag(tag, metres) for tag in used),
         untagged=untagged,
         contacts=tuple(_contact(contact, names, metres) for contact in contacts),
         gravity=_gravity(settings),
@@ -122,6 +122,10 @@ def _part(part: bpy.types.Object) -> Part:
         heat=as_typed(settings.heat) if total else 0.0,
         heat_density=0.0 if total else as_typed(settings.heat_density),
     )
+
+
+def _sized_tag(tag: TagDefinition, metres: float) -> Tag:
+    return replace(_tag(tag, tag.name, metres), size=as_typed(tag.size) * metres or None)
 
 
 def _tag(terms: Terms, name: str, metres: float) -> Tag:

@@ -116,6 +116,10 @@ class TagDefinition(Terms, bpy.types.PropertyGroup):
     colour: FloatVectorProperty(
         name="Colour", description="Colour that marks the tag's faces", subtype="COLOR_GAMMA", min=0.0, max=1.0
     )
+    size: FloatProperty(
+        name="Mesh size here", description="Mean edge length of the mesh on the tag's faces; 0 = as the part",
+        min=0.0, unit="LENGTH", precision=4,
+    )  # fmt: skip
 
 
 class UntaggedTerms(Terms, bpy.types.PropertyGroup):

@@ -92,7 +92,8 @@ class Radiation:
 class Tag:
     """A named set of faces and the terms they carry; terms add up, a held temperature (K) excludes the others.
 
-    heat: W over the tag's true area. heat_flux: W/m2. Both are positive into the part.
+    heat: W over the tag's true area. heat_flux: W/m2. Both are positive into the part. size: mean edge length (m) that
+    its faces shall have where that is finer than the part's.
     """
 
     name: str
@@ -101,6 +102,7 @@ class Tag:
     convection: Convection | None = None
     radiation: Radiation | None = None
     temperature: float | None = None
+    size: float | None = None
 
 
 UNTAGGED = Tag("untagged")
@@ -202,7 +204,7 @@ def _read_part(entry: Entry) -> Part:
 
 
 TERM_KEYS = ("heat", "heat_flux", "convection", "radiation", "temperature")
-TAG_KEYS = ("name", *TERM_KEYS)
+TAG_KEYS = ("name", "size", *TERM_KEYS)
 
 
 def _read_tag(entry: Entry, name: str) -> Tag:
@@ -221,6 +223,7 @@ def _read_tag(entry: Entry, name: str) -> Tag:
         convection=_read_convection(entry["convection"]) if "convection" in entry else None,
         radiation=_read_radiation(entry["radiation"]) if "radiation" in entry else None,
         temperature=_kelvin(entry["temperature"]) if "temperature" in entry else None,
+        size=entry["size"].number("m", above=0) if "size" in entry else None,
     )
 
 
@@ -401,7 +404,7 @@ def _terms_as_json(tag: Tag) -> dict[str, Any]:
     terms: dict[str, Any] = {"heat": tag.heat or None, "heat_flux": tag.heat_flux or None}
     terms["convection"] = _given(tag.convection) if tag.convection else None
     terms["radiation"] = _given(tag.radiation) if tag.radiation else None
-    terms["temperature"] = tag.temperature
+    terms["temperature"], terms["size"] = tag.temperature, tag.size
     return {key: value for key, value in terms.items() if value is not None}
 
 

@@ -17,6 +17,7 @@ from .geometry.carrying import tag_areas
 from .geometry.inspection import Finding, bounds_solid, inspected
 from .geometry.mending import Mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
+from .geometry.sizing import sizes_at
 from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, weld
 from .geometry.tetrahedra import fill
 from .physics import steady
@@ -215,7 +216,8 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
     def filled(surface: Surface, index: int) -> Mesh:
         name = case.parts[index].name
         progress("mesh", index / len(case.parts), f"filling '{name}'")
-        return fill(surface, name, index, case.accuracy)
+        finest = sizes_at(surface, case.tags, case.untagged, case.accuracy.size is None)
+        return fill(surface, name, index, case.accuracy, finest)
 
     bodies, meshes = check(case, filled), []
     for index, body in enumerate(bodies):

@@ -72,6 +72,23 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         draw_terms(context, layout, tag)
 
 
+class TagMeshPanel(Sidebar, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_tag_mesh"
+    bl_parent_id = "FLUXFACE_PT_tags"
+    bl_label = "Mesh of the Tag"
+    bl_options = {"DEFAULT_CLOSED"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        return tags.active(context.scene) is not None
+
+    def draw(self, context: bpy.types.Context) -> None:
+        tag, column = tags.active(context.scene), fields(self.layout)
+        column.prop(tag, "size")
+        if tag.size == 0.0:
+            column.label(text="Mesh size 0: as the part")
+
+
 class UntaggedPanel(Sidebar, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_untagged"
     bl_parent_id = "FLUXFACE_PT_tags"
@@ -154,4 +171,4 @@ class FinishesMenu(bpy.types.Menu):
             self.layout.operator("fluxface.emissivity_use", text=text).emissivity = emissivity
 
 
-register, unregister = bpy.utils.register_classes_factory((TagList, FinishesMenu, TagsPanel, UntaggedPanel))
+register, unregister = bpy.utils.register_classes_factory((TagList, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel))

@@ -15,15 +15,21 @@ from ..fem.mesh import CELL_FACES, Mesh, face_keys
 from .apart import Apart, run_apart
 from .boxes import boxes, boxes_of, meeting
 from .edges import edges_of, groups, neighbours
+from .sizing import (
+    COMPACT_CELLS,
+    FLAT_CELLS,
+    LARGEST_CELL,
+    LONGEST_EDGE,
+    MEAN_CELL,
+    POINTS_OF_WALLS,
+    REGULAR,
+    points_of_walls,
+    size_by_default,
+)
+from .splitting import split_to_size
 from .surface import area_vectors, areas, centred, distances, enclosed_volume, triangle_corners, winding_numbers
 
-REGULAR = 1.0 / (6.0 * np.sqrt(2.0))  # volume of the regular tetrahedron of unit edge
-# Measured on boxes of 1e3 to 4e5 tetrahedra: with the largest volume at 1.5 regular tetrahedra of the wanted edge,
-# the mean edge comes out within 2 % of it (4 % on coarse ones) and the mean volume at 0.76.
-LARGEST_CELL = 1.5
-MEAN_CELL = 0.76
-CELLS_BY_DEFAULT = 20_000
-# Thin walls under long facets ask for ever more points; when the size is ours to choose, this many are enough.
+# Narrow facets ask for ever more points; when the size is ours to choose, this many are enough.
 ADDED_POINTS_BY_DEFAULT = 40_000
 # Quadratic nodes per corner node: one for each edge more, of which a large mesh has about seven a corner.
 NODES_PER_CORNER = {1: 1.0, 2: 7.5}
@@ -34,11 +40,6 @@ REACH = 1e-6  # of the unit diagonal: how far a boundary triangle's middle may l
 SECONDS, SECONDS_BY_DEFAULT = 900, 120
 # Axes that no modelled edge follows.
 ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
-
-
-def size_by_default(volume: float) -> float:
-    """Mean edge (m) at which a compact body of ``volume`` (m3) takes CELLS_BY_DEFAULT tetrahedra."""
-    return float(np.cbrt(volume / (CELLS_BY_DEFAULT * MEAN_CELL * REGULAR)))
 
 
 @dataclass(frozen=True)
@@ -53,9 +54,10 @@ class Attempt:
 ATTEMPTS = (Attempt(), Attempt(turned=True), Attempt("T1e-12"))
 
 
-def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
+def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.ndarray | None = None) -> Mesh:
     """4-node tetrahedra within the closed surface of one part.
 
+    finest: (F,) m, the longest edge each triangle shall have; infinite, or None for all, where the part's size will do.
     Raises Trouble of kind "geometry" when the surface cannot be filled, "limits" when it would take too many nodes.
     """
     unit, centre, scale = centred(surface)
@@ -63,9 +65,15 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy) -> Mesh:
     volume = enclosed_volume(corners)
     size = accuracy.size / scale if accuracy.size else size_by_default(volume)
     _check_count(volume, size, name, accuracy)
+    flat = points_of_walls(corners, size) > POINTS_OF_WALLS
+    longest = np.full(len(corners), np.inf) if finest is None else finest / scale
+    if flat and accuracy.size:
+        longest = np.minimum(longest, LONGEST_EDGE * size)
+    unit = _split(unit, longest, name, accuracy)
+    corners = triangle_corners(unit)
     patches = _flat_patches(unit)
     markers = patches + 1
-    found = _tetrahedralise(unit, markers, size, name, accuracy)
+    found = _tetrahedralise(unit, markers, size, FLAT_CELLS if flat else COMPACT_CELLS, name, accuracy)
     cells = _within(found["points"], found["cells"], found["regions"], corners)
     boundary = outer_faces(cells)
     marker = _markers_of(boundary, found["faces"], found["markers"], len(found["points"]))
@@ -100,6 +108,15 @@ def _flat_patches(surface: Surface) -> np.ndarray:
     return groups(one[flat], other[flat], len(normal))
 
 
+def _split(unit: Surface, longest: np.ndarray, name: str, accuracy: Accuracy) -> Surface:
+    per_triangle = 0.5 * NODES_PER_CORNER[accuracy.order]  # a closed surface has half as many vertices
+    # No triangle whose edges are that long is larger than the equilateral one.
+    fewest = len(longest) + float((areas(triangle_corners(unit)) / (np.sqrt(0.1875) * longest**2)).sum())
+    if fewest * per_triangle > accuracy.max_nodes:
+        raise _too_many(name, fewest * per_triangle, accuracy)
+    return split_to_size(unit, longest)
+
+
 def _check_count(volume: float, size: float, name: str, accuracy: Accuracy) -> None:
     expected = volume / (MEAN_CELL * REGULAR * size**3) / 5.5 * NODES_PER_CORNER[accuracy.order]
     if expected > accuracy.max_nodes:
@@ -115,14 +132,14 @@ def _too_many(name: str, nodes: float, accuracy: Accuracy) -> Trouble:
 
 
 def _tetrahedralise(
-    unit: Surface, markers: np.ndarray, size: float, name: str, accuracy: Accuracy
+    unit: Surface, markers: np.ndarray, size: float, shape: str, name: str, accuracy: Accuracy
 ) -> dict[str, np.ndarray]:
     """TetGen's points, cells, regions, faces and markers for the surface of unit diagonal."""
     most = int(accuracy.max_nodes / NODES_PER_CORNER[accuracy.order])
     added = most if accuracy.size else min(most, ADDED_POINTS_BY_DEFAULT)
     # s0: no smoothing pass, which takes most of the time; the bound of 10 degrees removes the slivers it would.
     # A: number the regions, so that cavities can be told from solid.
-    switches = f"pq1.414/10a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{added}Q"
+    switches = f"pq{shape}a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{added}Q"
     seconds = SECONDS if accuracy.size else SECONDS_BY_DEFAULT
     refusals = []
     for attempt in ATTEMPTS:

@@ -25,6 +25,7 @@ PANELS = (
     part.MaterialDetailsPanel,
     part.VolumeHeatPanel,
     tags.TagsPanel,
+    tags.TagMeshPanel,
     tags.UntaggedPanel,
     contacts.ContactsPanel,
     run.RunPanel,

@@ -47,9 +47,11 @@ def test_unit_scale_counts(scene):
     part = lamp(scene)
     part.scale = (1000.0, 1000.0, 1000.0)
     scene.unit_settings.scale_length = 0.001
+    scene.fluxface.tags[0].size = 0.005
     case = case_of(scene, part)
     assert volume(case) == pytest.approx(VOLUME, rel=1e-5)
     assert case.accuracy.size == pytest.approx(0.02 * 0.001)
+    assert [tag.size for tag in case.tags][:2] == [pytest.approx(0.005 * 0.001), None]
 
 
 def test_modifiers_are_applied(scene):

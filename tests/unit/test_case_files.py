@@ -43,7 +43,7 @@ def full_case() -> Case:
         Part("chip", Material("invented fibre", (1.0, Table((1.0, 2.0), (3.0, 4.0)), 5.0), AXES), heat_density=2.5e4),
     )
     tags = (
-        Tag("pad", heat=12.0, heat_flux=-3.25),
+        Tag("pad", heat=12.0, heat_flux=-3.25, size=0.0005),
         Tag("fins", convection=Convection(298.15, 8.0), radiation=Radiation(0.85, 290.0)),
         Tag("cold end", temperature=293.15),
         Tag(
@@ -229,6 +229,7 @@ WRONG: list[tuple[str, Any]] = [
     ("tags[0].heat_flux", float("inf")),
     ("tags[2].temperature", -1.0),
     ("tags[2].temperature", "cold"),
+    ("tags[1].size", 0.0),
     ("tags[1].convection", 8.0),
     ("tags[1].convection.ambient", GONE),
     ("tags[1].convection.ambient", -0.01),

@@ -15,15 +15,19 @@ from pathlib import Path
 import numpy as np
 import pytest
 from cases import mesh_of
-from fluxface.solver.case import Accuracy, Surface
+from fluxface.solver.case import Accuracy, Surface, Tag
 from fluxface.solver.errors import Trouble
 from fluxface.solver.fem.mesh import CELL_EDGES, Mesh
 from fluxface.solver.fem.volume import geometry
+from fluxface.solver.geometry.edges import edges_of
+from fluxface.solver.geometry.sizing import sizes_at
+from fluxface.solver.geometry.splitting import split_to_size
 from fluxface.solver.geometry.surface import area_vectors, areas, enclosed_volume, triangle_corners, weld
 from fluxface.solver.geometry.tetrahedra import fill
 from shapes import (
     blocks,
     box,
+    facing,
     hollow_sphere,
     inside_out,
     irregular_solid,
@@ -31,6 +35,7 @@ from shapes import (
     moved,
     rotation,
     sphere,
+    tagged,
     tube,
 )
 
@@ -160,6 +165,92 @@ def mean_edge(mesh: Mesh) -> float:
 )
 def test_size_asked_for_is_the_mean_edge(surface: Surface, size: float) -> None:
     assert mean_edge(mesh_of(surface, 1, size)) == pytest.approx(size, rel=0.1)
+
+
+# Sizes that differ from place to place --------------------------------------------------------------------------------
+
+PATCH = box((0.05, 0.05, 0.015), (5, 5, 1))
+
+
+def patched() -> Surface:
+    """A block with tag 0 on 1 cm2 in the middle of its top."""
+    return tagged(
+        PATCH, 0, lambda centres, normals: (np.abs(centres - 0.025)[:, :2] < 0.005).all(1) & (normals[:, 2] > 0)
+    )
+
+
+def edges_on(mesh: Mesh, tag: int) -> np.ndarray:
+    """m, the length of each edge of the boundary's triangles of a tag."""
+    corners = mesh.nodes[mesh.boundary[mesh.boundary_tag == tag]]
+    return np.linalg.norm(np.roll(corners, -1, axis=1) - corners, axis=2)
+
+
+def halved_to(size: float, lengths: np.ndarray) -> bool:
+    """Whether the mean edge is a size as nearly as halving can: a factor of the square root of 2 from end to end."""
+    return 2**-0.5 < float(lengths.mean() / size) < 2**0.5 and bool(lengths.max() < 1.5 * size)
+
+
+def sized(tag: Tag, size: float | None = None) -> tuple[Mesh, Mesh]:
+    """The patched block as it comes without the tag's doing, and with it."""
+    surface, accuracy = weld(patched()), Accuracy(1, size)
+    finest = sizes_at(surface, [tag], Tag("untagged"), size is None)
+    return fill(surface, "part", 0, accuracy), fill(surface, "part", 0, accuracy, finest)
+
+
+@pytest.mark.parametrize("size", [None, 0.005])
+def test_size_on_a_tag_is_the_mean_edge_there_and_costs_little_elsewhere(size: float | None) -> None:
+    plain, fine = sized(Tag("patch", size=0.0005), size)
+    assert halved_to(0.0005, edges_on(fine, 0))
+    assert edges_on(fine, -1).mean() > 2 * edges_on(fine, 0).mean()
+    assert geometry(fine).volume.sum() == pytest.approx(0.05 * 0.05 * 0.015, rel=1e-12)
+    # As fine throughout, the block would take 17 million cells.
+    assert len(fine.cells) < len(plain.cells) + 40_000
+
+
+def test_a_patch_that_brings_heat_in_is_refined_unless_a_size_is_given() -> None:
+    plain, fine = sized(Tag("patch", heat=1.0))
+    assert edges_on(fine, 0).max() <= 0.001 * 1.0001 < edges_on(plain, 0).max()
+    assert len(fine.cells) < 1.5 * len(plain.cells)
+    plain, fine = sized(Tag("patch", heat=1.0), 0.004)
+    np.testing.assert_array_equal(plain.cells, fine.cells)
+
+
+@pytest.mark.parametrize("thickness", [0.001, 0.0003, 0.0001])
+def test_a_thin_plate_takes_as_many_nodes_as_a_block(thickness: float) -> None:
+    assert len(mesh_of(box((0.2, 0.2, thickness)), 2).nodes) < 60_000
+
+
+def test_size_asked_for_holds_along_a_thin_plate() -> None:
+    plate = tagged(box((0.1, 0.1, 0.0003)), 0, facing("+z"))
+    assert halved_to(0.004, edges_on(mesh_of(plate, 1, 0.004), 0))
+
+
+def test_a_tag_too_fine_for_the_bound_on_nodes_is_refused() -> None:
+    with pytest.raises(Trouble) as caught:
+        sized(Tag("patch", size=1e-12))
+    assert caught.value.kind == "limits"
+
+
+@pytest.mark.parametrize("name", ["irregular", "hollow ball", "edge to edge", "thin plate"])
+def test_splitting_keeps_the_shape_and_the_angles(name: str) -> None:
+    surface = weld(with_tags(SHAPES[name]))
+    longest = np.where(surface.tag == 0, 0.1 * np.ptp(surface.vertices), np.inf)
+    split = split_to_size(surface, longest)
+    corners = triangle_corners(split)
+    sides = np.linalg.norm(np.roll(corners, -1, axis=1) - corners, axis=2)
+    assert len(split.triangles) > len(surface.triangles)
+    assert sides[split.tag == 0].max() <= longest.min() * 1.0001
+    assert edges_of(split.triangles).closed
+    np.testing.assert_allclose(
+        np.bincount(split.face, areas(corners)), np.bincount(surface.face, areas(triangle_corners(surface))), rtol=1e-12
+    )
+    assert smallest_angle(split) >= 0.5 * smallest_angle(surface) * 0.9999
+
+
+def smallest_angle(surface: Surface) -> float:
+    corners = triangle_corners(surface)
+    one, other = np.roll(corners, -1, axis=1) - corners, np.roll(corners, 1, axis=1) - corners
+    return float(np.arctan2(np.linalg.norm(np.cross(one, other), axis=2), (one * other).sum(axis=2)).min())
 
 
 def test_same_mesh_wherever_it_is_run_from_and_nothing_left_there(
