@@ -7,14 +7,13 @@ SI units and kelvin throughout; heat into a part is positive.
 from __future__ import annotations
 
 import json
-import zipfile
-from collections.abc import Iterable
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 
+from .archives import read_arrays, shaped
 from .entries import Entry
 from .errors import Trouble
 from .materials import Material, material_as_json, read_material
@@ -22,6 +21,9 @@ from .materials import Material, material_as_json, read_material
 FORMAT = "fluxface.case/1"
 CASE_FILE = "case.json"
 SURFACE_FILE = "surface.npz"
+MOST_TEXT = 16 << 20  # bytes of case.json: some 100,000 tags, and a few hundred MB once read
+MOST_NODES = 1_000_000_000  # nodes are numbered by 32 bits
+FARTHEST = 1e6  # m from the origin, where a double still tells tenths of a nanometre
 
 CORRELATIONS = (
     "natural",
@@ -175,6 +177,8 @@ def read_case(folder: Path) -> Case:
 
 def _read_json(path: Path) -> Any:
     try:
+        if path.stat().st_size > MOST_TEXT:
+            raise Trouble("case", f"{path.name} is larger than {MOST_TEXT >> 20} MB.", "Write the case again.")
         return json.loads(path.read_text("utf-8"))
     except OSError as error:
         raise Trouble("case", f"{path.name} cannot be read: {error.strerror}.", f"Put {path.name} there.") from error
@@ -193,7 +197,12 @@ def _unique(named: tuple[Any, ...], path: str) -> tuple[Any, ...]:
 
 def _read_part(entry: Entry) -> Part:
     entry.with_keys("name", "material", "heat", "heat_density")
-    if "heat" in entry and "heat_density" in entry and entry["heat"].number() and entry["heat_density"].number():
+    if (
+        "heat" in entry
+        and "heat_density" in entry
+        and entry["heat"].number("W")
+        and entry["heat_density"].number("W/m3")
+    ):
         raise entry.trouble("has both heat and heat_density", "Give one of the two.")
     return Part(
         name=entry["name"].text(),
@@ -244,7 +253,8 @@ def _read_convection(entry: Entry) -> Convection:
         raise entry.trouble("has both a coefficient and a correlation", "Give one of the two.")
     if name not in CORRELATIONS:
         raise entry["correlation"].trouble(f"is '{name}'; the correlations are {', '.join(CORRELATIONS)}")
-    lengths = {key: entry[key].number(above=0) for key in ("length", "diameter", "gap", "speed") if key in entry}
+    units = {"length": "m", "diameter": "m", "gap": "m", "speed": "m/s"}
+    lengths = {key: entry[key].number(unit, above=0) for key, unit in units.items() if key in entry}
     for key in CORRELATION_NEEDS.get(name, ()):
         entry[key]
     fluid = entry["fluid"].text() if "fluid" in entry else "air"
@@ -290,7 +300,7 @@ def _read_conductance(entry: Entry) -> float | None:
 def _read_direction(entry: Entry) -> tuple[float, float, float]:
     x, y, z = (component.number() for component in entry.each(3))
     length = float(np.linalg.norm((x, y, z)))
-    if length == 0:
+    if length < 1e-9:
         raise entry.trouble("is the zero vector; it must be a direction")
     return x / length, y / length, z / length
 
@@ -303,7 +313,9 @@ def _read_accuracy(entry: Entry) -> Accuracy:
     return Accuracy(
         order=entry["order"].whole(at_least=1, at_most=2) if "order" in entry else default.order,
         size=entry["size"].number("m", above=0) if "size" in entry else default.size,
-        max_nodes=entry["max_nodes"].whole(at_least=4) if "max_nodes" in entry else default.max_nodes,
+        max_nodes=entry["max_nodes"].whole(at_least=4, at_most=MOST_NODES)
+        if "max_nodes" in entry
+        else default.max_nodes,
     )
 
 
@@ -322,10 +334,13 @@ def read_surface(path: Path, parts: int, tags: int) -> Surface:
     if not np.isfinite(vertices).all():
         first = int(np.flatnonzero(~np.isfinite(vertices).all(axis=1))[0])
         raise _surface_trouble(f"vertices[{first}] is not a finite position")
+    if len(vertices) and max(-vertices.min(), vertices.max()) > FARTHEST:
+        raise _surface_trouble(f"vertices lie farther than {FARTHEST:g} m from the origin")
     for name, values, low, high in (
         ("triangles", triangles, 0, len(vertices)),
         ("part", part, 0, parts),
         ("tag", tag, -1, tags),
+        ("face", face, -(2**31), 2**31),
     ):
         if count and (values.min() < low or values.max() >= high):
             raise _surface_trouble(f"{name} holds numbers outside {low}..{high - 1}")
@@ -334,28 +349,12 @@ def read_surface(path: Path, parts: int, tags: int) -> Surface:
     return Surface(vertices.astype(np.float64), *(a.astype(np.int32) for a in (triangles, part, tag, face)))
 
 
-def read_arrays(path: Path, required: Iterable[str], optional: Iterable[str] = ()) -> dict[str, np.ndarray]:
-    """The named arrays of an ``.npz``, never unpickled."""
-    try:
-        with np.load(path, allow_pickle=False) as archive:
-            missing = [name for name in required if name not in archive]
-            if missing:
-                raise Trouble("case", f"{path.name} lacks the array '{missing[0]}'.", "Write the case again.")
-            return {name: archive[name] for name in (*required, *optional) if name in archive}
-    except OSError as error:
-        reason = error.strerror or "it is not an .npz archive"
-        raise Trouble("case", f"{path.name} cannot be read: {reason}.", f"Put {path.name} there.") from error
-    except (ValueError, EOFError, KeyError, AttributeError, zipfile.BadZipFile, MemoryError) as error:
-        raise Trouble("case", f"{path.name} is not a sound .npz archive.", "Write the case again.") from error
-
-
 def _surface_trouble(complaint: str) -> Trouble:
     return Trouble("case", f"{SURFACE_FILE}: {complaint}.", "Write the case again.")
 
 
 def _shaped(array: np.ndarray, name: str, shape: tuple[int | None, ...], kinds: str) -> np.ndarray:
-    fits = array.ndim == len(shape) and all(want in (None, has) for want, has in zip(shape, array.shape, strict=True))
-    if not fits or array.dtype.kind not in kinds:
+    if not shaped(array, shape, kinds):
         wanted = "floats" if kinds == "f" else "whole numbers"
         raise _surface_trouble(f"{name} has shape {array.shape} of {array.dtype}; it must be {wanted} of shape {shape}")
     return array

@@ -6,8 +6,27 @@ import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Any
+from unicodedata import category
 
 from .errors import Trouble
+
+LONGEST_TEXT = 1000  # letters; control characters and halves of surrogate pairs cannot be shown anywhere
+# Least and most that a value other than zero may be, by its unit. No product has more, and with these no square,
+# quotient or fourth power of what is computed leaves the range of numbers.
+MAGNITUDES = {
+    "K": (0.0, 1e5),
+    "W": (0.0, 1e12),
+    "W/m2": (0.0, 1e15),
+    "W/m3": (0.0, 1e18),
+    "m": (1e-9, 1e6),
+    "m/s": (1e-6, 1e4),
+    "W/(m K)": (1e-6, 1e9),
+    "W/(m2 K)": (1e-9, 1e12),
+    "m2 K/W": (1e-12, 1e9),
+    "kg/m3": (1e-6, 1e6),
+    "J/(kg K)": (1e-6, 1e9),
+}
+OF_ANY_UNIT = (0.0, 1e12)
 
 
 @dataclass(frozen=True)
@@ -52,6 +71,8 @@ class Entry:
     def text(self) -> str:
         if not isinstance(self.value, str):
             raise self.trouble(f"is {shown(self.value)}; it must be text")
+        if len(self.value) > LONGEST_TEXT or any(category(letter) in ("Cc", "Cs") for letter in self.value):
+            raise self.trouble(f"is {shown(self.value)}; it must be one line of at most {LONGEST_TEXT} letters")
         return self.value
 
     def truth(self) -> bool:
@@ -61,18 +82,21 @@ class Entry:
 
     def number(self, unit: str = "", *, above: float | None = None, at_least: float | None = None,
                at_most: float | None = None) -> float:  # fmt: skip
-        """A finite number within the bounds given."""
+        """A number within the bounds given and, if it is not zero, within those of its unit."""
         if isinstance(self.value, bool) or not isinstance(self.value, int | float):
             raise self.trouble(f"is {shown(self.value)}; it must be a number")
         try:
             number = float(self.value)
         except OverflowError:
             number = math.inf
+        least, most = MAGNITUDES.get(unit, OF_ANY_UNIT)
         wanted = (
             (math.isfinite(number), "a finite number"),
             (above is None or number > above, f"greater than {above}"),
             (at_least is None or number >= at_least, f"at least {at_least}"),
             (at_most is None or number <= at_most, f"at most {at_most}"),
+            (number == 0 or least <= abs(number), f"zero or at least {least:g}"),
+            (abs(number) <= most, f"at most {most:g}"),
         )
         for holds, rule in wanted:
             if not holds:

@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from .case import read_arrays
+from .archives import read_arrays, shaped
 from .errors import Trouble
 
 FORMAT = "fluxface.result/1"
@@ -78,7 +78,12 @@ def write_skin(skin: HotSkin, folder: Path) -> None:
 
 def read_skin(folder: Path) -> HotSkin:
     """Raises Trouble of kind "case" when there is no sound skin in ``folder``."""
-    return HotSkin(**read_arrays(folder / SKIN_FILE, HotSkin.__dataclass_fields__))
+    skin = HotSkin(**read_arrays(folder / SKIN_FILE, HotSkin.__dataclass_fields__))
+    points = _sound(folder / SKIN_FILE, skin.places, (None, 3), "f")
+    triangles = _sound(folder / SKIN_FILE, skin.triangles, (None, 3), "iu", points)
+    _sound(folder / SKIN_FILE, skin.part, (triangles,), "iu")
+    _sound(folder / SKIN_FILE, skin.temperature, (points,), "f")
+    return skin
 
 
 def write_result(summary: Summary, field: Field, folder: Path) -> None:
@@ -104,7 +109,7 @@ def read_summary(folder: Path) -> Summary:
     """Raises Trouble of kind "case" when there is no sound summary of this version in ``folder``."""
     try:
         summary = json.loads((folder / SUMMARY_FILE).read_text("utf-8"))
-    except (OSError, ValueError) as error:
+    except (OSError, ValueError, RecursionError) as error:
         raise Trouble("case", f"There is no readable result in {folder}.", "Run again.") from error
     if not isinstance(summary, dict) or summary.get("format") != FORMAT:
         raise Trouble("case", f"The result in {folder} is not of the format '{FORMAT}'.", "Run again.")
@@ -113,4 +118,24 @@ def read_summary(folder: Path) -> Summary:
 
 def read_field(folder: Path) -> Field:
     """Raises Trouble of kind "case" when there is no sound field in ``folder``."""
-    return Field(**read_arrays(folder / FIELD_FILE, Field.__dataclass_fields__))
+    path = folder / FIELD_FILE
+    field = Field(**read_arrays(path, Field.__dataclass_fields__))
+    nodes = _sound(path, field.nodes, (None, 3), "f")
+    order = 2 if field.cells.shape[1:] == (10,) else 1
+    cells = _sound(path, field.cells, (None, {1: 4, 2: 10}[order]), "iu", nodes)
+    faces = _sound(path, field.boundary, (None, {1: 3, 2: 6}[order]), "iu", nodes)
+    _sound(path, field.cell_part, (cells,), "iu")
+    _sound(path, field.temperature, (nodes,), "f")
+    for numbers in (field.boundary_tag, field.boundary_part, field.boundary_face):
+        _sound(path, numbers, (faces,), "iu")
+    _sound(path, field.heat_flux, (nodes, 3), "f")
+    _sound(path, field.cell_heat_flux, (cells, 3), "f")
+    return field
+
+
+def _sound(path: Path, array: np.ndarray, shape: tuple[int | None, ...], kinds: str, below: int | None = None) -> int:
+    """The length of an array that is found to have that shape and kind, finite, and with numbers of 0..``below``."""
+    fits = shaped(array, shape, kinds) and np.isfinite(array).all()
+    if not fits or (below is not None and array.size and (array.min() < 0 or array.max() >= below)):
+        raise Trouble("case", f"{path.name} in {path.parent} does not hold a result.", "Run again.")
+    return len(array)

@@ -171,4 +171,6 @@ class FinishesMenu(bpy.types.Menu):
             self.layout.operator("fluxface.emissivity_use", text=text).emissivity = emissivity
 
 
-register, unregister = bpy.utils.register_classes_factory((TagList, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel))
+register, unregister = bpy.utils.register_classes_factory(
+    (TagList, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel)
+)

@@ -199,6 +199,8 @@ WRONG: list[tuple[str, Any]] = [
     ("parts[0]", "body"),
     ("parts[0].name", GONE),
     ("parts[0].name", 7),
+    ("parts[0].name", "two\nlines"),
+    ("parts[0].name", "\ud800"),
     ("parts[1].name", "body"),
     ("parts[0].heat", "12"),
     ("parts[0].heat", float("nan")),
@@ -215,6 +217,8 @@ WRONG: list[tuple[str, Any]] = [
     (CONDUCTIVITY, float("nan")),
     (CONDUCTIVITY, float("-inf")),
     (CONDUCTIVITY, 10**400),
+    (CONDUCTIVITY, 1e300),
+    (CONDUCTIVITY, 1e-300),
     (CONDUCTIVITY, [1.0, 2.0]),
     (CONDUCTIVITY, []),
     (f"{CONDUCTIVITY}", {"temperature": [300.0, 400.0]}),
@@ -259,6 +263,7 @@ WRONG: list[tuple[str, Any]] = [
     ("accuracy.size", 0.0),
     ("accuracy.size", "fine"),
     ("accuracy.max_nodes", 3),
+    ("accuracy.max_nodes", 10**12),
     ("accuracy.kelvin", 0.5),
     # A key that the contract does not know, at every depth.
     ("tag", []),
@@ -371,6 +376,7 @@ def with_item(array: np.ndarray, value: float) -> np.ndarray:
 WRONG_ARRAYS: list[tuple[str, Callable[[np.ndarray], np.ndarray], str]] = [
     ("vertices", lambda a: with_item(a, np.nan), "vertices[1]"),
     ("vertices", lambda a: with_item(a, np.inf), "vertices[1]"),
+    ("vertices", lambda a: with_item(a, 1e30), "vertices"),
     ("vertices", lambda a: a[:, :2], "vertices"),
     ("vertices", lambda a: a.ravel(), "vertices"),
     ("vertices", lambda a: a.astype(int), "vertices"),
