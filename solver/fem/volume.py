@@ -102,16 +102,3 @@ def gradients_at(shape: Geometry, local: np.ndarray, points: np.ndarray) -> np.n
     slopes = shape_gradients(points, 1 if local.shape[1] == 4 else 2)
     along = slopes.transpose(0, 2, 1) @ local.T
     return (along[:, :, None] * shape.gradients).sum(axis=1)
-
-
-def smallest_dihedral(mesh: Mesh) -> float:
-    """Degrees: the smallest angle between two faces of any tetrahedron."""
-    largest = -1.0
-    for piece in slices(len(mesh.cells), CELLS_AT_ONCE):
-        # The gradients of the barycentric coordinates are normal to the faces.
-        three = geometry(mesh, piece).gradients
-        normals = np.concatenate([-three.sum(axis=0, keepdims=True), three])
-        normals /= np.sqrt((normals**2).sum(axis=1, keepdims=True))
-        cosines = [-(normals[i] * normals[j]).sum(axis=0).min() for i, j in zip(*np.triu_indices(4, 1), strict=True)]
-        largest = max(largest, *cosines)
-    return float(np.degrees(np.arccos(np.clip(largest, -1.0, 1.0))))

@@ -6,7 +6,7 @@ Measured on invented parts, the rise of the patch's mean, against meshes of 0.24
   it spreads along. To keep tetrahedra as wide as the wall is thick costs nodes and brings nothing. A plate of
   200 x 200 x 0.3 mm with 10 W on 1 cm2: 236,000 nodes with a bound on the shape of cells and 0.2 % low, 36,000 nodes
   without it and 0.01 % low once the patch is refined. A sink of twelve 1 mm fins: 105,000 nodes and 0.15 % low against
-  36,000 and 0.16 %.
+  36,000 and 0.15 %.
 - *Where heat comes in* its flux jumps at the patch's outline, and there most of the error sits. A block of
   50 x 50 x 15 mm of 15 W/(m K) with 20 W on 1 cm2: 29,000 nodes and 0.46 % low; 33,000 and 0.01 % low once the
   patch has ten edges along its side.

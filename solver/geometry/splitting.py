@@ -2,35 +2,61 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
+from scipy.spatial import cKDTree
 
 from ..case import Surface
 from .edges import edges_of
+from .surface import triangle_corners
+
+GROWTH = 1.0  # of the longest edge, per distance from a fine triangle
 
 ROUNDS = 200  # far more than a sound surface takes: each round halves edges, and 40 halvings are rounding
 
 
-def split_to_size(surface: Surface, size: np.ndarray) -> Surface:
+def split_to_size(surface: Surface, finest: np.ndarray) -> Surface:
     """The surface with no edge of a triangle longer than its size (F,) m; infinite where it may stay as it is.
 
-    An edge is halved when it is the longest of all its triangles, so that no triangle gets a smaller angle than half
-    the smallest it came from, and the edges of neighbours stay one.
+    About fine triangles the others are graded, on whichever face they lie: a fine face close to a coarse one makes
+    the mesher search without end. An edge is halved when it is the longest of all its triangles, so that no triangle
+    gets a smaller angle than half the smallest it came from, and the edges of neighbours stay one.
 
     Rivara, New longest-edge algorithms for the refinement and improvement of unstructured triangulations,
     Int. J. Numer. Meth. Eng. 40 (1997) 3313.
     """
+    surface, finest = _split(surface, finest, lambda _, finest: finest)
+    fine = [
+        (size, cKDTree(triangle_corners(surface)[finest == size].mean(axis=1)))
+        for size in np.unique(finest[np.isfinite(finest)])
+    ]
+
+    def graded(surface: Surface, finest: np.ndarray) -> np.ndarray:
+        middles = triangle_corners(surface).mean(axis=1)
+        return np.minimum.reduce([finest, *(size + GROWTH * tree.query(middles)[0] for size, tree in fine)])
+
+    return _split(surface, finest, graded)[0]
+
+
+def _split(
+    surface: Surface, finest: np.ndarray, longest: Callable[[Surface, np.ndarray], np.ndarray]
+) -> tuple[Surface, np.ndarray]:
     for _ in range(ROUNDS):
-        halved = _halved(surface, size)
+        halved = _halved(surface, longest(surface, finest))
         if halved is None:
             break
-        surface, size = halved
-    return surface
+        surface, parent = halved
+        finest = finest[parent]
+    return surface, finest
 
 
 def _halved(surface: Surface, size: np.ndarray) -> tuple[Surface, np.ndarray] | None:
-    """One round: every edge that is due and the longest of all its triangles, halved; None when none is due."""
+    """One round: every edge that is due and the longest of all its triangles, halved, and each triangle's parent.
+
+    None when none is due.
+    """
     edges = edges_of(surface.triangles)
     length = np.linalg.norm(surface.vertices[edges.end] - surface.vertices[edges.start], axis=1).reshape(-1, 3)
     due = (length > size[:, None]).any(axis=1)
@@ -64,7 +90,7 @@ def _halved(surface: Surface, size: np.ndarray) -> tuple[Surface, np.ndarray] | 
         part=surface.part[parent],
         tag=surface.tag[parent],
         face=surface.face[parent],
-    ), size[parent]
+    ), parent
 
 
 def _with_neighbours(due: np.ndarray, edge: np.ndarray, longest: np.ndarray) -> np.ndarray:

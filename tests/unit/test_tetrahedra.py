@@ -225,6 +225,18 @@ def test_size_asked_for_holds_along_a_thin_plate() -> None:
     assert halved_to(0.004, edges_on(mesh_of(plate, 1, 0.004), 0))
 
 
+def test_a_fine_tag_on_a_thin_wall_around_a_cavity() -> None:
+    """The mesher never ends where a fine face lies close to one of two large triangles."""
+    outer = tagged(blocks(*[np.array([0, 0.04, 0.06, 0.1])] * 2, np.array([0, 0.05])), 0, within_patch)
+    surface = weld(merged(outer, inside_out(box((0.096, 0.096, 0.046), at=(0.002, 0.002, 0.002)))))
+    mesh = fill(surface, "part", 0, Accuracy(1), sizes_at(surface, [Tag("patch", size=0.0005)], Tag("untagged"), True))
+    assert len(mesh.nodes) < 30_000
+
+
+def within_patch(centres: np.ndarray, normals: np.ndarray) -> np.ndarray:
+    return (np.abs(centres - 0.05)[:, :2] < 0.01).all(axis=1) & (normals[:, 2] > 0.9)
+
+
 def test_a_tag_too_fine_for_the_bound_on_nodes_is_refused() -> None:
     with pytest.raises(Trouble) as caught:
         sized(Tag("patch", size=1e-12))
