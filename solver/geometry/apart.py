@@ -12,14 +12,16 @@ from pathlib import Path
 import numpy as np
 
 PROGRAM = Path(__file__).with_name("libraries_process.py")
-MISSING = 4  # the program's exit code when the tool's library is not installed
+# The program's exit codes when the tool's library is not installed, and when memory ran out.
+MISSING, MEMORY = 4, 5
+KILLED = -9  # nobody but a system that is out of memory kills it so
 SHARE_OF_MEMORY = 0.6
 MEMORY_WHERE_UNKNOWN = 8 << 30
 
 
 @dataclass
 class Apart(Exception):
-    """A tool that did not do. kind: "refused", "crashed", "time" or "missing"; text: what it said."""
+    """A tool that did not do. kind: "refused", "crashed", "time", "memory" or "missing"; text: what it said."""
 
     kind: str
     text: str = ""
@@ -55,6 +57,8 @@ def run_apart(tool: str, arrays: dict[str, np.ndarray], argument: str, seconds: 
         said = (done.stderr.strip().splitlines() or [""])[-1]
         if done.returncode == MISSING:
             raise Apart("missing", said)
+        if done.returncode in (MEMORY, KILLED):
+            raise Apart("memory", said)
         if done.returncode != 0 or not target.exists():
             raise Apart("refused" if done.returncode > 0 else "crashed", said)
         try:

@@ -1,7 +1,8 @@
 """The mesher and the menders, C++ cores all of them, in a process of its own: a crash or a hang is then an exit code.
 
 Called by apart.py as ``python libraries_process.py TOOL INPUT.npz OUTPUT.npz BYTES SECONDS ARGUMENT``; imports nothing
-of the project. Exit code 3 and one line on stderr when a tool refuses the surface, 4 when its library is missing.
+of the project. Exit code 3 and one line on stderr when a tool refuses the surface, 4 when its library is missing, 5
+when memory ran out.
 """
 
 from __future__ import annotations
@@ -13,7 +14,7 @@ from collections.abc import Callable
 
 import numpy as np
 
-REFUSED, MISSING = 3, 4
+REFUSED, MISSING, MEMORY = 3, 4, 5
 Arrays = dict[str, np.ndarray]
 
 
@@ -122,7 +123,11 @@ def _alone(surface: Arrays, shell: np.ndarray) -> tuple[np.ndarray, np.ndarray, 
 
 
 def _bound(size: int, seconds: int) -> None:
-    """Let the process take no more memory and processor time than that, and end with the one that started it."""
+    """Let the process take no more memory and processor time than that, and end with the one that started it.
+
+    Linux alone has all three. macOS takes the bound on memory and does not keep it, Windows has none: what bounds a
+    tool there is how many points it may add, and the wall clock of the process that waits for it.
+    """
     if sys.platform == "linux":
         ctypes.CDLL(None).prctl(1, 9)  # PR_SET_PDEATHSIG, SIGKILL
     try:
@@ -138,17 +143,16 @@ def _bound(size: int, seconds: int) -> None:
 
 def main(tool: str, source: str, target: str, size: str, seconds: str, argument: str) -> int:
     _bound(int(size), int(seconds))
-    with np.load(source) as arrays:
-        surface = dict(arrays)
     try:
-        made = TOOLS[tool](surface, argument)
+        with np.load(source) as arrays:
+            made = TOOLS[tool](dict(arrays), argument)
+        np.savez(target, **made)
     except ImportError as error:
         print(str(error).replace("\n", " "), file=sys.stderr)
         return MISSING
     except (RuntimeError, ValueError, MemoryError) as error:
         print((str(error).strip() or type(error).__name__).replace("\n", " "), file=sys.stderr)
-        return REFUSED
-    np.savez(target, **made)
+        return MEMORY if isinstance(error, MemoryError) or "out of memory" in str(error).lower() else REFUSED
     return 0
 
 

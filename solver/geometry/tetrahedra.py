@@ -153,7 +153,7 @@ def _tetrahedralise(
             found = run_apart("tetrahedra", surface, switches + attempt.switches, seconds)
         except Apart as apart:
             refusals.append(apart)
-            if apart.kind in ("missing", "time"):
+            if apart.kind in ("missing", "time", "memory"):
                 break
             continue
         if accuracy.size and len(found["points"]) - len(unit.vertices) >= added:
@@ -173,6 +173,18 @@ def _refusal(name: str, refusals: list[Apart], seconds: float) -> Trouble:
             "limits",
             f"Filling '{name}' with tetrahedra took longer than {seconds:g} s.",
             "Choose a larger size or simplify the part.",
+        )
+    if refusals[-1].kind == "memory":
+        return Trouble(
+            "limits",
+            f"There is not enough memory to fill '{name}' with tetrahedra.",
+            "Choose a larger size, simplify the part, or close other programs.",
+        )
+    if all(refusal.kind == "crashed" for refusal in refusals):
+        return Trouble(
+            "geometry",
+            f"The mesher broke down on '{name}'.",
+            "Look for crossing, doubled or needle-thin faces, unite or remove them, or choose another size.",
         )
     if any("self-intersect" in refusal.text for refusal in refusals):
         return Trouble(

@@ -19,6 +19,7 @@ from fluxface.solver.case import Accuracy, Surface, Tag
 from fluxface.solver.errors import Trouble
 from fluxface.solver.fem.mesh import CELL_EDGES, Mesh
 from fluxface.solver.fem.volume import geometry
+from fluxface.solver.geometry import apart, tetrahedra
 from fluxface.solver.geometry.edges import edges_of
 from fluxface.solver.geometry.sizing import sizes_at
 from fluxface.solver.geometry.splitting import split_to_size
@@ -319,7 +320,7 @@ def interpreter(folder: Path, script: str) -> str:
 @pytest.mark.skipif(os.name != "posix", reason="kills the process by a shell")
 @pytest.mark.parametrize(
     "script",
-    ["kill -9 $$", "kill -SEGV $$", "exit 1", "exit 0", 'echo "out of luck" >&2; exit 9'],
+    ["kill -ABRT $$", "kill -SEGV $$", "exit 1", "exit 0", 'echo "out of luck" >&2; exit 9'],
     ids=lambda s: s[:12],
 )
 def test_a_mesher_that_dies_is_told_and_not_raised(
@@ -329,6 +330,36 @@ def test_a_mesher_that_dies_is_told_and_not_raised(
     with pytest.raises(Trouble) as caught:
         filled(UNIT_BOX)
     assert caught.value.kind == "geometry" and "'part'" in caught.value.message
+
+
+@pytest.mark.skipif(os.name != "posix", reason="kills the process by a shell")
+def test_a_mesher_that_the_system_kills_has_run_out_of_memory(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(sys, "executable", interpreter(tmp_path, "kill -9 $$"))
+    with pytest.raises(Trouble) as caught:
+        filled(UNIT_BOX)
+    assert caught.value.exit_code == 6 and "memory" in caught.value.message
+
+
+@pytest.mark.skipif(sys.platform != "linux", reason="the bound on memory is kept on Linux alone")
+@pytest.mark.parametrize("megabytes", [200, 300])
+def test_a_mesher_out_of_memory_is_told_at_once(monkeypatch: pytest.MonkeyPatch, megabytes: int) -> None:
+    """The bound itself, kept by the system: the box takes more than a gigabyte."""
+    monkeypatch.setattr(apart, "_most_memory", lambda: megabytes << 20)
+    with pytest.raises(Trouble) as caught:
+        fill(weld(box((1.0, 1.0, 1.0))), "part", 0, Accuracy(1, 0.012))
+    assert caught.value.exit_code == 6 and "memory" in caught.value.message
+
+
+@pytest.mark.skipif(os.name != "posix", reason="looks for the process by its number")
+def test_a_mesher_that_hangs_is_ended(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    script = f"echo $$ > {tmp_path}/number; while :; do :; done"
+    monkeypatch.setattr(sys, "executable", interpreter(tmp_path, script))
+    monkeypatch.setattr(tetrahedra, "SECONDS", 0.5)
+    with pytest.raises(Trouble) as caught:
+        filled(UNIT_BOX)
+    assert caught.value.exit_code == 6 and "longer than 0.5 s" in caught.value.message
+    with pytest.raises(ProcessLookupError):
+        os.kill(int((tmp_path / "number").read_text()), 0)
 
 
 def test_a_mesh_beyond_the_bound_is_refused_before_it_is_made() -> None:
