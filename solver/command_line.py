@@ -1,15 +1,16 @@
-"""The command line: ``fluxface solve`` and ``fluxface check``."""
+"""The command line: ``fluxface solve``, ``fluxface check``, ``fluxface mend`` and what serves the add-on."""
 
 from __future__ import annotations
 
 import argparse
 import json
 import sys
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any
 
-from .case import read_case
+from .case import Case, read_case, write_case
 from .errors import Trouble
 from .packing import PLATFORMS, pack
 from .rendering import render
@@ -51,6 +52,11 @@ def _parser() -> argparse.ArgumentParser:
     checking.add_argument("case", type=Path, metavar="CASE", help="the case folder")
     checking.add_argument("--json", action="store_true", help="tell the measures as JSON")
     checking.set_defaults(run=_check)
+    mending = commands.add_parser("mend", help="write a case folder whose surfaces bound solids, mended where need be")
+    mending.add_argument("case", type=Path, metavar="CASE", help="the case folder")
+    mending.add_argument("--out", type=Path, metavar="CASE2", required=True, help="the case folder to write")
+    mending.add_argument("--json", action="store_true", help="tell what was done as JSON")
+    mending.set_defaults(run=_mend)
     # Its options are the add-on's, which has its own reader of them.
     commands.add_parser("render", help="solve a .blend file and render its result, in Blender", add_help=False)
     packing_up = commands.add_parser("pack", help="build the extension to install in the 3D suite")
@@ -82,15 +88,44 @@ def _check(options: argparse.Namespace) -> None:
     case = read_case(options.case)
     from . import pipeline
 
-    try:
+    with _findings_told(case, options.json):
         measures = pipeline.checked_summary(case, pipeline.check(case))
+    print(json.dumps(measures) if options.json else _told_of_check(measures))
+
+
+def _mend(options: argparse.Namespace) -> None:
+    if options.out.resolve() == options.case.resolve():
+        raise Trouble("case", "The mended case would take the place of the one given.", "Choose another --out.")
+    case = read_case(options.case)
+    from . import pipeline
+
+    with _findings_told(case, options.json):
+        mended, bodies = pipeline.mend(case)
+    measures = pipeline.checked_summary(case, bodies)
+    try:
+        write_case(mended, options.out)
+    except OSError as error:
+        raise Trouble(
+            "limits",
+            f"The case cannot be written to {options.out}: {error.strerror}.",
+            "Free some space or choose a place.",
+        ) from error
+    print(json.dumps(measures) if options.json else f"{_told_of_check(measures)}\nIt was written to {options.out}.")
+
+
+@contextmanager
+def _findings_told(case: Case, as_json: bool) -> Iterator[None]:
+    """Where the geometry of a case is refused within, print what was found of each part, if as JSON."""
+    from . import pipeline
+
+    try:
+        yield
     except Trouble as trouble:
-        if options.json and trouble.kind == "geometry":
+        if as_json and trouble.kind == "geometry":
             found = [[vars(finding) for finding in findings] for findings in pipeline.findings(case)]
             parts = [{"name": part.name, "findings": some} for part, some in zip(case.parts, found, strict=True)]
             print(json.dumps({"state": "unsound", "parts": parts}))
         raise
-    print(json.dumps(measures) if options.json else _told_of_check(measures))
 
 
 def _told_of_check(measures: dict[str, Any]) -> str:

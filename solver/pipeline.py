@@ -18,7 +18,7 @@ from .geometry.inspection import Finding, bounds_solid, inspected
 from .geometry.mending import Mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.sizing import sizes_at
-from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, weld
+from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, united, weld
 from .geometry.tetrahedra import fill
 from .physics import steady
 from .physics.film import film_law
@@ -210,8 +210,8 @@ def mending_warnings(bodies: list[Body]) -> list[str]:
     return [warning for body in bodies if body.mended for warning in body.mended.warnings]
 
 
-def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
-    """The parts made ready, and the tetrahedra that fill them, of the order that the case asks for."""
+def filling(case: Case, progress: Progress) -> Callable[[Surface, int], Mesh]:
+    """What makes the linear tetrahedra of a part out of its surface and index, as the case asks for them."""
 
     def filled(surface: Surface, index: int) -> Mesh:
         name = case.parts[index].name
@@ -219,6 +219,13 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
         finest = sizes_at(surface, case.tags, case.untagged, case.accuracy.size is None)
         return fill(surface, name, index, case.accuracy, finest)
 
+    return filled
+
+
+def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
+    """The parts made ready, and the tetrahedra that fill them, of the order that the case asks for."""
+
+    filled = filling(case, progress)
     bodies, meshes = check(case, filled), []
     for index, body in enumerate(bodies):
         if body.mended is None:
@@ -243,6 +250,32 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
         )
     progress("mesh", 1.0, f"{len(mesh.cells)} tetrahedra, {len(mesh.nodes)} nodes")
     return bodies, mesh
+
+
+def mend(case: Case, progress: Progress = lambda stage, fraction, text: None) -> tuple[Case, list[Body]]:
+    """The case with the surfaces of those parts mended that could not be filled as they were; the others as given.
+
+    Raises Trouble of kind "geometry" when a part is beyond mending, "limits" when it takes too many nodes.
+    """
+    filled, bodies, surfaces = filling(case, progress), [], []
+    for index, part in enumerate(case.parts):
+        surface = _welded(case, index)
+        body = Body(surface, tuple(inspected(surface, part.name, case.accuracy.size)))
+        if not (bounds_solid(body.findings) and _is_filled(surface, index, filled)):
+            body = _mended_body(case, index, surface, body.findings, filled)
+        bodies.append(body)
+        surfaces.append(body.surface if body.mended else one_part(case.surface, index))
+    return replace(case, surface=united(surfaces)), bodies
+
+
+def _is_filled(surface: Surface, index: int, fill: Fill) -> bool:
+    try:
+        fill(surface, index)
+    except Trouble as trouble:
+        if trouble.kind != "geometry":
+            raise
+        return False
+    return True
 
 
 def solve(case: Case, progress: Progress = lambda stage, fraction, text: None) -> Solved:

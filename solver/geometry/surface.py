@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -80,6 +81,17 @@ def one_part(surface: Surface, part: int) -> Surface:
         part=surface.part[mine],
         tag=surface.tag[mine],
         face=surface.face[mine],
+    )
+
+
+def united(surfaces: Sequence[Surface]) -> Surface:
+    """The triangles of several surfaces as those of one, their vertices kept apart."""
+    before = np.cumsum([0, *(len(surface.vertices) for surface in surfaces)])
+    triangles = [surface.triangles + start for surface, start in zip(surfaces, before[:-1], strict=True)]
+    return Surface(
+        np.concatenate([surface.vertices for surface in surfaces]),
+        np.concatenate(triangles).astype(np.int32),
+        *(np.concatenate([getattr(surface, key) for surface in surfaces]) for key in ("part", "tag", "face")),
     )
 
 
