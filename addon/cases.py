@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import replace
 
 import bpy
 import numpy as np
@@ -57,15 +56,19 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
 
 
 def build_shapes(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgraph: bpy.types.Depsgraph) -> Case:
-    """The parts' shapes alone, of a stand-in material and in air all over, to be checked and never solved.
+    """The parts' shapes and tags alone, of a stand-in material and in air all over, to be looked at and never solved.
 
     Raises Trouble of kind "geometry" when a part is no body.
     """
-    stand_in = Material("stand-in", (1.0,))
+    stand_in, air = Material("stand-in", (1.0,)), Convection(ambient=300.0, coefficient=1.0)
+    skins = _skins(scene, parts, depsgraph)
+    present = set(np.unique(np.concatenate([surface.uid for surface in skins])).tolist()) - {0}
+    names = {tag.uid: tag.name for tag in scene.fluxface.tags}
     return Case(
-        surface=_joined([replace(surface, uid=0 * surface.uid) for surface in _skins(scene, parts, depsgraph)], []),
+        surface=_joined(skins, sorted(present)),
         parts=tuple(Part(part.name, stand_in) for part in parts),
-        untagged=Tag("untagged", convection=Convection(ambient=300.0, coefficient=1.0)),
+        tags=tuple(Tag(names.get(uid, f"tag {uid}"), convection=air) for uid in sorted(present)),
+        untagged=Tag("untagged", convection=air),
     )
 
 

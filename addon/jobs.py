@@ -144,6 +144,22 @@ def check(case: Path) -> Job:
     return Job(command("check", str(case), "--json"), environment())
 
 
+def inspect(case: Path) -> Job:
+    """Start looking for what is amiss with the surfaces of a case folder; the findings are the ending's ``said``.
+
+    Raises Trouble when the solver or one of its libraries is missing.
+    """
+    return Job(command("inspect", str(case)), environment())
+
+
+def mend(case: Path, mended: Path) -> Job:
+    """Start writing the case folder ``mended``; the measures of what was done are the ending's ``said``, as JSON.
+
+    Raises Trouble when the solver or one of its libraries is missing.
+    """
+    return Job(command("mend", str(case), "--out", str(mended), "--json"), environment())
+
+
 def command(*arguments: str) -> list[str]:
     """The solver's command line; -P keeps what lies in the working folder from being imported."""
     return [sys.executable, "-P", str(Path(__file__).with_name("solver_process.py")), SOLVER.name, *arguments]

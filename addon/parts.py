@@ -40,10 +40,10 @@ class Skin:
         return float(np.einsum("fi,fi->", centred[self.triangles[:, 0]], self.area_vectors()) / 3.0)
 
     def area_by_tag(self) -> dict[int, float]:
-        """Area of each tag that has faces, untagged ones left out."""
+        """Area of each tag that has faces; the untagged ones are 0's."""
         uids, inverse = np.unique(self.uid, return_inverse=True)
         sums = np.bincount(inverse.ravel(), weights=np.linalg.norm(self.area_vectors(), axis=1), minlength=len(uids))
-        return {uid: area for uid, area in zip(uids.tolist(), sums.tolist(), strict=True) if uid}
+        return dict(zip(uids.tolist(), sums.tolist(), strict=True))
 
 
 @contextmanager

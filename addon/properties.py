@@ -188,13 +188,15 @@ class KeptRun(bpy.types.PropertyGroup):
 class Outcome(bpy.types.PropertyGroup):
     """What the last run left: a result, and the trouble of a run that failed after it.
 
-    folder: of the result. lost: it is not there any more. runs: those that are kept, the latest first.
+    folder: of the result. lost: it is not there any more. runs: those that are kept, the latest first. areas: m² of
+    each tag by uid at the last run, as JSON.
     """
 
     folder: StringProperty(subtype="DIR_PATH")
     lost: BoolProperty()
     runs: CollectionProperty(type=KeptRun)
     active_run: IntProperty()
+    areas: StringProperty()
     summary: StringProperty()
     inputs: StringProperty()
     message: StringProperty()
@@ -204,7 +206,12 @@ class Outcome(bpy.types.PropertyGroup):
 
 
 class PartSettings(bpy.types.PropertyGroup):
-    """On each object. ``areas`` and ``shape`` are kept up to date from the evaluated geometry, both as JSON."""
+    """On each object. What follows is kept up to date from the evaluated geometry.
+
+    areas: of its tags by uid, in square scene units, as JSON. shape: a digest of surface and tags. body: a digest of
+    the surface as it stands in metres. volume, surface, untagged: cubic and square metres. findings: what was found
+    amiss when the body was the one that was ``inspected``, as JSON.
+    """
 
     material: PointerProperty(type=MaterialValues)
     heat_kind: EnumProperty(
@@ -215,6 +222,14 @@ class PartSettings(bpy.types.PropertyGroup):
     heat_density: FloatProperty(name="Heat per volume (W/m³)", description="Released evenly in the whole part")
     areas: StringProperty()
     shape: StringProperty()
+    body: StringProperty()
+    volume: FloatProperty()
+    surface: FloatProperty()
+    untagged: FloatProperty()
+    extent: FloatVectorProperty(description="Metres along the world's axes")
+    findings: StringProperty()
+    inspected: StringProperty()
+    recovered: BoolProperty(description="Tags were carried over to a shape that had lost them")
     outcome: PointerProperty(type=Outcome)
 
 
@@ -292,6 +307,7 @@ class RunState(bpy.types.PropertyGroup):
     cancelled: BoolProperty()
     fraction: FloatProperty(min=0.0, max=1.0)
     text: StringProperty()
+    mended: StringProperty(description="What the last mending did")
 
 
 CLASSES = (

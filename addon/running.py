@@ -26,7 +26,7 @@ SECONDS_BETWEEN_LOOKS = 0.1
 class Run:
     """scene, parts: the host's ids for the session, as it may rename, move or free what they stand for meanwhile.
 
-    inputs: what the result will have been made from, to tell later whether it is current.
+    inputs: what the result will have been made from, to tell later whether it is current. areas: of its tags, m².
     """
 
     job: jobs.Job
@@ -34,6 +34,7 @@ class Run:
     parts: tuple[int, ...]
     result: Path
     inputs: str
+    areas: dict[int, float]
 
 
 def start(context: bpy.types.Context) -> Run:
@@ -57,7 +58,7 @@ def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence
             upkeep.measure(part, depsgraph)
             tags.keep_copies(scene, part.data)
         case = build_case(scene, members, depsgraph)
-        inputs = study.inputs(scene, members)
+        inputs, areas = study.inputs(scene, members), study.tag_areas(scene, members)
     folder = study.folder(scene, members)
     try:
         write_case(case, folder)
@@ -69,7 +70,7 @@ def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence
         ) from error
     result = folder / "result"
     job = jobs.solve(folder, result)
-    return Run(job, scene.session_uid, tuple(part.session_uid for part in members), result, inputs)
+    return Run(job, scene.session_uid, tuple(part.session_uid for part in members), result, inputs, areas)
 
 
 def wait(job: jobs.Job) -> jobs.Ending:
@@ -140,7 +141,7 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
         keep_trouble(left, trouble)
         return trouble
     left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
-    left.lost = False
+    left.areas, left.lost = json.dumps(run.areas), False
     keep_trouble(left, None)
     return _kept(left, run.result.parent)
 

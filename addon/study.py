@@ -13,6 +13,7 @@ from ..solver.errors import Trouble
 from ..solver.result import Summary
 from . import groups, tags, view
 from .properties import Outcome
+from .units import metres_per_unit
 
 # World positions below this share of a unit are rounding of the host's single-precision matrices.
 PLACE_DIGITS = 6
@@ -69,6 +70,16 @@ def run_folder(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> P
 def summary(left: Outcome) -> Summary | None:
     """The summary of the last run that was solved."""
     return json.loads(left.summary) if left.summary else None
+
+
+def tag_areas(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> dict[int, float]:
+    """m² of each tag by uid, on all parts together, as last measured."""
+    total: dict[int, float] = {}
+    square = metres_per_unit(scene) ** 2
+    for part in members:
+        for uid, area in json.loads(part.fluxface.areas or "{}").items():
+            total[int(uid)] = total.get(int(uid), 0.0) + square * area
+    return total
 
 
 def is_current(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> bool:

@@ -133,8 +133,8 @@ def selected(mesh: bpy.types.Mesh) -> np.ndarray:
     return chosen
 
 
-def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int) -> None:
-    """Give the faces, (F,) bool, to a tag; 0 leaves them untagged. The shape of the mesh is not touched.
+def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int | np.ndarray) -> None:
+    """Give the faces, (F,) bool, to a tag, or to one each; 0 leaves them untagged. The shape is not touched.
 
     Raises Trouble when the attribute of that name is not one of ours.
     """
@@ -142,8 +142,9 @@ def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int) -> None:
         edited = bmesh.from_edit_mesh(mesh)
         layer = edited.faces.layers.int.get(ATTRIBUTE) or edited.faces.layers.int.new(ATTRIBUTE)
         edited.faces.ensure_lookup_table()
-        for index in np.flatnonzero(faces):
-            edited.faces[index][layer] = uid
+        chosen = np.flatnonzero(faces).tolist()
+        for index, given in zip(chosen, np.broadcast_to(uid, len(chosen)).tolist(), strict=True):
+            edited.faces[index][layer] = given
         bmesh.update_edit_mesh(mesh, loop_triangles=False, destructive=False)
         return
     uids = read(mesh)

@@ -67,6 +67,30 @@ def area_text(scene: bpy.types.Scene, square_metres: float) -> str:
     return f"{square_metres / 1e-6:.3g} mm²"
 
 
+def length_text(scene: bpy.types.Scene, metres: float) -> str:
+    """A length in the scene's unit system, as in "80 mm"."""
+    if scene.unit_settings.system == "IMPERIAL":
+        return bpy.utils.units.to_string("IMPERIAL", "LENGTH", metres, precision=4)
+    return f"{metres:.4g} m" if metres >= 1.0 else f"{1e3 * metres:.4g} mm"
+
+
+def volume_text(scene: bpy.types.Scene, cubic_metres: float) -> str:
+    """A volume in the scene's unit system, as in "84.2 cm³"."""
+    if scene.unit_settings.system == "IMPERIAL":
+        return bpy.utils.units.to_string("IMPERIAL", "VOLUME", cubic_metres, precision=4)
+    for unit, size in (("m³", 1.0), ("cm³", 1e-6)):
+        if cubic_metres >= 0.1 * size:
+            return f"{cubic_metres / size:.3g} {unit}"
+    return f"{cubic_metres / 1e-9:.3g} mm³"
+
+
+def mass_text(scene: bpy.types.Scene, kilograms: float) -> str:
+    """A mass in the scene's unit system, as in "228 g"."""
+    if scene.unit_settings.system == "IMPERIAL":
+        return bpy.utils.units.to_string("IMPERIAL", "MASS", kilograms, precision=4)
+    return f"{kilograms:.3g} kg" if kilograms >= 1.0 else f"{1e3 * kilograms:.3g} g"
+
+
 def power_text(watts: float) -> str:
     """As in "12 W" and "−350 mW"; heat into the part is positive."""
     size = abs(watts)

@@ -7,36 +7,51 @@ import json
 from contextlib import suppress
 
 import bpy
+import numpy as np
 from bpy.app.handlers import persistent
 
 from ..solver.errors import Trouble
 from . import history, host, jobs, study, tags
+from .inspection import inspector
 from .overlay import tag_colours
-from .parts import Skin, modelled, placed, world_matrix
+from .parts import modelled, placed, world_matrix
+from .recovery import memory
+from .units import metres_per_unit
 
 # Long enough that dragging a vertex does not measure the part at every move.
 QUIET_SECONDS = 0.3
 
 
 def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
-    """Keep with the part the area of each of its tags (in square scene units) and a digest of its shape."""
+    """Keep with the part what its evaluated geometry comes to: areas of its tags, volume, extent, and digests."""
     if part.library is not None:
         return
     try:
+        memory.recover(part)
         surface = modelled(part, depsgraph)
     except Trouble:
         return
     tag_colours.take(part, surface)
-    areas = json.dumps(placed(surface, world_matrix(part), 1.0).area_by_tag())
-    shape = _digest(surface)
-    if (part.fluxface.areas, part.fluxface.shape) != (areas, shape):
-        part.fluxface.areas, part.fluxface.shape = areas, shape
+    memory.keep(part, surface)
+    settings, metres = part.fluxface, metres_per_unit(bpy.context.scene)
+    world = placed(surface, world_matrix(part), metres)
+    shape = _digest(surface.vertices, surface.triangles, surface.uid)
+    scale = np.linalg.norm(world_matrix(part)[:3, :3], axis=0) * metres
+    body = _digest(scale.astype(np.float32), surface.vertices, surface.triangles)
+    areas = {uid: area / metres**2 for uid, area in world.area_by_tag().items()}
+    tagged = json.dumps({uid: area for uid, area in areas.items() if uid})
+    if (settings.areas, settings.shape, settings.body) == (tagged, shape, body):
+        return
+    settings.areas, settings.shape, settings.body = tagged, shape, body
+    settings.volume, settings.surface = abs(world.volume()), metres**2 * sum(areas.values())
+    settings.untagged = metres**2 * areas.get(0, 0.0)
+    settings.extent = np.ptp(world.vertices, axis=0) if len(world.vertices) else (0.0, 0.0, 0.0)
 
 
-def _digest(surface: Skin) -> str:
-    """A short text that changes with the shape and the tagged faces."""
+def _digest(*arrays: np.ndarray) -> str:
+    """A short text that changes with what the arrays hold."""
     digest = hashlib.blake2b(digest_size=12)
-    for array in (surface.vertices, surface.triangles, surface.uid):
+    for array in arrays:
         digest.update(array.tobytes())
     return digest.hexdigest()
 
@@ -53,6 +68,8 @@ def refresh() -> None:
     for part in members:
         if part.visible_get():
             measure(part, depsgraph)
+    if not bpy.app.background:
+        inspector.look(members)
     host.redraw()
 
 
@@ -87,6 +104,8 @@ def before_load(_file: str) -> None:
     jobs.stop_all()
     bpy.context.window_manager.fluxface.running = False
     tag_colours.forget()
+    memory.forget()
+    inspector.stop()
 
 
 @persistent

@@ -52,6 +52,9 @@ def _parser() -> argparse.ArgumentParser:
     checking.add_argument("case", type=Path, metavar="CASE", help="the case folder")
     checking.add_argument("--json", action="store_true", help="tell the measures as JSON")
     checking.set_defaults(run=_check)
+    inspecting = commands.add_parser("inspect", help="tell, as JSON, what is found amiss with each part's surface")
+    inspecting.add_argument("case", type=Path, metavar="CASE", help="the case folder")
+    inspecting.set_defaults(run=_inspect)
     mending = commands.add_parser("mend", help="write a case folder whose surfaces bound solids, mended where need be")
     mending.add_argument("case", type=Path, metavar="CASE", help="the case folder")
     mending.add_argument("--out", type=Path, metavar="CASE2", required=True, help="the case folder to write")
@@ -93,6 +96,13 @@ def _check(options: argparse.Namespace) -> None:
     print(json.dumps(measures) if options.json else _told_of_check(measures))
 
 
+def _inspect(options: argparse.Namespace) -> None:
+    case = read_case(options.case)
+    from . import pipeline
+
+    print(json.dumps({"parts": pipeline.findings(case)}))
+
+
 def _mend(options: argparse.Namespace) -> None:
     if options.out.resolve() == options.case.resolve():
         raise Trouble("case", "The mended case would take the place of the one given.", "Choose another --out.")
@@ -122,9 +132,7 @@ def _findings_told(case: Case, as_json: bool) -> Iterator[None]:
         yield
     except Trouble as trouble:
         if as_json and trouble.kind == "geometry":
-            found = [[vars(finding) for finding in findings] for findings in pipeline.findings(case)]
-            parts = [{"name": part.name, "findings": some} for part, some in zip(case.parts, found, strict=True)]
-            print(json.dumps({"state": "unsound", "parts": parts}))
+            print(json.dumps({"state": "unsound", "parts": pipeline.findings(case)}))
         raise
 
 

@@ -51,9 +51,13 @@ class Body:
 Fill = Callable[[Surface, int], Mesh | None]
 
 
-def findings(case: Case) -> list[list[Finding]]:
-    """What is to be said of each part's surface, whatever state it is in."""
-    return [inspected(_welded(case, index), part.name, case.accuracy.size) for index, part in enumerate(case.parts)]
+def findings(case: Case) -> list[dict[str, Any]]:
+    """What is to be said of each part's surface, whatever state it is in, as the command line tells it."""
+    found = [inspected(_welded(case, index), part.name, case.accuracy.size) for index, part in enumerate(case.parts)]
+    return [
+        {"name": part.name, "findings": [vars(finding) for finding in some]}
+        for part, some in zip(case.parts, found, strict=True)
+    ]
 
 
 def check(case: Case, fill: Fill = lambda surface, part: None) -> list[Body]:

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from . import contacts, history, materials, publishing, running, tagging
+from . import contacts, history, materials, publishing, running, shape, tagging
 
-ROOMS = (tagging, materials, contacts, running, publishing, history)
+ROOMS = (tagging, shape, materials, contacts, running, publishing, history)
 
 
 def register() -> None:

@@ -5,12 +5,8 @@ from __future__ import annotations
 import json
 
 import bpy
-import numpy as np
-from mathutils import Vector
 
-from .. import jobs, running, study, tags
-from ..units import metres_per_unit
-from .tagging import enter_edit_mode
+from .. import jobs, places, running, study
 from .telling import Finish, TellsTrouble, WorksBeside
 
 
@@ -53,21 +49,8 @@ class ShowPlace(TellsTrouble, bpy.types.Operator):
     def act(self, context: bpy.types.Context) -> None:
         members = study.parts(context)
         left = study.outcome(context.scene, members)
-        faces, points = (np.array(json.loads(text or "[]")) for text in (left.faces, left.points))
-        if len(points):
-            context.scene.cursor.location = Vector(points[0] / metres_per_unit(context.scene))
         named = [part for part in members if f"'{part.name}'" in left.message] or members
-        if len(faces):
-            _select(context, named[0], faces.astype(int))
-
-
-def _select(context: bpy.types.Context, part: bpy.types.Object, faces: np.ndarray) -> None:
-    """In edit mode; faces are numbered as modifiers left them, so those that the mesh does not have are left out."""
-    if context.mode != "OBJECT":
-        bpy.ops.object.mode_set(mode="OBJECT")
-    enter_edit_mode(context, part)
-    chosen = np.isin(np.arange(len(tags.read(part.data))), faces)
-    tags.select(part.data, chosen)
+        places.show(context, named[0], json.loads(left.faces or "[]"), json.loads(left.points or "[]"))
 
 
 register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace))

@@ -8,6 +8,7 @@ from bpy.props import StringProperty
 
 from ...solver.errors import Trouble
 from .. import study, tags, upkeep, view
+from ..places import enter_edit_mode
 from .telling import TellsTrouble
 
 
@@ -35,16 +36,6 @@ def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Mesh, np.
             tags.give(mesh, faces, uid)
             tags.keep_copies(context.scene, mesh)
     upkeep.refresh()
-
-
-def enter_edit_mode(context: bpy.types.Context, part: bpy.types.Object) -> None:
-    """With the part in sight and active, and no face selected."""
-    view.settings_of(context.scene).showing = "PART"
-    if part.mode != "EDIT":
-        context.view_layer.objects.active = part
-        bpy.ops.object.mode_set(mode="EDIT")
-    context.tool_settings.mesh_select_mode = (False, False, True)
-    bpy.ops.mesh.select_all(action="DESELECT")
 
 
 class _OnPart(TellsTrouble):

@@ -2,31 +2,23 @@
 
 from __future__ import annotations
 
-import json
-
 import bpy
 
 from ...solver.errors import Trouble
 from ...solver.materials import library
-from .. import study, tags, words
+from .. import ledger, study, tags, words
 from ..cases import FILM_NEEDS
 from ..properties import Terms
-from ..units import area_text, metres_per_unit
+from ..units import area_text
 from .sidebar import Sidebar, fields, paragraph
 
 
 def areas(context: bpy.types.Context) -> dict[int, float]:
     """m² of each tag on the parts of the present study."""
     try:
-        members = study.parts(context)
+        return study.tag_areas(context.scene, study.parts(context))
     except Trouble:
         return {}
-    total: dict[int, float] = {}
-    square = metres_per_unit(context.scene) ** 2
-    for part in members:
-        for uid, area in json.loads(part.fluxface.areas or "{}").items():
-            total[int(uid)] = total.get(int(uid), 0.0) + square * area
-    return total
 
 
 class TagList(bpy.types.UIList):
@@ -60,6 +52,8 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         buttons = row.column(align=True)
         buttons.operator("fluxface.tag_new", text="", icon="ADD")
         buttons.operator("fluxface.tag_delete", text="", icon="REMOVE")
+        for sentence in ledger.of_present(context):
+            paragraph(context, layout, sentence, "ERROR")
         tag = tags.active(context.scene)
         if tag is None:
             paragraph(context, layout, "Select faces in edit mode and press + to make a tag of them.", "INFO")
@@ -97,6 +91,8 @@ class UntaggedPanel(Sidebar, bpy.types.Panel):
 
     def draw(self, context: bpy.types.Context) -> None:
         untagged = context.scene.fluxface.untagged
+        row = self.layout.row()
+        row.operator("fluxface.untagged_select", icon="RESTRICT_SELECT_OFF")
         told = words.carries(context.scene, untagged)
         paragraph(context, self.layout, f"Faces without a tag: {told or 'insulated'}.")
         draw_terms(context, self.layout, untagged)

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
+import json
 from types import SimpleNamespace
 
 import pytest
 
 bpy = pytest.importorskip("bpy")
 
-from fluxface.addon import materials, running, study, view, words  # noqa: E402
-from fluxface.addon.panels import contacts, look, part, result, run, sidebar, tags  # noqa: E402
+from fluxface.addon import materials, running, study, upkeep, view, words  # noqa: E402
+from fluxface.addon import tags as face_tags  # noqa: E402
+from fluxface.addon.panels import contacts, history, look, part, result, run, shape, sidebar, tags  # noqa: E402
 from fluxface.addon.panels import study as study_panels  # noqa: E402
 from fluxface.solver.case import CORRELATIONS  # noqa: E402
 from fluxface.solver.physics.fluids import FLUIDS  # noqa: E402
@@ -21,6 +23,7 @@ PREFERENCES = SimpleNamespace(system=SimpleNamespace(ui_scale=1.0))
 PANELS = (
     study_panels.StudyPanel,
     study_panels.AccuracyPanel,
+    shape.ShapePanel,
     part.MaterialPanel,
     part.MaterialDetailsPanel,
     part.VolumeHeatPanel,
@@ -35,11 +38,13 @@ PANELS = (
     result.TagRowsPanel,
     result.PartRowsPanel,
     result.ContactRowsPanel,
+    history.RunsPanel,
 )
 LISTS = {
     "FLUXFACE_UL_tags": tags.TagList,
     "FLUXFACE_UL_contacts": contacts.ContactList,
     "FLUXFACE_UL_table": part.TableList,
+    "FLUXFACE_UL_runs": history.RunList,
 }
 
 
@@ -121,8 +126,6 @@ def test_tags_show_their_area_and_what_they_carry(scene):
     bpy.ops.fluxface.tag_select()
     bpy.ops.object.mode_set(mode="OBJECT")
     study_panels.study.restore_tags(scene)
-    from fluxface.addon import upkeep
-
     upkeep.refresh()
     told = drawn(scene, tags.TagsPanel)
     assert "12 W" in told
@@ -265,3 +268,31 @@ def test_the_result_of_another_part_is_not_shown(scene):
     block("other", at=(1, 0, 0))
     assert "Hottest" not in drawn(scene)
     assert view.has_result(bpy.data.objects["lamp"])
+
+
+def test_what_is_amiss_with_the_shape_and_the_tags_is_told(scene):
+    part_ = lamp(scene)
+    bpy.ops.fluxface.run()
+    view.settings_of(scene).showing = "PART"
+    finding = {"message": "It is open.", "mend": "Fill it.", "severity": "error", "faces": [1], "points": []}
+    part_.fluxface.findings = json.dumps([finding])
+    part_.fluxface.inspected = part_.fluxface.body
+    told = drawn(scene, shape.ShapePanel)
+    assert "It is open.\nFill it.\n(Show It)\n(Mend This Mesh)" in told
+    assert "80 mm × 60 mm × 20 mm" in told
+    assert "96 cm³" in told
+    part_.fluxface.inspected = ""
+    assert "being looked at" in drawn(scene, shape.ShapePanel).lower()
+    face_tags.give(part_.data, side(part_, "-z"), 0)
+    upkeep.refresh()
+    assert "'pad' has no faces any more" in drawn(scene, tags.TagsPanel).replace("\n", " ")
+    assert "(Select Untagged Faces)" in drawn(scene, tags.UntaggedPanel)
+
+
+def test_kept_runs_are_listed(scene):
+    part_ = lamp(scene)
+    bpy.ops.fluxface.run()
+    told = drawn(scene, history.RunsPanel)
+    assert "12 W" in told
+    part_.fluxface.outcome.lost = True
+    assert "not where it was" in drawn(scene, history.RunsPanel).replace("\n", " ")

@@ -111,7 +111,8 @@ def test_a_foreign_attribute_of_that_name_is_told_and_kept(scene):
 
 def evaluated_area(part: bpy.types.Object) -> dict[int, float]:
     depsgraph = bpy.context.evaluated_depsgraph_get()
-    return parts.placed(parts.modelled(part, depsgraph), parts.world_matrix(part), 1.0).area_by_tag()
+    areas = parts.placed(parts.modelled(part, depsgraph), parts.world_matrix(part), 1.0).area_by_tag()
+    return {uid: area for uid, area in areas.items() if uid}
 
 
 # What each edit makes of the area of the lid, 0.08 by 0.06.

@@ -1,0 +1,103 @@
+"""What is amiss with a part's shape: shown on it, and mended."""
+
+from __future__ import annotations
+
+import bpy
+from bpy.props import IntProperty
+
+from ...solver.errors import Trouble
+from .. import inspection, jobs, mending, places, study, tags
+from .telling import Finish, TellsTrouble, WorksBeside
+
+
+class ShowFinding(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.finding_show"
+    bl_label = "Show It"
+    bl_description = "Select the faces this is about, in edit mode, and bring them into view"
+    bl_options = {"REGISTER", "UNDO"}
+
+    which: IntProperty(options={"HIDDEN"})
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        part = study.active_part(context)
+        if part is None or not inspection.findings(part):
+            cls.poll_message_set("Nothing was found amiss with the active part")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        part = study.active_part(context)
+        finding = inspection.findings(part)[self.which]
+        places.show(context, part, finding["faces"], finding["points"])
+
+
+class MendMesh(WorksBeside, bpy.types.Operator):
+    bl_idname = "fluxface.mend"
+    bl_label = "Mend This Mesh"
+    bl_description = (
+        "Weld, turn, close and untangle the part's own mesh until it bounds a solid; tags, materials and shading stay "
+        "on their faces, other layers such as UV maps do not"
+    )
+    bl_options = {"REGISTER"}
+    undo_step = "Mend This Mesh"
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        part = study.active_part(context)
+        reason = _unfit(part)
+        if reason:
+            cls.poll_message_set(reason)
+            return False
+        return super().poll(context)
+
+    def start(self, context: bpy.types.Context) -> tuple[jobs.Job, Finish]:
+        begun = mending.start(context, study.active_part(context))
+
+        def finish(ending: jobs.Ending) -> Trouble | None:
+            trouble, said = mending.finish(begun, ending)
+            state = context.window_manager.fluxface
+            state.mended = trouble.message if trouble else " ".join(said) or "Nothing had to be mended."
+            return trouble
+
+        return begun.job, finish
+
+
+def _unfit(part: bpy.types.Object | None) -> str:
+    """Why a part's mesh cannot be mended, or nothing."""
+    if part is None:
+        return "Make the part the active object"
+    if part.data.library is not None or part.library is not None:
+        return "The part is linked from another file; mend it there"
+    if part.data.users > 1:
+        return "Other objects share this mesh: make it a single user first (Object, Relations, Make Single User)"
+    if part.modifiers:
+        return "Apply the modifiers first: what is solved is the shape that they make"
+    if part.data.shape_keys:
+        return "Remove the shape keys first"
+    return ""
+
+
+class SelectUntagged(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.untagged_select"
+    bl_label = "Select Untagged Faces"
+    bl_description = "Select the faces that are in no tag, in edit mode"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if study.active_part(context) is None:
+            cls.poll_message_set("Make the part the active object")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        part = study.active_part(context)
+        places.enter_edit_mode(context, part)
+        free = tags.read(part.data) == 0
+        if not free.any():
+            raise Trouble("case", f"Every face of '{part.name}' is in a tag.", "")
+        tags.select(part.data, free)
+
+
+register, unregister = bpy.utils.register_classes_factory((ShowFinding, MendMesh, SelectUntagged))
