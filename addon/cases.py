@@ -13,7 +13,7 @@ from ..solver.errors import Trouble
 from ..solver.materials import Material
 from . import tags
 from .materials import material_of
-from .parts import Skin, check_solid, modelled, placed, world_matrix
+from .parts import Skin, check_real, check_solid, modelled, placed, world_matrix
 from .properties import ContactSettings, StudySettings, TagDefinition, Terms
 from .units import as_typed, metres_per_unit
 
@@ -36,6 +36,7 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
     Raises Trouble of kind "case" or "geometry" that says what the designer should change.
     """
     settings, metres = scene.fluxface, metres_per_unit(scene)
+    _check_instancers(scene, parts)
     skins = _skins(scene, parts, depsgraph)
     used = _used_tags(scene, parts, skins)
     untagged = _tag(settings.untagged, "untagged", metres)
@@ -73,8 +74,22 @@ def build_shapes(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], deps
     )
 
 
+def _check_instancers(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object]) -> None:
+    """Find that nothing in the study shows copies of objects, which would be seen and not solved."""
+    collection = scene.fluxface.collection
+    for thing in parts if collection is None else collection.all_objects:
+        if thing.instance_type != "NONE":
+            raise Trouble(
+                "case",
+                f"'{thing.name}' shows instances, which are not solved.",
+                "Make them real (Object, Apply, Make Instances Real), or take it out of the collection of the parts.",
+            )
+
+
 def _skins(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgraph: bpy.types.Depsgraph) -> list[Skin]:
     metres = metres_per_unit(scene)
+    for part in parts:
+        check_real(part, depsgraph)
     skins = [placed(modelled(part, depsgraph), world_matrix(part), metres) for part in parts]
     for part, surface in zip(parts, skins, strict=True):
         check_solid(part, surface)

@@ -118,6 +118,21 @@ def _uids(base: bpy.types.Mesh, evaluated: bpy.types.Mesh) -> np.ndarray:
     return modelled[[tree.find_nearest(polygon.center)[2] for polygon in evaluated.polygons]]
 
 
+def check_real(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
+    """Find that the part is its mesh alone.
+
+    Raises Trouble of kind "geometry" when its geometry nodes leave instances, which are seen and have no faces.
+    """
+    if not any(modifier.type == "NODES" and modifier.show_viewport for modifier in part.modifiers):
+        return
+    if any(seen.is_instance and seen.parent.original == part for seen in depsgraph.object_instances):
+        raise Trouble(
+            "geometry",
+            f"The geometry nodes of '{part.name}' make instances, which are not solved.",
+            "End them with the node Realize Instances.",
+        )
+
+
 def check_solid(part: bpy.types.Object, surface: Skin) -> None:
     """Find the part to be a body.
 
