@@ -5,6 +5,7 @@ from __future__ import annotations
 import atexit
 import contextlib
 import importlib.util
+import itertools
 import json
 import os
 import queue
@@ -18,7 +19,7 @@ from collections import deque
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import IO
+from typing import IO, Any
 
 from ..solver import errors
 from ..solver.errors import Trouble
@@ -104,6 +105,10 @@ class Job:
             return Ending(cancelled=True)
         return Ending(said=self._said) if code == 0 else Ending(_trouble(code, self._stderr))
 
+    @property
+    def was_cancelled(self) -> bool:
+        return self._cancelled
+
     def cancel(self) -> None:
         """End the solver and all it started; a second call does nothing more."""
         self._cancelled = True
@@ -113,6 +118,66 @@ class Job:
         """Return when the solver has ended, or after SECONDS_TO_END."""
         with contextlib.suppress(subprocess.TimeoutExpired):
             self._process.wait(SECONDS_TO_END)
+
+
+class Worker(Job):
+    """The solver that stays: it is asked, and goes on until it is told to end or nobody asks any more."""
+
+    def __init__(self) -> None:
+        """Raises Trouble when the solver or one of its libraries is missing."""
+        super().__init__(command("work"), environment())
+        self._numbers = itertools.count(1)
+        self.answers: dict[int, dict[str, Any]] = {}
+
+    def ask(self, **request: str) -> Request:
+        """Raises OSError when the worker has ended."""
+        number = next(self._numbers)
+        self._process.stdin.write(json.dumps({"id": number, **request}) + "\n")
+        self._process.stdin.flush()
+        self.progress = Progress("mesh", 0.0, "Starting")
+        return Request(self, number)
+
+    def take_in(self) -> Ending | None:
+        """What the worker has said since the last call; its ending, if it has ended."""
+        while not self._lines.empty():
+            line = self._lines.get()
+            self.progress = _progress(line) or self.progress
+            said = _answer(line)
+            if said is not None:
+                self.answers[said["id"]] = said
+        return self.poll()
+
+    @property
+    def has_ended(self) -> bool:
+        return self._process.poll() is not None
+
+
+class Request:
+    """One thing asked of the worker, seen as a job of its own."""
+
+    def __init__(self, worker: Worker, number: int) -> None:
+        self._worker, self._number = worker, number
+
+    @property
+    def progress(self) -> Progress:
+        return self._worker.progress
+
+    def poll(self) -> Ending | None:
+        """Take in what the worker has said since the last call; the ending of this request once there is one."""
+        ended = self._worker.take_in()
+        answer = self._worker.answers.pop(self._number, None)
+        if answer is not None and not self._worker.was_cancelled:
+            return Ending() if answer["code"] == 0 else Ending(_trouble_of(answer["trouble"]))
+        if ended is None:
+            return None
+        return ended if ended.cancelled or ended.trouble else Ending(_trouble(0, ()))
+
+    def cancel(self) -> None:
+        """End the worker with all it started: the next request starts another."""
+        self._worker.cancel()
+
+    def wait(self) -> None:
+        self._worker.wait()
 
 
 # The processes that must not outlive the host; no other code reads it.
@@ -128,12 +193,17 @@ def stop_all() -> None:
         _live.discard(job)
 
 
-def solve(case: Path, result: Path) -> Job:
-    """Start the solver on a case folder.
+def solve(case: Path, result: Path) -> Request:
+    """Have the worker solve a case folder; one is started where none stays from an earlier run.
 
     Raises Trouble when it or one of its libraries is missing.
     """
-    return Job(command("solve", str(case), "--out", str(result), "--progress", "json"), environment())
+    request = {"do": "solve", "case": str(case.resolve()), "out": str(result.resolve())}
+    staying = next((job for job in _live if isinstance(job, Worker) and not job.has_ended), None)
+    if staying is not None:
+        with contextlib.suppress(OSError):
+            return staying.ask(**request)
+    return Worker().ask(**request)
 
 
 def check(case: Path) -> Job:
@@ -216,9 +286,7 @@ def _trouble(code: int, stderr: Iterable[str]) -> Trouble:
     """What the solver said on its last line; if it said nothing of the kind, that it broke off."""
     lines = [line for line in stderr if line.strip()]
     try:
-        said = json.loads(lines[-1])
-        where = said["where"]
-        return Trouble(said["kind"], said["message"], said["mend"], where["faces"], where["points"])
+        return _trouble_of(json.loads(lines[-1]))
     except (IndexError, ValueError, KeyError, TypeError):
         pass
     if lines and code > 0:
@@ -232,6 +300,20 @@ def _trouble(code: int, stderr: Iterable[str]) -> Trouble:
         "The solver was stopped before it was done.",
         "Run again; if it happens again, give a coarser mesh: memory may not suffice.",
     )
+
+
+def _trouble_of(said: dict[str, Any]) -> Trouble:
+    where = said["where"]
+    return Trouble(said["kind"], said["message"], said["mend"], where["faces"], where["points"])
+
+
+def _answer(line: str) -> dict[str, Any] | None:
+    """The last line of an answer of the worker; progress and what a library prints are none."""
+    try:
+        said = json.loads(line)
+        return said if isinstance(said, dict) and {"id", "code"} <= said.keys() else None
+    except ValueError:
+        return None
 
 
 def _own_group() -> dict:

@@ -1,7 +1,7 @@
 """The solver's command line in a process that ends with its parent: ``python solver_process.py PACKAGE ARGUMENT...``
 
-The parent holds the other end of this process's stdin and never writes to it, so that its end, however it comes, is
-seen as the end of the stream. Processes that this one started end with it, when it leads a group of its own.
+The parent holds the other end of this process's stdin, so that its end, however it comes, is seen as the end of the
+stream. Processes that this one started end with it, when it leads a group of its own.
 """
 
 from __future__ import annotations
@@ -24,5 +24,6 @@ def end_with_parent() -> None:
 
 if __name__ == "__main__":
     package = sys.argv.pop(1)
-    threading.Thread(target=end_with_parent, daemon=True).start()
+    if sys.argv[1] != "work":  # which is written to, and sees the end of the stream by itself
+        threading.Thread(target=end_with_parent, daemon=True).start()
     runpy.run_module(package, run_name="__main__", alter_sys=True)

@@ -60,6 +60,8 @@ def _parser() -> argparse.ArgumentParser:
     mending.add_argument("--out", type=Path, metavar="CASE2", required=True, help="the case folder to write")
     mending.add_argument("--json", action="store_true", help="tell what was done as JSON")
     mending.set_defaults(run=_mend)
+    working = commands.add_parser("work", help="stay, and answer requests on stdin, as the add-on sends them")
+    working.set_defaults(run=_work)
     # Its options are the add-on's, which has its own reader of them.
     commands.add_parser("render", help="solve a .blend file and render its result, in Blender", add_help=False)
     packing_up = commands.add_parser("pack", help="build the extension to install in the 3D suite")
@@ -94,6 +96,12 @@ def _check(options: argparse.Namespace) -> None:
     with _findings_told(case, options.json):
         measures = pipeline.checked_summary(case, pipeline.check(case))
     print(json.dumps(measures) if options.json else _told_of_check(measures))
+
+
+def _work(_options: argparse.Namespace) -> None:
+    from .worker import work
+
+    work()
 
 
 def _inspect(options: argparse.Namespace) -> None:

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from . import memory
 from .answers import report
 from .case import Case, Surface, Tag
 from .errors import Trouble
@@ -20,6 +21,7 @@ from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.sizing import sizes_at
 from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, united, weld
 from .geometry.tetrahedra import fill
+from .keeping import Kept
 from .physics import steady
 from .physics.film import film_law
 from .physics.problem import adrift, check_sheds_heat, faces, put_together
@@ -256,6 +258,21 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
     return bodies, mesh
 
 
+def _meshing_inputs(case: Case) -> tuple[Any, ...]:
+    """All that the mesh of a case depends on; values of loads and materials are not among it."""
+    return (
+        *vars(case.surface).values(),
+        case.accuracy,
+        [part.name for part in case.parts],
+        [(tag.name, tag.size, _brings_heat(tag)) for tag in (*case.tags, case.untagged)],
+        [(contact.parts, contact.gap) for contact in case.contacts],
+    )
+
+
+def _brings_heat(tag: Tag) -> bool:
+    return bool(tag.heat or tag.heat_flux or tag.temperature is not None)
+
+
 def mend(case: Case, progress: Progress = lambda stage, fraction, text: None) -> tuple[Case, list[Body]]:
     """The case with the surfaces of those parts mended that could not be filled as they were; the others as given.
 
@@ -282,21 +299,31 @@ def _is_filled(surface: Surface, index: int, fill: Fill) -> bool:
     return True
 
 
-def solve(case: Case, progress: Progress = lambda stage, fraction, text: None) -> Solved:
-    """Raises Trouble of every kind the contract lists."""
+def solve(case: Case, progress: Progress = lambda stage, fraction, text: None, kept: Kept | None = None) -> Solved:
+    """kept: what earlier cases left to be used again, and where this one leaves its own.
+
+    Raises Trouble of every kind the contract lists.
+    """
     began = time.perf_counter()
-    bodies, mesh = meshed(case, progress)
+    kept = Kept() if kept is None else kept
+    kept.reused.clear()
+    _check_tags(case)
+    bodies, mesh = kept.made("mesh", _meshing_inputs(case), lambda: meshed(case, progress))
+    memory_used = {"mesh": memory.peak()}
     filled = time.perf_counter()
     progress("assemble", 0.0, "putting the terms together")
     problem = put_together(case, mesh)
     check_sheds_heat(problem)
     put = time.perf_counter()
-    solution = steady.solve(problem, progress=lambda fraction, text: progress("solve", fraction, text))
+    solution = steady.solve(problem, kept=kept, progress=lambda fraction, text: progress("solve", fraction, text))
+    memory_used["solve"] = memory.peak()
     solved = time.perf_counter()
     progress("write", 0.0, "summing up")
     summary = report.summary(problem, solution)
     field = report.field(problem, solution)
     summary["mending"] = mending(case, bodies)
+    summary["reused"] = list(kept.reused)
+    summary["memory"] = {**memory_used, "report": memory.peak()}
     summary["warnings"] += mending_warnings(bodies) + _unnamed_contacts(case, [body.surface for body in bodies])
     ended = time.perf_counter()
     summary["seconds"] = {

@@ -26,6 +26,7 @@ from ..fem.linear_algebra import LinearSolver
 from ..fem.mesh import Mesh
 from ..fem.multigrid import midside_interpolation
 from ..fem.volume import heat_load
+from ..keeping import Kept
 from .conduction import TabledConduction, constant_conduction, is_constant, tabled_conduction
 from .contact import Bond, Conductance
 from .laws import Law, Linear, flux_and_slope
@@ -91,11 +92,11 @@ class System:
         return [self.matrix @ rise - self.load, *(residual for residual, _ in found)], tangent
 
 
-def assembled(problem: Problem, reference: float) -> System:
+def assembled(problem: Problem, reference: float, kept: Kept | None = None) -> System:
     """The system of all terms of the problem, temperatures counted from ``reference`` (K)."""
+    kept = Kept() if kept is None else kept
     mesh, parts = problem.mesh, problem.case.parts
     load = heat_load(mesh, problem.volume, problem.heat_density[mesh.cell_part])
-    matrices = []
     nonlinear: list[NonlinearSurface | TabledConduction | Bond] = [
         tabled_conduction(mesh, index, f"the conductivity of '{part.name}'", part.material)
         for index, part in enumerate(parts)
@@ -104,17 +105,40 @@ def assembled(problem: Problem, reference: float) -> System:
     for patch in problem.patches:
         for kind, law in patch.laws.items():
             if isinstance(law, Linear):
-                matrices += [film_matrix(patch.points, law.coefficient)] if law.coefficient else []
                 load = load + flux_load(patch.points, law.flux(np.full(1, reference), patch.facets[:1]))
             else:
                 nonlinear.append(NonlinearSurface(f"the {kind} of '{patch.name}'", patch.points, law))
-    for contact in problem.contacts:
-        if isinstance(contact, Conductance) or contact.is_constant:
-            matrices.append(contact.residual_and_tangent(np.zeros(len(mesh.nodes)))[1])
-        else:
-            nonlinear.append(contact)
-    matrices.append(constant_conduction(mesh, [part.material for part in parts]))
-    return System(reference, reduce(add, matrices), load, tuple(nonlinear))
+    nonlinear += [contact for contact in problem.contacts if isinstance(contact, Bond) and not contact.is_constant]
+    matrix = kept.made("matrix", _matrix_inputs(problem), lambda: _linear_matrix(problem, kept))
+    return System(reference, matrix, load, tuple(nonlinear))
+
+
+def _linear_matrix(problem: Problem, kept: Kept) -> csr_array:
+    """(N, N) W/K of all terms that are linear in the temperature."""
+    mesh, materials = problem.mesh, [part.material for part in problem.case.parts]
+    matrices = [
+        film_matrix(patch.points, law.coefficient)
+        for patch in problem.patches
+        for law in patch.laws.values()
+        if isinstance(law, Linear) and law.coefficient
+    ]
+    matrices += [
+        contact.residual_and_tangent(np.zeros(len(mesh.nodes)))[1]
+        for contact in problem.contacts
+        if isinstance(contact, Conductance) or contact.is_constant
+    ]
+    inputs = (mesh.nodes, mesh.cells, mesh.cell_part, materials)
+    conduction = kept.made("conduction", inputs, lambda: constant_conduction(mesh, materials))
+    # The large one last: adding copies.
+    return reduce(add, [*matrices, conduction])
+
+
+def _matrix_inputs(problem: Problem) -> tuple[object, ...]:
+    """All that the linear terms' matrix depends on; loads are not among it."""
+    mesh, case = problem.mesh, problem.case
+    films = [[law.coefficient for law in patch.laws.values() if isinstance(law, Linear)] for patch in problem.patches]
+    materials = [part.material for part in case.parts]
+    return (mesh.nodes, mesh.cells, mesh.cell_part, mesh.boundary_tag, materials, case.contacts, films)
 
 
 def balanced_temperature(problem: Problem) -> float:
@@ -152,17 +176,30 @@ def heat_through(problem: Problem, temperature: np.ndarray) -> list[dict[str, fl
     ]
 
 
-def solve(problem: Problem, start: float | None = None, progress: Progress = lambda fraction, text: None) -> Solution:
-    """The steady temperatures; start: K, uniform, chosen if None.
+def solve(
+    problem: Problem,
+    start: float | None = None,
+    progress: Progress = lambda fraction, text: None,
+    kept: Kept | None = None,
+) -> Solution:
+    """The steady temperatures; start: K, uniform, chosen if None. kept: matrices and solvers of earlier problems.
 
     Raises Trouble of kind "unconverged" that says which term fought.
     """
     began = time.perf_counter()
-    system = assembled(problem, balanced_temperature(problem) if start is None else start)
+    kept = Kept() if kept is None else kept
+    system = assembled(problem, balanced_temperature(problem) if start is None else start, kept)
     assembly_seconds = time.perf_counter() - began
     nodes, held, _ = held_nodes(problem)
     free = np.delete(np.arange(len(problem.mesh.nodes)), nodes)
-    linear_solver = LinearSolver(system.symmetric, _free_interpolation(problem.mesh, free))
+
+    def new_solver() -> LinearSolver:
+        return LinearSolver(system.symmetric, _free_interpolation(problem.mesh, free))
+
+    # What a nonlinear problem's solver was set up for is gone with its last iterate.
+    linear = not system.nonlinear
+    linear_solver = kept.made("solver", (kept.digest("matrix"), nodes), new_solver) if linear else new_solver()
+    iterations_before = linear_solver.iterations
     reduction = NEWTON_REDUCTION if system.nonlinear else LINEAR_REDUCTION
 
     rise = np.zeros(len(problem.mesh.nodes))
@@ -189,7 +226,7 @@ def solve(problem: Problem, start: float | None = None, progress: Progress = lam
         reaction=iterate.residual,
         method=linear_solver.method,
         steps=steps,
-        iterations=linear_solver.iterations,
+        iterations=linear_solver.iterations - iterations_before,
         relative_residual=share,
         assembly_seconds=assembly_seconds,
     )

@@ -14,8 +14,11 @@ import pytest
 
 bpy = pytest.importorskip("bpy")
 
+from cases import case_of  # noqa: E402
 from fluxface.addon import jobs  # noqa: E402
+from fluxface.solver.case import Convection, Tag, write_case  # noqa: E402
 from fluxface.solver.errors import Trouble  # noqa: E402
+from shapes import box, facing, tagged  # noqa: E402
 
 SECONDS_MAX = 20.0
 
@@ -174,3 +177,75 @@ def test_an_older_result_is_put_back_after_an_end_in_mid_writing(tmp_path):
     jobs.clear_remains(tmp_path / "result")
     assert [path.name for path in tmp_path.iterdir()] == ["result"]
     assert (tmp_path / "result" / "summary.json").exists()
+
+
+# The worker -----------------------------------------------------------------------------------------------------------
+
+
+def cube(folder: Path, heat: float = 1.0) -> Path:
+    """The case folder of an invented cube, coarse."""
+    surface = tagged(tagged(box((0.02, 0.02, 0.02)), 0, facing("-z")), 1, facing("+z"))
+    air = Tag("air", convection=Convection(ambient=300.0, coefficient=10.0))
+    write_case(case_of(surface, [Tag("pad", heat=heat), air], order=1, size=0.005), folder)
+    return folder
+
+
+def workers() -> list[jobs.Worker]:
+    return [job for job in jobs._live if isinstance(job, jobs.Worker)]
+
+
+@pytest.fixture
+def no_worker():
+    jobs.stop_all()
+    yield
+    jobs.stop_all()
+
+
+def test_one_worker_serves_run_after_run(tmp_path, no_worker):
+    for heat in (1.0, 2.0):
+        case = cube(tmp_path / "case", heat)
+        assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+        assert (case / "result" / "summary.json").is_file()
+    assert len(workers()) == 1
+    summary = json.loads((tmp_path / "case" / "result" / "summary.json").read_text())
+    assert summary["reused"] == ["mesh", "matrix"]
+    assert summary["balance"]["in"] == pytest.approx(2.0)
+
+
+def test_a_worker_that_was_killed_is_followed_by_another(tmp_path, no_worker):
+    case = cube(tmp_path / "case")
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+    (worker,) = workers()
+    os.kill(worker._process.pid, signal.SIGKILL)
+    worker._process.wait()
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="stops a process by a signal")
+def test_a_worker_killed_while_it_is_asked_is_told_and_the_next_run_works(tmp_path, no_worker):
+    case = cube(tmp_path / "case")
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+    (worker,) = workers()
+    os.kill(worker._process.pid, signal.SIGSTOP)
+    request = jobs.solve(case, case / "result")
+    os.kill(worker._process.pid, signal.SIGKILL)
+    assert ending_of(request).trouble.message == "The solver was stopped before it was done."
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+
+
+def test_cancelling_ends_the_worker_and_leaves_the_older_result(tmp_path, no_worker):
+    case = cube(tmp_path / "case")
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+    (worker,) = workers()
+    request = jobs.solve(case, case / "result")
+    request.cancel()
+    assert ending_of(request) == jobs.Ending(cancelled=True)
+    assert worker.has_ended
+    jobs.clear_remains(case / "result")
+    assert (case / "result" / "summary.json").is_file()
+
+
+def test_the_workers_own_trouble_comes_through_whole(tmp_path, no_worker):
+    trouble = ending_of(jobs.solve(tmp_path / "none", tmp_path / "result")).trouble
+    assert trouble.kind == "case"
+    assert trouble.message.startswith("case.json cannot be read")
