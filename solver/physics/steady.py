@@ -136,7 +136,9 @@ def _linear_matrix(problem: Problem, kept: Kept) -> csr_array:
 def _matrix_inputs(problem: Problem) -> tuple[object, ...]:
     """All that the linear terms' matrix depends on; loads are not among it."""
     mesh, case = problem.mesh, problem.case
-    films = [[law.coefficient for law in patch.laws.values() if isinstance(law, Linear)] for patch in problem.patches]
+    films = [
+        sum(law.coefficient for law in patch.laws.values() if isinstance(law, Linear)) for patch in problem.patches
+    ]
     materials = [part.material for part in case.parts]
     return (mesh.nodes, mesh.cells, mesh.cell_part, mesh.boundary_tag, materials, case.contacts, films)
 

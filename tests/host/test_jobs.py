@@ -208,7 +208,7 @@ def test_one_worker_serves_run_after_run(tmp_path, no_worker):
         assert (case / "result" / "summary.json").is_file()
     assert len(workers()) == 1
     summary = json.loads((tmp_path / "case" / "result" / "summary.json").read_text())
-    assert summary["reused"] == ["mesh", "matrix"]
+    assert summary["reused"] == ["mesh", "matrix", "solver"]
     assert summary["balance"]["in"] == pytest.approx(2.0)
 
 

@@ -33,15 +33,16 @@ def with_tags(case: Case, *tags: Tag) -> Case:
     return replace(case, tags=tags)
 
 
+ALL = ["mesh", "matrix", "solver"]
 CHANGES: dict[str, tuple[Callable[[Case], Case], list[str]]] = {
-    "nothing": (lambda case: case, ["mesh", "matrix", "solver"]),
+    "nothing": (lambda case: case, ALL),
     "watts": (
         lambda case: with_tags(case, replace(case.tags[0], heat=5.0), case.tags[1]),
-        ["mesh", "matrix", "solver"],
+        ALL,
     ),
     "ambient": (
         lambda case: with_tags(case, case.tags[0], Tag("top", convection=replace(AIR, ambient=310.0))),
-        ["mesh", "matrix", "solver"],
+        ALL,
     ),
     "film": (
         lambda case: with_tags(case, case.tags[0], Tag("top", convection=replace(AIR, coefficient=20.0))),
@@ -57,7 +58,7 @@ CHANGES: dict[str, tuple[Callable[[Case], Case], list[str]]] = {
     ),
     "heat in the volume": (
         lambda case: replace(case, parts=(replace(case.parts[0], heat=1.0),)),
-        ["mesh", "matrix", "solver"],
+        ALL,
     ),
     "held": (lambda case: with_tags(case, Tag("pad", temperature=350.0), case.tags[1]), ["mesh", "matrix"]),
     "shape": (lambda case: lamp(0.06), []),
