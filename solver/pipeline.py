@@ -16,7 +16,7 @@ from .errors import Trouble
 from .fem.mesh import Mesh, joined, ordered, quadratic
 from .geometry.carrying import tag_areas
 from .geometry.inspection import Finding, bounds_solid, inspected
-from .geometry.mending import Mended, mended
+from .geometry.mending import Mended, may_be_mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.sizing import sizes_at
 from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, united, weld
@@ -239,7 +239,7 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
                 meshes.append(filled(body.surface, index))
                 continue
             except Trouble as trouble:
-                if trouble.kind != "geometry":
+                if not may_be_mended(trouble):
                     raise
             # A surface in which nothing is found amiss can be refused all the same.
             bodies[index] = body = _mended_body(case, index, body.surface, body.findings, filled)
@@ -293,7 +293,7 @@ def _is_filled(surface: Surface, index: int, fill: Fill) -> bool:
     try:
         fill(surface, index)
     except Trouble as trouble:
-        if trouble.kind != "geometry":
+        if not may_be_mended(trouble):
             raise
         return False
     return True

@@ -36,8 +36,10 @@ NODES_PER_CORNER = {1: 1.0, 2: 7.5}
 # Radians: triangles that meet at less are one plane. Between the rounding of single-precision coordinates on a flat
 # face and the turn from one facet to the next of the finest curved surface.
 FLAT = 3e-4
+FLATTEST = 1e-11  # of the cube of the longest edge: the least volume of a cell
 REACH = 1e-6  # of the unit diagonal: how far a boundary triangle's middle may lie from its modelled face
-SECONDS, SECONDS_BY_DEFAULT = 900, 120
+# s: where a size is given, and where it is ours to choose, with so much more for each triangle.
+SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 30, 4e-4
 # Axes that no modelled edge follows.
 ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
 
@@ -78,6 +80,7 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
     boundary = outer_faces(cells)
     marker = _markers_of(boundary, found["faces"], found["markers"], len(found["points"]))
     points, cells, boundary = _used(found["points"], cells, boundary)
+    _check_cells(points, cells, name, centre, scale)
     _check_faithful(points, boundary, marker, corners, markers, name)
     tag_of = np.empty(patches.max() + 1, np.int32)
     tag_of[patches] = unit.tag
@@ -140,7 +143,7 @@ def _tetrahedralise(
     # s0: no smoothing pass, which takes most of the time; the bound of 10 degrees removes the slivers it would.
     # A: number the regions, so that cavities can be told from solid.
     switches = f"pq{shape}a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{added}Q"
-    seconds = SECONDS if accuracy.size else SECONDS_BY_DEFAULT
+    seconds = SECONDS if accuracy.size else round(SECONDS_BY_DEFAULT + SECONDS_PER_FACE * len(unit.triangles))
     refusals = []
     for attempt in ATTEMPTS:
         axes = ASKEW if attempt.turned else np.eye(3)
@@ -162,7 +165,7 @@ def _tetrahedralise(
             found["points"] = found["points"] @ axes.T
             found["points"][: len(unit.vertices)] = unit.vertices
         return found
-    raise _refusal(name, refusals, seconds)
+    raise _refusal(name, refusals, seconds) from refusals[-1]
 
 
 def _refusal(name: str, refusals: list[Apart], seconds: float) -> Trouble:
@@ -243,6 +246,21 @@ def _used(points: np.ndarray, cells: np.ndarray, boundary: np.ndarray) -> tuple[
     """Without the points that no cell uses."""
     used, numbers = np.unique(cells, return_inverse=True)
     return points[used], numbers.reshape(cells.shape).astype(np.int32), np.searchsorted(used, boundary).astype(np.int32)
+
+
+def _check_cells(points: np.ndarray, cells: np.ndarray, name: str, centre: np.ndarray, scale: float) -> None:
+    """Refuse a mesh with cells so flat that their gradients are rounding alone."""
+    corners = points[cells]
+    sides = corners[:, 1:] - corners[:, :1]
+    longest = np.linalg.norm(corners[:, [0, 0, 0, 1, 1, 2]] - corners[:, [1, 2, 3, 2, 3, 3]], axis=2).max(axis=1)
+    flat = np.linalg.det(sides) / 6 < FLATTEST * longest**3
+    if flat.any():
+        raise Trouble(
+            "geometry",
+            f"Tetrahedra of '{name}' come out flat, as its surface has needle-thin faces or tiny edges.",
+            "Merge vertices or dissolve edges there and run again.",
+            points=(corners[flat].mean(axis=1) * scale + centre).tolist(),
+        )
 
 
 def _check_faithful(

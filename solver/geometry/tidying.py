@@ -5,12 +5,14 @@ Each step takes a surface, already welded, and gives the surface and how many fa
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
 
 from ..case import Surface
 from .boxes import boxes, meeting
+from .crossing import crossings
 from .edges import boundary_sides, edges_of, groups, neighbours, shells
 from .surface import areas, diagonal, enclosed_volume, triangle_corners
 from .winding import closing_cone, windings
@@ -18,7 +20,26 @@ from .winding import closing_cone, windings
 # Flatter triangles than this share of the part's diagonal have no area to speak of.
 FLAT = 1e-6
 STITCHES = 8
+ASIDE = 1e-5  # of the diagonal: how far beside a face its two sides are probed
 SAMPLES_OF_SHELL = 8
+
+
+def tidied(surface: Surface) -> tuple[Surface, tuple[str, ...]]:
+    """The surface with every step of bookkeeping taken, and a sentence on each that changed anything."""
+    steps: tuple[tuple[Callable[[Surface], tuple[Surface, int]], str], ...] = (
+        (without_flat, "Faces without an area were dropped ({})."),
+        (without_doubled, "Doubled faces were dropped ({})."),
+        (stitched, "Edges were split at corners that lie on them ({})."),
+        (without_doubled, "Faces doubled after that were dropped ({})."),
+        (oriented, "Faces that pointed the wrong way were turned ({})."),
+        (without_inner, "Faces that lie within the solid were left out ({})."),
+    )
+    said = []
+    for step, sentence in steps:
+        surface, count = step(surface)
+        if count:
+            said.append(sentence.format(count))
+    return surface, tuple(said)
 
 
 def chosen(surface: Surface, faces: np.ndarray) -> Surface:
@@ -178,16 +199,37 @@ def _shells_inside(vertices: np.ndarray, triangles: np.ndarray, faces: list[np.n
     return inside
 
 
-def with_faces(surface: Surface, triangles: np.ndarray) -> Surface:
-    """The surface and triangles (K, 3) that close its holes, each of the tag and face of a triangle beside it."""
+def without_inner(surface: Surface) -> tuple[Surface, int]:
+    """Without the closed shells that have solid on both their sides; nothing where the surface crosses itself."""
+    shell = shells(surface.triangles)
+    if shell.max(initial=0) == 0 or len(crossings(surface.vertices, surface.triangles, most=1).pairs):
+        return surface, 0
+    corners = triangle_corners(surface)
+    size = areas(corners)
+    order = np.lexsort((-size, shell))
+    largest = order[np.unique(shell[order], return_index=True)[1]]
+    normal = np.cross(corners[largest, 1] - corners[largest, 0], corners[largest, 2] - corners[largest, 0])
+    aside = ASIDE * normal / np.linalg.norm(normal, axis=1, keepdims=True)
+    middle = corners[largest].mean(axis=1)
+    outside, within = (
+        windings(points, surface.vertices, surface.triangles) > 0.5 for points in (middle + aside, middle - aside)
+    )
+    inner = (outside & within)[shell]
+    return chosen(surface, ~inner), int(np.count_nonzero(inner))
+
+
+def with_faces(surface: Surface, triangles: np.ndarray, tagged: bool = True) -> Surface:
+    """The surface and triangles (K, 3) that close its holes, each of the face of a triangle beside it, and of its tag
+    unless they are to have none.
+    """
     if not len(triangles):
         return surface
     near = np.full(len(surface.vertices), -1)
     near[surface.triangles.ravel()] = np.repeat(np.arange(len(surface.triangles)), 3)
-    beside = near[triangles[:, 0]]
-    added = chosen(surface, beside)
+    added = replace(chosen(surface, near[triangles[:, 0]]), triangles=triangles.astype(np.int32))
+    if not tagged:
+        added = replace(added, tag=np.full_like(added.tag, -1))
     return Surface(
         surface.vertices,
-        np.concatenate([surface.triangles, triangles]).astype(np.int32),
-        *(np.concatenate([getattr(surface, key), getattr(added, key)]) for key in ("part", "tag", "face")),
+        *(np.concatenate([getattr(surface, key), getattr(added, key)]) for key in ("triangles", "part", "tag", "face")),
     )

@@ -7,15 +7,16 @@ the closed chain is the signed count of crossings along a ray, from which the co
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from .boxes import boxes, meeting
 from .edges import boundary_sides, edges_of
+from .holes import holes
 from .surface import winding_numbers
 
 COLUMNS = 192  # along each side of the grid of columns that measures a volume
+SAMPLES_OF_COVER = 4000
+LEVEL = 1e-6  # of a cover's extent: flatter ones enclose nothing
 SAMPLES = 4_000_000  # solid angles and crossings treated at once; bounds the memory
 # Any direction no modelled edge follows: rays along it do not run through edges.
 ASKEW = np.linalg.qr(np.array([[0.29, -0.71, 0.37], [0.67, 0.41, -0.53], [-0.13, 0.61, 0.73]]))[0]
@@ -39,21 +40,46 @@ def windings(points: np.ndarray, vertices: np.ndarray, triangles: np.ndarray) ->
 def wound_volume(vertices: np.ndarray, triangles: np.ndarray, reach: np.ndarray) -> float:
     """m3 about which the surface winds by more than one half; to a few tenths of a per cent.
 
-    reach: (2, 3) m, the low and high corner of a box around it. Columns on a jittered grid over that box: measured
-    exactly along each when the surface is closed, else at points. Two surfaces measured over one box compare better
-    than that, as they are met by the same columns.
+    reach: (2, 3) m, the low and high corner of a box around it. Measured exactly along columns on a jittered grid over
+    that box, the holes covered; what the covers make up is found by samples. Two surfaces measured over one box compare
+    better than that, as they are met by the same columns.
     """
-    cone = closing_cone(vertices, triangles)
-    corners = np.concatenate([vertices[triangles], cone])
+    covers = _covers(vertices, triangles)
+    corners = np.concatenate([vertices[triangles], *covers])
     axes = np.argsort(-np.ptp(reach, axis=0), kind="stable")  # the columns run along the shortest side
     if np.linalg.det(np.eye(3)[axes]) < 0:
         axes = axes[[1, 0, 2]]
-    columns = _columns(corners[:, :, axes], reach[:, axes])
-    if not len(cone):
-        return columns.enclosed()
-    cone = cone[:, :, axes]
-    points, winding, share = columns.samples(len(cone))
-    return float(share * np.count_nonzero(winding - _solid_angles(points, cone) > 0.5))
+    return _along_columns(corners[:, :, axes], reach[:, axes]) - _made_up(covers, corners)
+
+
+def _covers(vertices: np.ndarray, triangles: np.ndarray) -> list[np.ndarray]:
+    """(K, 3, 3) for each hole: the triangles that close it."""
+    covers = []
+    for hole in holes(vertices, edges_of(triangles)):
+        rim = vertices[hole.vertices]
+        fan = np.stack([np.roll(rim, -1, axis=0), rim, np.broadcast_to(rim.mean(axis=0), rim.shape)], axis=1)
+        covers.append(vertices[hole.triangles] if len(hole.triangles) else fan)
+    return covers
+
+
+def _made_up(covers: list[np.ndarray], closed: np.ndarray) -> float:
+    """m3 by which what the closed chain of triangles (F, 3, 3) encloses exceeds what it winds about without its covers.
+
+    A cover takes up more than half of the full solid angle only from within its convex hull, so samples in its box do.
+    """
+    boxes_of_covers = [(cover.min(axis=(0, 1)), np.ptp(cover, axis=(0, 1))) for cover in covers]
+    uneven = [i for i, (_, extent) in enumerate(boxes_of_covers) if extent.min() > LEVEL * extent.max()]
+    if not uneven:
+        return 0.0
+    spread = np.random.default_rng(2).random((SAMPLES_OF_COVER, 3))
+    points = np.concatenate([boxes_of_covers[i][0] + spread * boxes_of_covers[i][1] for i in uneven])
+    around = _crossings(points, closed).reshape(len(uneven), -1)
+    excess = 0.0
+    for i, of_closed, some in zip(uneven, around, np.split(points, len(uneven)), strict=True):
+        without = of_closed - _solid_angles(some, covers[i])
+        changed = np.count_nonzero(of_closed > 0.5) - np.count_nonzero(without > 0.5)
+        excess += changed / SAMPLES_OF_COVER * float(boxes_of_covers[i][1].prod())
+    return excess
 
 
 def _solid_angles(points: np.ndarray, corners: np.ndarray) -> np.ndarray:
@@ -99,43 +125,8 @@ def _pierced(corners: np.ndarray, at: np.ndarray) -> tuple[np.ndarray, np.ndarra
     return sign, np.clip(height, corners[:, :, 2].min(axis=1), corners[:, :, 2].max(axis=1))
 
 
-@dataclass(frozen=True)
-class _Columns:
-    """Upright lines at (C, 2), each for ``area`` (m2), and where they meet a closed chain, from below upwards.
-
-    column, height, winding: (H,) of each meeting: its line, and the winding number above it. reach: lowest and highest.
-    """
-
-    at: np.ndarray
-    area: float
-    column: np.ndarray
-    height: np.ndarray
-    winding: np.ndarray
-    reach: tuple[float, float]
-
-    def enclosed(self) -> float:
-        """m3 between meetings where the winding number is 1 or more."""
-        within = self.winding[:-1] >= 1
-        return float(self.area * np.diff(self.height)[within].sum()) if len(self.height) else 0.0
-
-    def samples(self, weight: int, count: int = 12) -> tuple[np.ndarray, np.ndarray, float]:
-        """Points (P, 3), ``count`` to a line, the chain's winding about them (P,), and the volume m3 each stands for.
-
-        Fewer lines are taken the greater the ``weight``, the work at each point.
-        """
-        lines = np.arange(0, len(self.at), max(1, len(self.at) * count * weight // (3 * SAMPLES)))
-        low, high = self.reach
-        span = (high - low) or 1.0
-        fraction = (np.arange(count) + np.random.default_rng(2).random((len(lines), count))) / count
-        keys = self.column + np.clip((self.height - low) / span, 0, 1) * 0.999
-        before = np.searchsorted(keys, (lines[:, None] + fraction * 0.999).ravel()) - 1
-        hit = (before >= 0) & (self.column[before] == np.repeat(lines, count)) if len(keys) else before >= 0
-        winding = np.where(hit, self.winding[before], 0) if len(keys) else np.zeros(len(before))
-        points = np.column_stack([np.repeat(self.at[lines], count, axis=0), low + span * fraction.ravel()])
-        return points, winding, self.area * len(self.at) / len(lines) * span / count
-
-
-def _columns(corners: np.ndarray, reach: np.ndarray) -> _Columns:
+def _along_columns(corners: np.ndarray, reach: np.ndarray) -> float:
+    """m3 about which the closed chain of triangles (F, 3, 3) winds once or more, along upright lines within reach."""
     low, high = reach
     step = np.maximum(high - low, np.finfo(float).tiny)[:2] / COLUMNS
     cells = np.stack(np.meshgrid(np.arange(COLUMNS), np.arange(COLUMNS), indexing="ij"), axis=-1).reshape(-1, 2)
@@ -157,7 +148,5 @@ def _columns(corners: np.ndarray, reach: np.ndarray) -> _Columns:
         pieces.append(np.stack([column[hit], height[hit], sign[hit]]))
     column, height, sign = np.concatenate(pieces, axis=1)
     order = np.lexsort((-sign, height, column))
-    winding = np.cumsum(-sign[order])
-    return _Columns(
-        at, float(step.prod()), column[order].astype(np.int64), height[order], winding, (float(low[2]), float(high[2]))
-    )
+    within = np.cumsum(-sign[order])[:-1] >= 1
+    return float(step.prod() * np.diff(height[order])[within].sum()) if len(order) else 0.0
