@@ -15,6 +15,7 @@ from .case import Case, Surface, Tag
 from .errors import Trouble
 from .fem.mesh import Mesh, joined, ordered, quadratic
 from .geometry.carrying import tag_areas
+from .geometry.closing import ON_THEIR_WORD, UNASKED, Limits
 from .geometry.inspection import Finding, bounds_solid, inspected
 from .geometry.mending import Mended, may_be_mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
@@ -94,9 +95,11 @@ def _body(case: Case, index: int, surface: Surface, fill: Fill) -> Body:
     return Body(surface, found) if bounds_solid(found) else _mended_body(case, index, surface, found, fill)
 
 
-def _mended_body(case: Case, index: int, surface: Surface, found: tuple[Finding, ...], fill: Fill) -> Body:
+def _mended_body(
+    case: Case, index: int, surface: Surface, found: tuple[Finding, ...], fill: Fill, limits: Limits = UNASKED
+) -> Body:
     tags = [tag.name for tag in case.tags]
-    made = mended(surface, case.parts[index].name, tags, lambda candidate: fill(candidate, index))
+    made = mended(surface, case.parts[index].name, tags, lambda candidate: fill(candidate, index), limits)
     return Body(made.surface, found, made)
 
 
@@ -276,14 +279,15 @@ def _brings_heat(tag: Tag) -> bool:
 def mend(case: Case, progress: Progress = lambda stage, fraction, text: None) -> tuple[Case, list[Body]]:
     """The case with the surfaces of those parts mended that could not be filled as they were; the others as given.
 
-    Raises Trouble of kind "geometry" when a part is beyond mending, "limits" when it takes too many nodes.
+    It is asked for, so that holes are closed that solving refuses. Raises Trouble of kind "geometry" when a part is
+    beyond mending, "limits" when it takes too many nodes.
     """
     filled, bodies, surfaces = filling(case, progress), [], []
     for index, part in enumerate(case.parts):
         surface = _welded(case, index)
         body = Body(surface, tuple(inspected(surface, part.name, case.accuracy.size)))
         if not (bounds_solid(body.findings) and _is_filled(surface, index, filled)):
-            body = _mended_body(case, index, surface, body.findings, filled)
+            body = _mended_body(case, index, surface, body.findings, filled, ON_THEIR_WORD)
         bodies.append(body)
         surfaces.append(body.surface if body.mended else one_part(case.surface, index))
     return replace(case, surface=united(surfaces)), bodies

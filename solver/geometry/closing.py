@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -13,17 +14,30 @@ from .holes import Hole, holes
 from .surface import areas, triangle_corners
 from .tidying import with_faces
 
-# Shares of the surface. A hole up to SMALL is closed and told; closing a larger one is a guess at the shape, which is
-# made with a warning where little can be wrong with it: the rim lies in a plane, or the volume that the open surface
-# winds about is met (which whoever mends checks). Common practice, no source.
-SMALL, ALL_SMALL = 0.03, 0.06
-UNEVEN, ALL_UNEVEN = 0.06, 0.08
-LEVEL, ALL_LEVEL = 0.25, 0.35
 IN_A_PLANE = 1e-3  # of the hole's extent: how far its rim may lie from a plane
 
 
+@dataclass(frozen=True)
+class Limits:
+    """Shares of the surface: the largest hole that is closed, and all of them together.
+
+    level: of holes whose rim lies in a plane. uneven: of others, where closing guesses at the shape.
+    """
+
+    level: float
+    all_level: float
+    uneven: float
+    all_uneven: float
+
+
+# Common practice, no source. What is closed on the designer's word gets a warning each, and whoever mends checks that
+# the volume is the one that the open surface winds about.
+UNASKED = Limits(0.03, 0.06, 0.03, 0.06)
+ON_THEIR_WORD = Limits(0.25, 0.35, 0.06, 0.08)
+
+
 def closed(
-    surface: Surface, name: str, centre: np.ndarray, scale: float
+    surface: Surface, name: str, centre: np.ndarray, scale: float, limits: Limits
 ) -> tuple[Surface, tuple[str, ...], tuple[str, ...]]:
     """The surface, in its unit frame (at ``centre``, ``scale`` m), with its holes closed; what is said, and warned of.
 
@@ -33,19 +47,12 @@ def closed(
     found = holes(surface.vertices, edges_of(surface.triangles))
     if not found:
         return surface, (), ()
-    whole = float(areas(triangle_corners(surface)).sum())
-    share = np.array([hole.area for hole in found]) / whole
+    share = np.array([hole.area for hole in found]) / float(areas(triangle_corners(surface)).sum())
     level = np.array([in_a_plane(surface.vertices[hole.vertices]) for hole in found])
-    small = (share <= SMALL) & (share[share <= SMALL].sum() <= ALL_SMALL)
-    uneven = ~level & ~small
-    if (
-        not all(len(hole.triangles) for hole in found)
-        or share[uneven].max(initial=0) > UNEVEN
-        or (uneven.any() and share[~level].sum() > ALL_UNEVEN)
-        or share[level].max(initial=0) > LEVEL
-        or share.sum() > ALL_LEVEL
-    ):
-        raise open_trouble(surface, name, centre, scale)
+    closable = all(len(hole.triangles) for hole in found)
+    if not (closable and _are_within(limits, share, level)):
+        raise open_trouble(surface, name, centre, scale, closable and _are_within(ON_THEIR_WORD, share, level))
+    small = (share <= UNASKED.level) & (share[share <= UNASKED.level].sum() <= UNASKED.all_level)
     made, said, warnings = surface, list[str](), list[str]()
     if small.any():
         made = with_faces(made, _triangles(found, small))
@@ -59,6 +66,16 @@ def closed(
             if not told
         ]
     return made, tuple(said), tuple(warnings)
+
+
+def _are_within(limits: Limits, share: np.ndarray, level: np.ndarray) -> bool:
+    uneven = share[~level]
+    return bool(
+        share.max() <= limits.level
+        and share.sum() <= limits.all_level
+        and uneven.max(initial=0) <= limits.uneven
+        and uneven.sum() <= limits.all_uneven
+    )
 
 
 def _triangles(found: Sequence[Hole], some: np.ndarray) -> np.ndarray:
@@ -84,15 +101,16 @@ def in_a_plane(points: np.ndarray) -> bool:
     return bool(np.abs(around @ normal).max() <= IN_A_PLANE * np.linalg.norm(np.ptp(points, axis=0)))
 
 
-def open_trouble(surface: Surface, name: str, centre: np.ndarray, scale: float) -> Trouble:
-    """That the surface, in its unit frame, is open, and where."""
+def open_trouble(surface: Surface, name: str, centre: np.ndarray, scale: float, on_their_word: bool) -> Trouble:
+    """That the surface, in its unit frame, is open, and where; on_their_word: whether mending when asked would do."""
     edges = edges_of(surface.triangles)
     sides = boundary_sides(edges)
     middles = 0.5 * (surface.vertices[edges.start[sides]] + surface.vertices[edges.end[sides]]) * scale + centre
     return Trouble(
         "geometry",
         f"The surface of '{name}' is open: {len(sides)} edges do not have a face on both sides.",
-        "Close the holes there (select the edges and fill), give sheets a thickness, and run again.",
+        "Close the holes there (select the edges and fill), give sheets a thickness, "
+        f"{'or have the mesh mended, which closes them, ' if on_their_word else ''}and run again.",
         np.unique(surface.face[sides // 3]).tolist(),
         middles.tolist(),
     )

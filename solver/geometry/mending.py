@@ -16,7 +16,7 @@ from ..errors import Trouble
 from ..fem.mesh import Mesh
 from .apart import Apart
 from .carrying import tag_areas
-from .closing import closed
+from .closing import Limits, closed
 from .crossing import crossings
 from .edges import edges_of
 from .ladder import Rung, rungs
@@ -38,8 +38,12 @@ class Mended:
     warnings: tuple[str, ...]
 
 
-def mended(surface: Surface, name: str, tags: Sequence[str], fill: Callable[[Surface], Mesh | None]) -> Mended:
+def mended(
+    surface: Surface, name: str, tags: Sequence[str], fill: Callable[[Surface], Mesh | None], limits: Limits
+) -> Mended:
     """The surface of one part, already welded, mended until ``fill`` takes it. tags: the names of the case's tags.
+
+    limits: on the holes to close.
 
     Raises Trouble of kind "geometry" that names the place when no rung does, and the Trouble of ``fill`` that is none
     of geometry.
@@ -50,7 +54,7 @@ def mended(surface: Surface, name: str, tags: Sequence[str], fill: Callable[[Sur
     wanted = _Wanted(wound_volume(tidy.vertices, tidy.triangles, reach), reach)
     if wanted.volume < 1e-9:
         raise Trouble("geometry", f"'{name}' encloses no volume.", "Give it a thickness, or check its scale.")
-    whole, closing, warnings = closed(tidy, name, centre, scale)
+    whole, closing, warnings = closed(tidy, name, centre, scale, limits)
     missing: list[str] = []
     for rung in rungs(Rung(whole, said + closing), missing):
         if wanted.is_met_by(rung.surface):
