@@ -5,6 +5,10 @@ from __future__ import annotations
 from pathlib import Path
 
 import bpy
+import numpy as np
+
+# How far a view stands from what it looks at, in radii of it; the host's own lens then shows it whole.
+RADII_AWAY = 4.0
 
 
 def user_folder() -> Path:
@@ -34,6 +38,20 @@ def redraw() -> None:
     for window in bpy.context.window_manager.windows:
         for area in window.screen.areas:
             if area.type == "VIEW_3D":
+                area.tag_redraw()
+
+
+def bring_in_view(places: np.ndarray, around: float) -> None:
+    """Let every 3D view look at the middle of world places (P, 3), and at ``around`` of them at least."""
+    middle = 0.5 * (places.min(axis=0) + places.max(axis=0))
+    radius = max(float(np.linalg.norm(places - middle, axis=1).max()), around, 1e-9)
+    for window in bpy.context.window_manager.windows:
+        for area in window.screen.areas:
+            view = area.spaces.active.region_3d if area.type == "VIEW_3D" else None
+            if view is not None:
+                if view.view_perspective == "CAMERA":
+                    view.view_perspective = "PERSP"
+                view.view_location, view.view_distance = middle, RADII_AWAY * radius
                 area.tag_redraw()
 
 

@@ -5,118 +5,169 @@ from __future__ import annotations
 import json
 import tempfile
 from collections.abc import Sequence
+from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
 
 import bpy
 
 from ..solver.case import write_case
 from ..solver.errors import Trouble
-from . import host, jobs
+from . import host, jobs, study
 from .cases import build_shapes
+from .glance import Finding
 from .parts import in_sight
 
+# Longer than an edit takes to be measured: a designer who is at work is not looked at after every move.
+QUIET_SECONDS = 1.5
 SECONDS_BETWEEN_LOOKS = 0.2
 
-Finding = dict[str, Any]
+
+# What is kept with a part ---------------------------------------------------------------------------------------------
 
 
 def is_current(part: bpy.types.Object) -> bool:
-    """Whether what is kept was found on the part as it stands."""
+    """Whether the solver has looked at the part as it stands; before, what is kept was seen at a glance."""
     settings = part.fluxface
     return bool(settings.inspected) and settings.inspected == settings.body
 
 
 def findings(part: bpy.types.Object) -> list[Finding]:
-    """As ``fluxface inspect`` tells them: kind, message, mend, faces, points (m) and severity of each."""
+    """What is amiss with the part, the faces left out: there may be many, and this is asked whenever it is drawn."""
     return json.loads(part.fluxface.findings or "[]")
 
 
-def start(context: bpy.types.Context, parts: Sequence[bpy.types.Object], folder: Path) -> jobs.Job:
-    """Start looking at the parts as they stand.
+def faces_of(part: bpy.types.Object, number: int) -> list[int]:
+    """The faces of one finding, numbered as modifiers left them."""
+    return json.loads(part.fluxface.finding_faces)[number]
 
-    Raises Trouble when a part is no body or the solver is missing.
+
+def keep(part: bpy.types.Object, found: Sequence[Finding], inspected: str) -> None:
+    """inspected: the digest of the body if the solver has found this, or nothing."""
+    settings = part.fluxface
+    settings.findings = json.dumps([{**finding, "faces": len(finding["faces"])} for finding in found])
+    settings.finding_faces = json.dumps([finding["faces"] for finding in found])
+    settings.inspected = inspected
+
+
+def note(part: bpy.types.Object, sentence: str) -> None:
+    """Tell of something that was done to the part, until it is dismissed or the part is solved."""
+    known = part.fluxface.notes.split("\n")
+    if sentence not in known:
+        part.fluxface.notes = "\n".join([*known, sentence]).strip()
+
+
+# The look ------------------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Look:
+    """parts: the host's ids for the session. bodies: their digests when it began. folder: holds the case meanwhile."""
+
+    job: jobs.Job
+    parts: tuple[int, ...]
+    bodies: tuple[str, ...]
+    folder: tempfile.TemporaryDirectory
+
+
+def start(context: bpy.types.Context, parts: Sequence[bpy.types.Object]) -> Look | None:
+    """Start looking at the parts as they stand; what is no body is told at once, and None when nothing is left.
+
+    Raises Trouble when the solver is missing.
     """
-    with in_sight(context, parts) as depsgraph:
-        write_case(build_shapes(context.scene, parts, depsgraph), folder)
-    return jobs.inspect(folder)
+    bodies = _bodies_among(context, parts)
+    if not bodies:
+        return None
+    with in_sight(context, bodies) as depsgraph:
+        case = build_shapes(context.scene, bodies, depsgraph)
+    folder = tempfile.TemporaryDirectory(prefix="fluxface-", ignore_cleanup_errors=True)
+    write_case(case, Path(folder.name))
+    uids = tuple(part.session_uid for part in bodies)
+    return Look(jobs.inspect(Path(folder.name)), uids, tuple(part.fluxface.body for part in bodies), folder)
 
 
-def bodies_among(context: bpy.types.Context, parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:
+def finish(look: Look, ending: jobs.Ending) -> None:
+    """Keep what was found with the parts that are still as they were."""
+    look.folder.cleanup()
+    if ending.trouble or ending.cancelled:
+        return
+    objects = {thing.session_uid: thing for thing in bpy.data.objects}
+    for uid, body, told in zip(look.parts, look.bodies, json.loads(ending.said)["parts"], strict=True):
+        part = objects.get(uid)
+        if part is not None and part.fluxface.body == body:
+            keep(part, told["findings"], body)
+
+
+def _bodies_among(context: bpy.types.Context, parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:
     """Those of ``parts`` that are bodies at all; what keeps the others from it is all that is said of them."""
-    found = []
+    bodies = []
     with in_sight(context, parts) as depsgraph:
         for part in parts:
             try:
                 build_shapes(context.scene, [part], depsgraph)
-                found.append(part)
+                bodies.append(part)
             except Trouble as trouble:
-                no_body = {"message": trouble.message, "mend": trouble.mend, "severity": "error"}
-                _keep(part, part.fluxface.body, [{**no_body, "faces": [], "points": []}])
-    return found
+                told = {"kind": "no body", "message": trouble.message, "mend": trouble.mend, "severity": "error"}
+                keep(part, [{**told, "faces": [], "points": []}], part.fluxface.body)
+    return bodies
 
 
-def keep(parts: Sequence[bpy.types.Object], bodies: Sequence[str], said: str) -> None:
-    """Keep with the parts what was found on ``bodies``, the digests they had when the look began."""
-    for part, body, told in zip(parts, bodies, json.loads(said)["parts"], strict=True):
-        _keep(part, body, told["findings"])
-
-
-def _keep(part: bpy.types.Object, body: str, found: list[Finding]) -> None:
-    part.fluxface.findings, part.fluxface.inspected = json.dumps(found), body
+def unseen(context: bpy.types.Context) -> list[bpy.types.Object]:
+    """The parts in sight that the solver has not looked at as they stand."""
+    try:
+        members = study.parts(context)
+    except Trouble:
+        return []
+    waiting = [part for part in members if part.library is None and part.fluxface.body and not is_current(part)]
+    return [part for part in waiting if part.visible_get()]
 
 
 class Inspector:
-    """One look at a time: a newer shape ends the look at an older one."""
+    """One look at a time: a newer shape ends the look at an older one, and a run ends any."""
 
     def __init__(self) -> None:
-        self._job: jobs.Job | None = None
-        self._folder: tempfile.TemporaryDirectory | None = None
-        self._parts: tuple[int, ...] = ()
-        self._bodies: tuple[str, ...] = ()
+        self._look: Look | None = None
+        # The host knows a timer by its object, and each mention of a method makes a new one.
+        self._timer = self._go_on
 
-    def look(self, parts: Sequence[bpy.types.Object]) -> None:
-        """Look at those of ``parts`` that have changed since they were last looked at; it returns at once."""
-        new = [part for part in parts if part.library is None and part.fluxface.body and not is_current(part)]
-        if tuple(part.fluxface.body for part in new) == self._bodies:
+    def follow(self) -> None:
+        """After an edit was measured: look once all has been quiet for a while, at nothing that is being looked at."""
+        if self._look is not None and self._look.bodies == tuple(part.fluxface.body for part in unseen(bpy.context)):
             return
         self.stop()
-        try:
-            new = bodies_among(bpy.context, new)
-            if not new:
-                return
-            self._folder = tempfile.TemporaryDirectory(prefix="fluxface-", ignore_cleanup_errors=True)
-            self._job = start(bpy.context, new, Path(self._folder.name))
-        except (Trouble, OSError):
-            # Without a solver or room for a case there is nothing to look with, which a run says in full.
-            self.stop()
-            return
-        self._parts = tuple(part.session_uid for part in new)
-        self._bodies = tuple(part.fluxface.body for part in new)
-        bpy.app.timers.register(self._wait, first_interval=SECONDS_BETWEEN_LOOKS)
+        bpy.app.timers.register(self._timer, first_interval=QUIET_SECONDS)
 
     def stop(self) -> None:
-        """End the look that is under way, if one is."""
-        if bpy.app.timers.is_registered(self._wait):
-            bpy.app.timers.unregister(self._wait)
-        if self._job is not None:
-            self._job.cancel()
-            self._job.wait()
-            self._job.poll()
-        if self._folder is not None:
-            self._folder.cleanup()
-        self._job, self._folder, self._parts, self._bodies = None, None, (), ()
+        """End the look that is under way, if one is, and wait for none."""
+        if bpy.app.timers.is_registered(self._timer):
+            bpy.app.timers.unregister(self._timer)
+        self._give_up()
 
-    def _wait(self) -> float | None:
-        ending = self._job.poll()
+    def _give_up(self) -> None:
+        if self._look is not None:
+            self._look.job.cancel()
+            self._look.job.wait()
+            self._look.job.poll()
+            self._look.folder.cleanup()
+        self._look = None
+
+    def _go_on(self) -> float | None:
+        """What the timer calls: the seconds until the next call, or None when there is nothing more to do."""
+        if bpy.context.window_manager.fluxface.running:
+            # A run has the machine for itself.
+            self._give_up()
+            return QUIET_SECONDS
+        if self._look is None:
+            try:
+                self._look = start(bpy.context, unseen(bpy.context))
+            except (Trouble, OSError):
+                # Without a solver or room for a case there is nothing to look with, which a run says in full.
+                return None
+            return None if self._look is None else SECONDS_BETWEEN_LOOKS
+        ending = self._look.job.poll()
         if ending is None:
             return SECONDS_BETWEEN_LOOKS
-        objects = {thing.session_uid: thing for thing in bpy.data.objects}
-        parts = [objects.get(uid) for uid in self._parts]
-        if not (ending.trouble or ending.cancelled) and all(parts):
-            keep(parts, self._bodies, ending.said)
-        self._job = None
-        self.stop()
+        look, self._look = self._look, None
+        finish(look, ending)
         host.redraw()
         return None
 

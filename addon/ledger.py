@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import bpy
 
@@ -41,6 +41,11 @@ def changes(scene: bpy.types.Scene, before: Mapping[int, float], now: Mapping[in
                 f"'{tag.name}' has {area_text(scene, is_now)} now; in the last run it had {area_text(scene, was)}."
             )
     return told
+
+
+def accept(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> None:
+    """Let later areas be compared with the present ones."""
+    study.outcome(scene, members).areas = json.dumps(study.tag_areas(scene, members))
 
 
 def _scaling(before: Mapping[int, float], now: Mapping[int, float]) -> float:

@@ -13,7 +13,7 @@ import numpy as np
 
 from ..solver.case import Surface, read_case, write_case
 from ..solver.errors import Trouble
-from . import jobs, tags, upkeep
+from . import inspection, jobs, tags, upkeep
 from .cases import build_shapes
 from .parts import in_sight, world_matrix
 from .units import metres_per_unit
@@ -25,10 +25,14 @@ FLAT = 1e-3
 
 @dataclass(frozen=True)
 class Mending:
-    """part: the host's id for the session. uids: of the tags of the case, in its order. folder: holds the cases."""
+    """part: the host's id for the session. shape: its digest when it began. uids: of the tags of the case.
+
+    folder: holds the case and the mended one.
+    """
 
     job: jobs.Job
     part: int
+    shape: str
     uids: tuple[int, ...]
     folder: tempfile.TemporaryDirectory
 
@@ -41,28 +45,45 @@ def start(context: bpy.types.Context, part: bpy.types.Object) -> Mending:
     if part.mode == "EDIT":
         part.update_from_editmode()
     with in_sight(context, [part]) as depsgraph:
+        upkeep.measure(part, depsgraph)
         case = build_shapes(context.scene, [part], depsgraph)
     uids = {tag.name: tag.uid for tag in context.scene.fluxface.tags}
     folder = tempfile.TemporaryDirectory(prefix="fluxface-", ignore_cleanup_errors=True)
     write_case(case, Path(folder.name) / "found")
     job = jobs.mend(Path(folder.name) / "found", Path(folder.name) / "mended")
-    return Mending(job, part.session_uid, tuple(uids.get(tag.name, 0) for tag in case.tags), folder)
+    given = tuple(uids.get(tag.name, 0) for tag in case.tags)
+    return Mending(job, part.session_uid, part.fluxface.shape, given, folder)
 
 
-def finish(mending: Mending, ending: jobs.Ending) -> tuple[Trouble | None, list[str]]:
-    """Replace the part's mesh; what kept that from happening, and the sentences that say what was done."""
+def finish(mending: Mending, ending: jobs.Ending) -> Trouble | None:
+    """Replace the part's mesh and tell on the part what was done, or what kept that from happening."""
     with mending.folder as folder:
         part = next((thing for thing in bpy.data.objects if thing.session_uid == mending.part), None)
         if part is None or ending.cancelled:
-            return None, []
-        if ending.trouble:
-            return ending.trouble, []
+            return None
+        trouble = ending.trouble or _changed(mending, part)
+        if trouble:
+            inspection.note(part, f"{trouble.message} {trouble.mend}")
+            return trouble
         measures = json.loads(ending.said)
         said = [*measures["parts"][0]["mending"], *measures["warnings"]]
         if said:
             replace_mesh(bpy.context.scene, part, read_case(Path(folder) / "mended").surface, mending.uids)
+        for sentence in said or ["Nothing had to be mended."]:
+            inspection.note(part, sentence)
     upkeep.refresh()
-    return None, said
+    return None
+
+
+def _changed(mending: Mending, part: bpy.types.Object) -> Trouble | None:
+    """What keeps an edit that was made meanwhile from being overwritten."""
+    with in_sight(bpy.context, [part]) as depsgraph:
+        upkeep.measure(part, depsgraph)
+    if part.fluxface.shape == mending.shape:
+        return None
+    return Trouble(
+        "case", f"'{part.name}' was changed while it was being mended, and was left as it is.", "Mend it again."
+    )
 
 
 def replace_mesh(scene: bpy.types.Scene, part: bpy.types.Object, surface: Surface, uids: tuple[int, ...]) -> None:

@@ -5,13 +5,14 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import bpy
 import numpy as np
-from mathutils.bvhtree import BVHTree
 
 from ..solver.errors import Trouble
 from . import tags
+from .nearest import nearest_uids
 
 # Below this share of what the extent allows, a volume is rounding and not thickness. Common practice, no source.
 FLATNESS = 1e-9
@@ -29,20 +30,29 @@ class Skin:
     uid: np.ndarray
     face: np.ndarray
 
+    @cached_property
     def area_vectors(self) -> np.ndarray:
         """(F, 3): along each triangle's normal, as long as its area."""
-        a, b, c = (self.vertices[self.triangles[:, corner]] for corner in range(3))
-        return 0.5 * np.cross(b - a, c - a)
+        # Coordinate by coordinate: several times quicker than a cross product of rows.
+        places = np.ascontiguousarray(self.vertices.T)
+        a, b, c = (np.take(places, self.triangles[:, corner], axis=1) for corner in range(3))
+        (ux, uy, uz), (vx, vy, vz) = b - a, c - a
+        return 0.5 * np.stack([uy * vz - uz * vy, uz * vx - ux * vz, ux * vy - uy * vx], axis=1)
+
+    @cached_property
+    def areas(self) -> np.ndarray:
+        """(F,) of each triangle."""
+        return np.sqrt(np.einsum("fi,fi->f", self.area_vectors, self.area_vectors))
 
     def volume(self) -> float:
         """Enclosed, by the divergence theorem."""
         centred = self.vertices - self.vertices.mean(axis=0)
-        return float(np.einsum("fi,fi->", centred[self.triangles[:, 0]], self.area_vectors()) / 3.0)
+        return float(np.einsum("fi,fi->", centred[self.triangles[:, 0]], self.area_vectors) / 3.0)
 
     def area_by_tag(self) -> dict[int, float]:
         """Area of each tag that has faces; the untagged ones are 0's."""
         uids, inverse = np.unique(self.uid, return_inverse=True)
-        sums = np.bincount(inverse.ravel(), weights=np.linalg.norm(self.area_vectors(), axis=1), minlength=len(uids))
+        sums = np.bincount(inverse.ravel(), weights=self.areas, minlength=len(uids))
         return dict(zip(uids.tolist(), sums.tolist(), strict=True))
 
 
@@ -79,17 +89,23 @@ def modelled(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> Skin:
     evaluated = part.evaluated_get(depsgraph)
     mesh = evaluated.to_mesh()
     try:
-        mesh.calc_loop_triangles()
-        vertices = np.empty((len(mesh.vertices), 3), np.float32)
-        triangles = np.empty((len(mesh.loop_triangles), 3), np.int32)
-        face = np.empty(len(mesh.loop_triangles), np.int32)
-        mesh.vertices.foreach_get("co", vertices.ravel())
-        mesh.loop_triangles.foreach_get("vertices", triangles.ravel())
-        mesh.loop_triangles.foreach_get("polygon_index", face)
+        vertices, triangles, face = triangulated(mesh)
         uid = _uids(part.data, mesh)[face]
     finally:
         evaluated.to_mesh_clear()
     return Skin(vertices.astype(np.float64), triangles, uid, face)
+
+
+def triangulated(mesh: bpy.types.Mesh) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Vertices (V, 3) float32, triangles (F, 3) and the polygon of each (F,), of a mesh in object mode."""
+    mesh.calc_loop_triangles()
+    vertices = np.empty((len(mesh.vertices), 3), np.float32)
+    triangles = np.empty((len(mesh.loop_triangles), 3), np.int32)
+    face = np.empty(len(mesh.loop_triangles), np.int32)
+    mesh.vertices.foreach_get("co", vertices.ravel())
+    mesh.loop_triangles.foreach_get("vertices", triangles.ravel())
+    mesh.loop_triangles.foreach_get("polygon_index", face)
+    return vertices, triangles, face
 
 
 def placed(surface: Skin, matrix: np.ndarray, metres: float) -> Skin:
@@ -112,10 +128,8 @@ def _uids(base: bpy.types.Mesh, evaluated: bpy.types.Mesh) -> np.ndarray:
     modelled = tags.read(base)
     if not modelled.any() or len(modelled) != len(base.polygons):
         return np.zeros(len(evaluated.polygons), np.int32)
-    corners = [vertex.co for vertex in base.vertices]
-    tree = BVHTree.FromPolygons(corners, [polygon.vertices for polygon in base.polygons])
-    # The host looks up the nearest face of one point at a time only.
-    return modelled[[tree.find_nearest(polygon.center)[2] for polygon in evaluated.polygons]]
+    vertices, triangles, face = triangulated(base)
+    return nearest_uids(vertices, triangles, modelled[face], evaluated)
 
 
 def check_real(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:

@@ -9,8 +9,12 @@ import numpy as np
 from mathutils import Vector
 from mathutils.bvhtree import BVHTree
 
-from . import tags, view
+from . import host, tags, view
 from .units import metres_per_unit
+
+# Of the part's diagonal: what is looked at around a place, and how far a place may be from the face it lies on.
+AROUND, UPON = 0.1, 1e-4
+ELSEWHERE = "Modifiers make these faces: the view and the 3D cursor are at their place"
 
 
 def enter_edit_mode(context: bpy.types.Context, part: bpy.types.Object) -> None:
@@ -27,39 +31,53 @@ def enter_edit_mode(context: bpy.types.Context, part: bpy.types.Object) -> None:
 
 def show(
     context: bpy.types.Context, part: bpy.types.Object, faces: Sequence[int], points: Sequence[Sequence[float]]
-) -> None:
-    """Select the faces, numbered as modifiers left them, and bring them into view; points: m, in the world."""
-    metres = metres_per_unit(context.scene)
-    if len(points):
-        context.scene.cursor.location = Vector(points[0]) / metres
-    chosen = modelled_faces(context, part, np.asarray(faces, int), np.asarray(points, float).reshape(-1, 3) / metres)
-    if not len(chosen):
-        return
-    enter_edit_mode(context, part)
-    tags.select(part.data, np.isin(np.arange(len(tags.read(part.data))), chosen))
-    for area in context.screen.areas if context.screen and not bpy.app.background else ():
-        if area.type == "VIEW_3D":
-            region = next(region for region in area.regions if region.type == "WINDOW")
-            with context.temp_override(area=area, region=region):
-                bpy.ops.view3d.view_selected()
+) -> bool:
+    """Bring the view and the 3D cursor to the points and select the faces; False where the mesh has no such faces.
 
-
-def modelled_faces(
-    context: bpy.types.Context, part: bpy.types.Object, faces: np.ndarray, points: np.ndarray
-) -> np.ndarray:
-    """The faces of the part's own mesh that ``faces`` of its evaluated one are, or else those nearest to ``points``.
-
-    Where modifiers make faces, numbers do not tell which face they were made of. points: (P, 3) world, scene units.
+    faces: numbered as modifiers left them. points: m, in the world.
     """
-    count = len(tags.read(part.data))
-    evaluated = part.evaluated_get(context.evaluated_depsgraph_get()).data
-    if not part.modifiers or len(evaluated.polygons) == count:
-        return faces[faces < count]
-    if part.data.is_editmode:
-        part.update_from_editmode()
-    mesh = part.data
+    there = np.asarray(points, float).reshape(-1, 3) / metres_per_unit(context.scene)
+    if len(there):
+        context.scene.cursor.location = there[0]
+        host.bring_in_view(there, AROUND * part.dimensions.length)
+    if context.mode != "OBJECT":
+        bpy.ops.object.mode_set(mode="OBJECT")
+    if not len(faces):
+        return True
+    chosen = _modelled_faces(part, context.evaluated_depsgraph_get(), np.asarray(faces, int), there)
+    if not len(chosen):
+        return False
+    enter_edit_mode(context, part)
+    tags.select(part.data, np.isin(np.arange(len(part.data.polygons)), chosen))
+    return True
+
+
+def _modelled_faces(
+    part: bpy.types.Object, depsgraph: bpy.types.Depsgraph, faces: np.ndarray, places: np.ndarray
+) -> np.ndarray:
+    """The faces of the part's own mesh that ``faces`` of its evaluated one are, or else those that ``places`` lie on.
+
+    Where modifiers make faces, numbers do not tell which face they were made of. places: (P, 3) world, scene units.
+    """
+    evaluated = part.evaluated_get(depsgraph)
+    mesh = evaluated.to_mesh()
+    try:
+        if np.array_equal(_corners(mesh), _corners(part.data)):
+            return faces
+    finally:
+        evaluated.to_mesh_clear()
+    own, inverse = part.data, part.matrix_world.inverted_safe()
     tree = BVHTree.FromPolygons(
-        [vertex.co for vertex in mesh.vertices], [tuple(polygon.vertices) for polygon in mesh.polygons]
+        [vertex.co for vertex in own.vertices], [tuple(polygon.vertices) for polygon in own.polygons]
     )
-    inverse = part.matrix_world.inverted_safe()
-    return np.unique([tree.find_nearest(inverse @ Vector(point))[2] for point in points])
+    reach = UPON * max(part.dimensions.length, 1e-30)
+    near = [tree.find_nearest(inverse @ Vector(place), reach)[2] for place in places]
+    return np.unique([face for face in near if face is not None]).astype(int)
+
+
+def _corners(mesh: bpy.types.Mesh) -> np.ndarray:
+    """The corners of all polygons in a row, and where each polygon begins among them."""
+    corners, starts = np.empty(len(mesh.loops), np.int32), np.empty(len(mesh.polygons), np.int32)
+    mesh.loops.foreach_get("vertex_index", corners)
+    mesh.polygons.foreach_get("loop_start", starts)
+    return np.concatenate([corners, starts])

@@ -209,8 +209,9 @@ class PartSettings(bpy.types.PropertyGroup):
     """On each object. What follows is kept up to date from the evaluated geometry.
 
     areas: of its tags by uid, in square scene units, as JSON. shape: a digest of surface and tags. body: a digest of
-    the surface as it stands in metres. volume, surface, untagged: cubic and square metres. findings: what was found
-    amiss when the body was the one that was ``inspected``, as JSON.
+    the surface as it stands in metres. volume, surface, untagged: cubic and square metres. findings: what is amiss,
+    and finding_faces: the faces of each, as JSON. inspected: the digest of the body that the solver found them on,
+    empty when they were seen at a glance.
     """
 
     material: PointerProperty(type=MaterialValues)
@@ -229,7 +230,9 @@ class PartSettings(bpy.types.PropertyGroup):
     extent: FloatVectorProperty(description="Metres along the world's axes")
     findings: StringProperty()
     inspected: StringProperty()
-    recovered: BoolProperty(description="Tags were carried over to a shape that had lost them")
+    finding_faces: StringProperty()
+    untagged_faces: IntProperty()
+    notes: StringProperty(description="What was done to the part, a sentence a line, until it is dismissed")
     outcome: PointerProperty(type=Outcome)
 
 
@@ -307,7 +310,6 @@ class RunState(bpy.types.PropertyGroup):
     cancelled: BoolProperty()
     fraction: FloatProperty(min=0.0, max=1.0)
     text: StringProperty()
-    mended: StringProperty(description="What the last mending did")
 
 
 CLASSES = (

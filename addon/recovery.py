@@ -1,64 +1,72 @@
-"""Tags that an operation dropped with all face attributes, as voxel remesh does, found again on the new shape."""
+"""Tags of a mesh that lost all face attributes, as voxel remesh does, found again on the new shape."""
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import bpy
 import numpy as np
-from mathutils import Vector
-from mathutils.bvhtree import BVHTree
 
-from . import tags
-from .parts import Skin
+from ..solver.errors import Trouble
+from . import inspection, tags
+from .nearest import nearest_uids
+from .parts import triangulated
 
-# A remeshed face lies beside the one it stands for by about its own size.
-REACH = 2.0
-LIKE = 0.5  # cosine between normals of faces that may stand for each other
+CARRIED = "Tags were carried over to the new shape from the old one: look at them."
+
+
+@dataclass(frozen=True)
+class Tagged:
+    """A mesh when it last had tags. vertices: (V, 3). triangles: (F, 3). uid: (F,)."""
+
+    vertices: np.ndarray
+    triangles: np.ndarray
+    uid: np.ndarray
 
 
 class Memory:
-    """The tagged skin that each part was last seen with, for the session."""
+    """The tagged meshes of this session, by the host's ids."""
 
     def __init__(self) -> None:
-        self._skins: dict[int, Skin] = {}
+        self._meshes: dict[int, Tagged] = {}
 
-    def keep(self, part: bpy.types.Object, surface: Skin) -> None:
-        """``surface``: in the part's own axes."""
-        if surface.uid.any():
-            self._skins[part.session_uid] = surface
+    def follow(self, scene: bpy.types.Scene, part: bpy.types.Object) -> None:
+        """Remember the tags of the part's mesh, or give them back if it was made anew without them.
+
+        A mesh that has the attribute and no tags was untagged by the designer, and one that lost the attribute and
+        nothing else was rid of it: those are forgotten.
+        """
+        mesh = part.data
+        if mesh.is_editmode or mesh.library is not None:
+            return
+        if tags.ATTRIBUTE in mesh.attributes:
+            self._remember(mesh)
+            return
+        known = self._meshes.pop(mesh.session_uid, None)
+        if known is None or not len(mesh.polygons) or np.array_equal(known.vertices, triangulated(mesh)[0]):
+            return
+        uids = nearest_uids(known.vertices, known.triangles, known.uid, mesh)
+        uids[~np.isin(uids, [tag.uid for tag in scene.fluxface.tags])] = 0
+        tags.give(mesh, np.ones(len(uids), bool), uids)
+        tags.keep_copies(scene, mesh)
+        self._remember(mesh)
+        inspection.note(part, CARRIED)
 
     def forget(self) -> None:
-        self._skins.clear()
+        self._meshes.clear()
 
-    def recover(self, part: bpy.types.Object) -> None:
-        """Give the part the tags of the skin that it was last seen with, if its mesh has lost them all.
-
-        Faces that the designer untagged keep the attribute, and stay untagged.
-        """
-        mesh, known = part.data, self._skins.get(part.session_uid)
-        if known is None or mesh.is_editmode or tags.ATTRIBUTE in mesh.attributes or not len(mesh.polygons):
+    def _remember(self, mesh: bpy.types.Mesh) -> None:
+        try:
+            uids = tags.read(mesh)
+        except Trouble:
+            # A foreign attribute of that name is told of when a run starts.
             return
-        if part.modifiers:  # the skin is of the shape that they make, and not of the mesh
+        if not uids.any():
+            self._meshes.pop(mesh.session_uid, None)
             return
-        tags.give(mesh, np.ones(len(mesh.polygons), bool), nearest_tags(known, mesh))
-        part.fluxface.recovered = True
+        vertices, triangles, polygon = triangulated(mesh)
+        self._meshes[mesh.session_uid] = Tagged(vertices, triangles, uids[polygon])
 
 
 # One for the session, which is as long as the shapes that it remembers are of use.
 memory = Memory()
-
-
-def nearest_tags(known: Skin, mesh: bpy.types.Mesh) -> np.ndarray:
-    """(F,) the tag of the nearest face of like normal for each face of a mesh, in the same axes."""
-    tree = BVHTree.FromPolygons(known.vertices.tolist(), known.triangles.tolist())
-    reach = REACH * float(np.sqrt(np.median([polygon.area for polygon in mesh.polygons])))
-    # The host looks up the neighbours of one point at a time only.
-    return np.array([_nearest(tree, known.uid, polygon, reach) for polygon in mesh.polygons], np.int32)
-
-
-def _nearest(tree: BVHTree, uid: np.ndarray, polygon: bpy.types.MeshPolygon, reach: float) -> int:
-    _, normal, index, _ = tree.find_nearest(polygon.center)
-    if normal.dot(polygon.normal) < LIKE:
-        near = tree.find_nearest_range(polygon.center, reach)
-        alike = [hit for hit in near if Vector(hit[1]).dot(polygon.normal) >= LIKE]
-        index = min(alike, key=lambda hit: hit[3])[2] if alike else index
-    return int(uid[index])

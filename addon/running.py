@@ -17,6 +17,7 @@ from . import history, host, jobs, study, tags, upkeep, view
 from .cases import build_case
 from .parts import in_sight
 from .properties import Outcome
+from .recovery import memory
 
 STAGES = ("mesh", "assemble", "solve", "write")
 SECONDS_BETWEEN_LOOKS = 0.1
@@ -53,6 +54,8 @@ def start(context: bpy.types.Context) -> Run:
 
 def _start(context: bpy.types.Context, scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Run:
     study.restore_tags(scene)
+    for part in members:
+        memory.follow(scene, part)
     with in_sight(context, members) as depsgraph:
         for part in members:
             upkeep.measure(part, depsgraph)
@@ -142,6 +145,8 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
         return trouble
     left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
     left.areas, left.lost = json.dumps(run.areas), False
+    for part in members:
+        part.fluxface.notes = ""
     keep_trouble(left, None)
     return _kept(left, run.result.parent)
 

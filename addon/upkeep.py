@@ -11,7 +11,8 @@ import numpy as np
 from bpy.app.handlers import persistent
 
 from ..solver.errors import Trouble
-from . import history, host, jobs, study, tags
+from . import history, host, inspection, jobs, study, tags
+from .glance import glance
 from .inspection import inspector
 from .overlay import tag_colours
 from .parts import modelled, placed, world_matrix
@@ -27,12 +28,10 @@ def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
     if part.library is not None:
         return
     try:
-        memory.recover(part)
         surface = modelled(part, depsgraph)
     except Trouble:
         return
     tag_colours.take(part, surface)
-    memory.keep(part, surface)
     settings, metres = part.fluxface, metres_per_unit(bpy.context.scene)
     world = placed(surface, world_matrix(part), metres)
     shape = _digest(surface.vertices, surface.triangles, surface.uid)
@@ -42,10 +41,14 @@ def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
     tagged = json.dumps({uid: area for uid, area in areas.items() if uid})
     if (settings.areas, settings.shape, settings.body) == (tagged, shape, body):
         return
+    reshaped = settings.body != body
     settings.areas, settings.shape, settings.body = tagged, shape, body
     settings.volume, settings.surface = abs(world.volume()), metres**2 * sum(areas.values())
     settings.untagged = metres**2 * areas.get(0, 0.0)
+    settings.untagged_faces = len(np.unique(surface.face[surface.uid == 0]))
     settings.extent = np.ptp(world.vertices, axis=0) if len(world.vertices) else (0.0, 0.0, 0.0)
+    if reshaped:
+        inspection.keep(part, glance(world, part.name), "")
 
 
 def _digest(*arrays: np.ndarray) -> str:
@@ -64,12 +67,14 @@ def refresh() -> None:
         members = study.parts(context)
     except Trouble:
         return
+    for part in members:
+        memory.follow(context.scene, part)
     depsgraph = context.evaluated_depsgraph_get()
     for part in members:
         if part.visible_get():
             measure(part, depsgraph)
     if not bpy.app.background:
-        inspector.look(members)
+        inspector.follow()
     host.redraw()
 
 
@@ -139,3 +144,4 @@ def unregister() -> None:
     for moment, handler in HANDLERS:
         getattr(bpy.app.handlers, moment).remove(handler)
     _stop_waiting()
+    memory.forget()

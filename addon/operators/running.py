@@ -43,14 +43,15 @@ class CancelRun(bpy.types.Operator):
 class ShowPlace(TellsTrouble, bpy.types.Operator):
     bl_idname = "fluxface.show_place"
     bl_label = "Show the Place"
-    bl_description = "Put the 3D cursor at the trouble and select the faces it names"
+    bl_description = "Bring the view and the 3D cursor to the trouble, and select the faces it names"
     bl_options = {"REGISTER", "UNDO"}
 
     def act(self, context: bpy.types.Context) -> None:
         members = study.parts(context)
         left = study.outcome(context.scene, members)
         named = [part for part in members if f"'{part.name}'" in left.message] or members
-        places.show(context, named[0], json.loads(left.faces or "[]"), json.loads(left.points or "[]"))
+        if not places.show(context, named[0], json.loads(left.faces or "[]"), json.loads(left.points or "[]")):
+            self.report({"INFO"}, places.ELSEWHERE)
 
 
 register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace))

@@ -6,7 +6,7 @@ import bpy
 from bpy.props import IntProperty
 
 from ...solver.errors import Trouble
-from .. import inspection, jobs, mending, places, study, tags
+from .. import inspection, jobs, ledger, mending, places, study, tags
 from .telling import Finish, TellsTrouble, WorksBeside
 
 
@@ -28,8 +28,11 @@ class ShowFinding(TellsTrouble, bpy.types.Operator):
 
     def act(self, context: bpy.types.Context) -> None:
         part = study.active_part(context)
-        finding = inspection.findings(part)[self.which]
-        places.show(context, part, finding["faces"], finding["points"])
+        found = inspection.findings(part)
+        if not 0 <= self.which < len(found):
+            raise Trouble("case", f"There is no finding of that number on '{part.name}'.", "Choose one in the sidebar.")
+        if not places.show(context, part, inspection.faces_of(part, self.which), found[self.which]["points"]):
+            self.report({"INFO"}, places.ELSEWHERE)
 
 
 class MendMesh(WorksBeside, bpy.types.Operator):
@@ -53,14 +56,7 @@ class MendMesh(WorksBeside, bpy.types.Operator):
 
     def start(self, context: bpy.types.Context) -> tuple[jobs.Job, Finish]:
         begun = mending.start(context, study.active_part(context))
-
-        def finish(ending: jobs.Ending) -> Trouble | None:
-            trouble, said = mending.finish(begun, ending)
-            state = context.window_manager.fluxface
-            state.mended = trouble.message if trouble else " ".join(said) or "Nothing had to be mended."
-            return trouble
-
-        return begun.job, finish
+        return begun.job, lambda ending: mending.finish(begun, ending)
 
 
 def _unfit(part: bpy.types.Object | None) -> str:
@@ -100,4 +96,41 @@ class SelectUntagged(TellsTrouble, bpy.types.Operator):
         tags.select(part.data, free)
 
 
-register, unregister = bpy.utils.register_classes_factory((ShowFinding, MendMesh, SelectUntagged))
+class DismissNotes(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.notes_dismiss"
+    bl_label = "Dismiss"
+    bl_description = "Take away what is told of the active part's mending and remeshing"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        part = study.active_part(context)
+        if part is None or not part.fluxface.notes:
+            cls.poll_message_set("Nothing is told of the active part")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        study.active_part(context).fluxface.notes = ""
+
+
+class AcceptAreas(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.areas_accept"
+    bl_label = "As Meant"
+    bl_description = "The tags have the areas they are meant to have: compare later ones with these"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if not ledger.of_present(context):
+            cls.poll_message_set("No tag has changed much since the last run")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        ledger.accept(context.scene, study.parts(context))
+
+
+register, unregister = bpy.utils.register_classes_factory(
+    (ShowFinding, MendMesh, SelectUntagged, DismissNotes, AcceptAreas)
+)

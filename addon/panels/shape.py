@@ -5,6 +5,7 @@ from __future__ import annotations
 import bpy
 
 from .. import inspection, study
+from ..glance import Finding
 from ..units import area_text, length_text, mass_text, volume_text
 from .sidebar import Sidebar, pair, paragraph
 
@@ -30,32 +31,33 @@ class ShapePanel(Sidebar, bpy.types.Panel):
         pair(column, "Surface", area_text(scene, settings.surface))
         if settings.material.density > 0.0:
             pair(column, "Mass", mass_text(scene, settings.volume * settings.material.density))
-        if settings.recovered:
-            paragraph(
-                context, layout, "Tags were carried over to the new shape from the old one: look at them.", "ERROR"
-            )
+        if settings.notes:
+            box = layout.box()
+            for sentence in settings.notes.split("\n"):
+                paragraph(context, box, sentence, "INFO")
+            box.operator("fluxface.notes_dismiss")
         found = inspection.findings(part)
-        if not inspection.is_current(part):
-            layout.label(
-                text="Being looked at" if found or not settings.inspected else "Changed; being looked at",
-                icon="SORTTIME",
-            )
-        elif not found:
-            layout.label(text="Nothing is amiss with it", icon="CHECKMARK")
+        told, icon = standing(part)
+        layout.label(text=told, icon=icon)
         for number, finding in enumerate(found):
-            _draw_finding(context, layout, number, finding, inspection.is_current(part))
+            _draw_finding(context, layout, number, finding)
         if any(finding["severity"] == "error" for finding in found):
             layout.operator("fluxface.mend", icon="MODIFIER")
             paragraph(context, layout, "A run mends it for itself, and leaves the mesh as it is.")
-        if context.window_manager.fluxface.mended:
-            paragraph(context, layout, context.window_manager.fluxface.mended, "INFO")
 
 
-def _draw_finding(
-    context: bpy.types.Context, layout: bpy.types.UILayout, number: int, finding: inspection.Finding, current: bool
-) -> None:
+def standing(part: bpy.types.Object) -> tuple[str, str]:
+    """In a few words how the part's surface is, and an icon for it."""
+    found = inspection.findings(part)
+    if not inspection.is_current(part):
+        return ("Seen at a glance; being looked at" if found else "Sound at a glance; being looked at"), "SORTTIME"
+    if any(finding["severity"] == "error" for finding in found):
+        return "Not sound", "CANCEL"
+    return "Sound", "CHECKMARK"
+
+
+def _draw_finding(context: bpy.types.Context, layout: bpy.types.UILayout, number: int, finding: Finding) -> None:
     box = layout.box()
-    box.active = current
     paragraph(context, box, finding["message"], ICONS[finding["severity"]])
     if finding["mend"]:
         paragraph(context, box, finding["mend"])

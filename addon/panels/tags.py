@@ -52,8 +52,11 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         buttons = row.column(align=True)
         buttons.operator("fluxface.tag_new", text="", icon="ADD")
         buttons.operator("fluxface.tag_delete", text="", icon="REMOVE")
-        for sentence in ledger.of_present(context):
-            paragraph(context, layout, sentence, "ERROR")
+        if changed := ledger.of_present(context):
+            box = layout.box()
+            for sentence in changed:
+                paragraph(context, box, sentence, "ERROR")
+            box.operator("fluxface.areas_accept")
         tag = tags.active(context.scene)
         if tag is None:
             paragraph(context, layout, "Select faces in edit mode and press + to make a tag of them.", "INFO")
@@ -91,11 +94,19 @@ class UntaggedPanel(Sidebar, bpy.types.Panel):
 
     def draw(self, context: bpy.types.Context) -> None:
         untagged = context.scene.fluxface.untagged
-        row = self.layout.row()
-        row.operator("fluxface.untagged_select", icon="RESTRICT_SELECT_OFF")
+        _draw_untagged_faces(context, self.layout)
         told = words.carries(context.scene, untagged)
         paragraph(context, self.layout, f"Faces without a tag: {told or 'insulated'}.")
         draw_terms(context, self.layout, untagged)
+
+
+def _draw_untagged_faces(context: bpy.types.Context, layout: bpy.types.UILayout) -> None:
+    part = study.active_part(context)
+    if part is not None and part.fluxface.body:
+        count = part.fluxface.untagged_faces
+        area = area_text(context.scene, part.fluxface.untagged)
+        layout.label(text=f"{count} face{'s' if count != 1 else ''}, {area}" if count else "Every face is in a tag")
+    layout.operator("fluxface.untagged_select", icon="RESTRICT_SELECT_OFF")
 
 
 def draw_terms(context: bpy.types.Context, layout: bpy.types.UILayout, terms: Terms) -> None:
