@@ -21,12 +21,13 @@ from .geometry.mending import Mended, may_be_mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.sizing import sizes_at
 from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, united, weld
-from .geometry.tetrahedra import fill
+from .geometry.tetrahedra import expected_nodes, fill
 from .keeping import Kept
 from .physics import steady
 from .physics.film import film_law
 from .physics.problem import adrift, check_sheds_heat, faces, put_together
 from .result import Field, Summary
+from .room import check_room
 
 # stage, fraction of it, text
 Progress = Callable[[str, float, str], None]
@@ -261,6 +262,17 @@ def meshed(case: Case, progress: Progress) -> tuple[list[Body], Mesh]:
     return bodies, mesh
 
 
+def _meshed_in_room(case: Case, progress: Progress, kept: Kept) -> tuple[list[Body], Mesh]:
+    """:func:`meshed`, where memory will do for the rest as well, as far as can be told before and after."""
+    surfaces = [_welded(case, index) for index in range(len(case.parts))]
+    expected = sum(expected_nodes(surface, case.accuracy) for surface in surfaces)
+    if expected <= case.accuracy.max_nodes:  # else that is told
+        check_room(case, expected, kept)
+    bodies, mesh = meshed(case, progress)
+    check_room(case, len(mesh.nodes), kept)
+    return bodies, mesh
+
+
 def _meshing_inputs(case: Case) -> tuple[Any, ...]:
     """All that the mesh of a case depends on; values of loads and materials are not among it."""
     return (
@@ -312,7 +324,7 @@ def solve(case: Case, progress: Progress = lambda stage, fraction, text: None, k
     kept = Kept() if kept is None else kept
     kept.reused.clear()
     _check_tags(case)
-    bodies, mesh = kept.made("mesh", _meshing_inputs(case), lambda: meshed(case, progress))
+    bodies, mesh = kept.made("mesh", _meshing_inputs(case), lambda: _meshed_in_room(case, progress, kept))
     memory_used = {"mesh": memory.peak()}
     filled = time.perf_counter()
     progress("assemble", 0.0, "putting the terms together")

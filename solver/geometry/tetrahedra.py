@@ -62,11 +62,12 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
     finest: (F,) m, the longest edge each triangle shall have; infinite, or None for all, where the part's size will do.
     Raises Trouble of kind "geometry" when the surface cannot be filled, "limits" when it would take too many nodes.
     """
+    expected = expected_nodes(surface, accuracy)
+    if expected > accuracy.max_nodes:
+        raise _too_many(name, expected, accuracy)
     unit, centre, scale = centred(surface)
     corners = triangle_corners(unit)
-    volume = enclosed_volume(corners)
-    size = accuracy.size / scale if accuracy.size else size_by_default(volume)
-    _check_count(volume, size, name, accuracy)
+    size = accuracy.size / scale if accuracy.size else size_by_default(enclosed_volume(corners))
     flat = points_of_walls(corners, size) > POINTS_OF_WALLS
     longest = np.full(len(corners), np.inf) if finest is None else finest / scale
     if flat and accuracy.size:
@@ -120,10 +121,12 @@ def _split(unit: Surface, longest: np.ndarray, name: str, accuracy: Accuracy) ->
     return split_to_size(unit, longest)
 
 
-def _check_count(volume: float, size: float, name: str, accuracy: Accuracy) -> None:
-    expected = volume / (MEAN_CELL * REGULAR * size**3) / 5.5 * NODES_PER_CORNER[accuracy.order]
-    if expected > accuracy.max_nodes:
-        raise _too_many(name, expected, accuracy)
+def expected_nodes(surface: Surface, accuracy: Accuracy) -> float:
+    """How many nodes the inside of a part takes, whatever its surface asks for besides."""
+    unit, _, scale = centred(surface)
+    volume = enclosed_volume(triangle_corners(unit))
+    size = accuracy.size / scale if accuracy.size else size_by_default(volume)
+    return volume / (MEAN_CELL * REGULAR * size**3) / 5.5 * NODES_PER_CORNER[accuracy.order]
 
 
 def _too_many(name: str, nodes: float, accuracy: Accuracy) -> Trouble:
