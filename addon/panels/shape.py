@@ -6,6 +6,7 @@ import bpy
 
 from .. import inspection, study
 from ..glance import Finding
+from ..overlay import tag_colours
 from ..units import area_text, length_text, mass_text, volume_text
 from .sidebar import Sidebar, pair, paragraph
 
@@ -43,12 +44,15 @@ class ShapePanel(Sidebar, bpy.types.Panel):
             _draw_finding(context, layout, number, finding)
         if any(finding["severity"] == "error" for finding in found):
             layout.operator("fluxface.mend", icon="MODIFIER")
-            paragraph(context, layout, "A run mends it for itself, and leaves the mesh as it is.")
+            paragraph(context, layout, "A run mends a copy for itself where it can; this mends the mesh.")
 
 
 def standing(part: bpy.types.Object) -> tuple[str, str]:
     """In a few words how the part's surface is, and an icon for it."""
     found = inspection.findings(part)
+    if not tag_colours.knows(part):
+        # An edit drops what is drawn at once, and the part is measured when the edit is over.
+        return "Changed; being looked at", "SORTTIME"
     if not inspection.is_current(part):
         return ("Seen at a glance; being looked at" if found else "Sound at a glance; being looked at"), "SORTTIME"
     if any(finding["severity"] == "error" for finding in found):

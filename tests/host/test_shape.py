@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 from fluxface.addon import inspection, jobs, ledger, mending, places, recovery, running, study, tags, upkeep, view
 from fluxface.addon.glance import Finding
+from fluxface.addon.panels import shape as shape_panel
 from fluxface.addon.inspection import inspector
 from modelled import block, lamp, select, side, tag
 
@@ -71,7 +72,11 @@ def test_measures_are_those_of_the_part_as_it_stands(scene):
 
 
 def test_a_sound_part_is_told_to_be(scene):
-    assert looked_at(block()) == []
+    part = block()
+    assert at_a_glance(part) == []
+    assert shape_panel.standing(part)[0] == "Sound at a glance; being looked at"
+    assert looked_at(part) == []
+    assert shape_panel.standing(part) == ("Sound", "CHECKMARK")
 
 
 def test_an_open_part_is_told_with_its_faces_and_shown(scene):
@@ -108,7 +113,11 @@ def test_a_hole_is_seen_at_once_with_its_faces_and_places(scene):
     assert len(hole["faces"]) == 4
     expected = [(0.96, 0, 0.01), (1.04, 0, 0.01), (1, 0.03, 0.01), (1, -0.03, 0.01)]
     assert np.array(sorted(hole["points"])) == pytest.approx(np.array(sorted(expected)), abs=1e-6)
-    assert not inspection.is_current(part)
+    assert shape_panel.standing(part)[0] == "Seen at a glance; being looked at"
+    part.data.vertices[0].co.x = -0.05
+    part.data.update()
+    bpy.context.view_layer.update()
+    assert shape_panel.standing(part)[0] == "Changed; being looked at"
 
 
 def test_flipped_faces_and_a_shape_inside_out_are_told_apart_at_once(scene):
