@@ -11,8 +11,8 @@ import numpy as np
 import pytest
 from fluxface.addon import inspection, jobs, ledger, mending, places, recovery, running, study, tags, upkeep, view
 from fluxface.addon.glance import Finding
-from fluxface.addon.panels import shape as shape_panel
 from fluxface.addon.inspection import inspector
+from fluxface.addon.panels import shape as shape_panel
 from modelled import block, lamp, select, side, tag
 
 
