@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import atexit
 
-from . import inspection, jobs, operators, overlay, panels, properties, unattended, upkeep, view
+from . import inspection, jobs, operators, overlay, panels, preferences, properties, unattended, upkeep, view
 
-ROOMS = (properties, view, operators, panels, overlay, inspection, upkeep, unattended)
+ROOMS = (preferences, properties, view, operators, panels, overlay, inspection, upkeep, unattended)
 
 
 def register() -> None:

@@ -23,10 +23,12 @@ from typing import IO, Any
 
 from ..solver import errors
 from ..solver.errors import Trouble
+from .preferences import threads
 
 # What the solver imports and the host may keep where only the host's own interpreter looks.
 LIBRARIES = ("numpy", "scipy", "tetgen", "pyamg")
 SOLVER = Path(errors.__file__).parent
+THREADS_VARIABLE = "FLUXFACE_THREADS"
 STDERR_LINES = 50
 SECONDS_TO_END = 5.0
 
@@ -125,6 +127,7 @@ class Worker(Job):
 
     def __init__(self) -> None:
         """Raises Trouble when the solver or one of its libraries is missing."""
+        self.threads = threads()
         super().__init__(command("work"), environment())
         self._numbers = itertools.count(1)
         self.answers: dict[int, dict[str, Any]] = {}
@@ -188,9 +191,13 @@ _live: set[Job] = set()
 def stop_all() -> None:
     """End every job that still runs."""
     for job in list(_live):
-        job.cancel()
-        job.wait()
-        _live.discard(job)
+        _end(job)
+
+
+def _end(job: Job) -> None:
+    job.cancel()
+    job.wait()
+    _live.discard(job)
 
 
 def solve(case: Path, result: Path) -> Request:
@@ -199,10 +206,11 @@ def solve(case: Path, result: Path) -> Request:
     Raises Trouble when it or one of its libraries is missing.
     """
     request = {"do": "solve", "case": str(case.resolve()), "out": str(result.resolve())}
-    staying = next((job for job in _live if isinstance(job, Worker) and not job.has_ended), None)
-    if staying is not None:
-        with contextlib.suppress(OSError):
-            return staying.ask(**request)
+    for worker in [job for job in _live if isinstance(job, Worker)]:
+        if worker.threads == threads() and not worker.has_ended:
+            with contextlib.suppress(OSError):
+                return worker.ask(**request)
+        _end(worker)
     return Worker().ask(**request)
 
 
@@ -250,7 +258,13 @@ def environment(libraries: Iterable[str] = LIBRARIES) -> dict[str, str]:
         folders.append(str(Path(found.origin).parent.parent))
     inherited = os.environ.get("PYTHONPATH")
     path = os.pathsep.join(dict.fromkeys([*folders, *([inherited] if inherited else [])]))
-    return {**os.environ, "PYTHONPATH": path, "PYTHONIOENCODING": "utf-8", "PYTHONDONTWRITEBYTECODE": "1"}
+    return {
+        **os.environ,
+        "PYTHONPATH": path,
+        "PYTHONIOENCODING": "utf-8",
+        "PYTHONDONTWRITEBYTECODE": "1",
+        **({THREADS_VARIABLE: str(threads())} if threads() else {}),
+    }
 
 
 def clear_remains(result: Path) -> None:
@@ -318,7 +332,11 @@ def _answer(line: str) -> dict[str, Any] | None:
 
 def _own_group() -> dict:
     if sys.platform == "win32":
-        return {"creationflags": subprocess.CREATE_NEW_PROCESS_GROUP | subprocess.CREATE_NO_WINDOW}
+        return {
+            "creationflags": subprocess.CREATE_NEW_PROCESS_GROUP
+            | subprocess.CREATE_NO_WINDOW
+            | subprocess.BELOW_NORMAL_PRIORITY_CLASS
+        }
     return {"start_new_session": True}
 
 

@@ -12,6 +12,9 @@ import signal
 import sys
 import threading
 
+# How far behind the host's own work the solver stands where there are too few cores for both.
+GIVING_WAY = 5
+
 
 def end_with_parent() -> None:
     # Not through sys.stdin: a lock held on it would abort the interpreter's own end.
@@ -24,6 +27,8 @@ def end_with_parent() -> None:
 
 if __name__ == "__main__":
     package = sys.argv.pop(1)
+    if hasattr(os, "nice"):  # elsewhere whoever starts this process sees to it
+        os.nice(GIVING_WAY)
     if sys.argv[1] != "work":  # which is written to, and sees the end of the stream by itself
         threading.Thread(target=end_with_parent, daemon=True).start()
     runpy.run_module(package, run_name="__main__", alter_sys=True)

@@ -15,9 +15,10 @@ import pytest
 bpy = pytest.importorskip("bpy")
 
 from cases import case_of  # noqa: E402
-from fluxface.addon import jobs  # noqa: E402
+from fluxface.addon import jobs, preferences  # noqa: E402
 from fluxface.solver.case import Convection, Tag, write_case  # noqa: E402
 from fluxface.solver.errors import Trouble  # noqa: E402
+from fluxface.solver.result import read_field  # noqa: E402
 from shapes import box, facing, tagged  # noqa: E402
 
 SECONDS_MAX = 20.0
@@ -182,11 +183,11 @@ def test_an_older_result_is_put_back_after_an_end_in_mid_writing(tmp_path):
 # The worker -----------------------------------------------------------------------------------------------------------
 
 
-def cube(folder: Path, heat: float = 1.0) -> Path:
+def cube(folder: Path, heat: float = 1.0, size: float = 0.005) -> Path:
     """The case folder of an invented cube, coarse."""
     surface = tagged(tagged(box((0.02, 0.02, 0.02)), 0, facing("-z")), 1, facing("+z"))
     air = Tag("air", convection=Convection(ambient=300.0, coefficient=10.0))
-    write_case(case_of(surface, [Tag("pad", heat=heat), air], order=1, size=0.005), folder)
+    write_case(case_of(surface, [Tag("pad", heat=heat), air], order=1, size=size), folder)
     return folder
 
 
@@ -249,3 +250,38 @@ def test_the_workers_own_trouble_comes_through_whole(tmp_path, no_worker):
     trouble = ending_of(jobs.solve(tmp_path / "none", tmp_path / "result")).trouble
     assert trouble.kind == "case"
     assert trouble.message.startswith("case.json cannot be read")
+
+
+@pytest.fixture
+def chosen():
+    """The preferences, as the host keeps them of an add-on that is installed."""
+    enabled = bpy.context.preferences.addons.new()
+    enabled.module = preferences.ADD_ON
+    preferences.register()
+    yield enabled.preferences
+    preferences.unregister()
+    bpy.context.preferences.addons.remove(enabled)
+
+
+def test_another_number_of_threads_is_another_worker_and_the_same_temperatures(tmp_path, no_worker, chosen):
+    temperatures = []
+    for count in (1, 2):
+        chosen.threads = count
+        case = cube(tmp_path / f"case{count}", size=0.0012)
+        assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+        (worker,) = workers()
+        assert worker.threads == count
+        temperatures.append(read_field(case / "result").temperature)
+    assert len(temperatures[0]) > 5_000  # enough to be solved piece by piece
+    assert temperatures[0] == pytest.approx(temperatures[1], rel=1e-10)
+
+
+@pytest.mark.skipif(not Path("/proc/self/environ").exists(), reason="looks into /proc")
+def test_the_solver_is_told_how_many_threads_and_gives_way_to_the_host(tmp_path, no_worker, chosen):
+    chosen.threads = 1
+    case = cube(tmp_path / "case")
+    assert ending_of(jobs.solve(case, case / "result")) == jobs.Ending()
+    (worker,) = workers()
+    process = worker._process.pid
+    assert b"FLUXFACE_THREADS=1" in Path(f"/proc/{process}/environ").read_bytes().split(b"\0")
+    assert os.getpriority(os.PRIO_PROCESS, process) > os.getpriority(os.PRIO_PROCESS, 0)
