@@ -18,7 +18,7 @@ from .tidying import tidied, with_faces
 
 SNAP = 1e-5
 # s: for a tool, with so much more for each triangle, and for all of them; a designer does not wait longer for one part.
-TOOL_SECONDS, SECONDS_PER_FACE, LADDER_SECONDS = 20.0, 3e-4, 75.0
+TOOL_SECONDS, SECONDS_PER_FACE, LADDER_SECONDS = 40.0, 3e-4, 90.0
 SHARES = ("1e-3", "3e-4")  # of the diagonal, the width of the envelope
 
 

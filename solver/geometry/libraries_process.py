@@ -86,14 +86,8 @@ def envelope(surface: Arrays, share: str) -> Arrays:
     sys.modules.setdefault("pyvista", types.ModuleType("pyvista"))
     import pytetwild
 
-    # The mesher makes tetrahedra of its own out of the faces, so that these need not be optimised, which takes longest.
     points, cells = pytetwild.tetrahedralize(
-        surface["points"],
-        surface["facets"].astype(np.int32),
-        edge_length_fac=0.04,
-        epsilon=float(share),
-        optimize=False,
-        num_threads=1,
+        surface["points"], surface["facets"].astype(np.int32), edge_length_fac=0.04, epsilon=float(share), num_threads=1
     )
     if not len(cells):
         raise RuntimeError("nothing is left of the surface")

@@ -21,7 +21,7 @@ from .crossing import crossings
 from .edges import edges_of
 from .ladder import Rung, rungs
 from .surface import areas, centred, enclosed_volume, triangle_corners
-from .tidying import tidied
+from .tidying import tidied, without_doubled
 from .winding import wound_volume
 
 SAME_VOLUME = 0.01
@@ -97,7 +97,8 @@ class _Wanted:
 
 
 def _area_warnings(before: Surface, after: Surface, tags: Sequence[str]) -> tuple[str, ...]:
-    old, new = tag_areas(before, len(tags)), tag_areas(after, len(tags))
+    once, _ = without_doubled(before)  # a face that lies there twice was never twice the area
+    old, new = tag_areas(once, len(tags)), tag_areas(after, len(tags))
     return tuple(
         f"The tag '{name}' {'lost' if is_now < was else 'gained'} {_per_cent(abs(is_now / was - 1))} of its area "
         f"in mending: {1e4 * was:.4g} cm2 became {1e4 * is_now:.4g} cm2."
