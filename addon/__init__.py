@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import atexit
 
-from . import inspection, jobs, operators, overlay, panels, preferences, properties, unattended, upkeep, view
+from . import inspection, jobs, live, operators, overlay, panels, preferences, properties, unattended, upkeep, view
 
-ROOMS = (preferences, properties, view, operators, panels, overlay, inspection, upkeep, unattended)
+ROOMS = (preferences, properties, view, operators, panels, overlay, inspection, live, upkeep, unattended)
 
 
 def register() -> None:

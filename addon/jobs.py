@@ -205,7 +205,19 @@ def solve(case: Path, result: Path) -> Request:
 
     Raises Trouble when it or one of its libraries is missing.
     """
-    request = {"do": "solve", "case": str(case.resolve()), "out": str(result.resolve())}
+    return _ask("solve", case, result)
+
+
+def respond(case: Path, result: Path) -> Request:
+    """Have the worker put the responses to its loads into the result folder of a case that it has solved.
+
+    Raises Trouble when the solver or one of its libraries is missing.
+    """
+    return _ask("respond", case, result)
+
+
+def _ask(do: str, case: Path, result: Path) -> Request:
+    request = {"do": do, "case": str(case.resolve()), "out": str(result.resolve())}
     for worker in [job for job in _live if isinstance(job, Worker)]:
         if worker.threads == threads() and not worker.has_ended:
             with contextlib.suppress(OSError):

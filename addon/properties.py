@@ -6,6 +6,8 @@ in plain numbers: the host multiplies its own power fields by the square of the 
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import bpy
 from bpy.props import (
     BoolProperty,
@@ -42,6 +44,15 @@ FLUIDS = (
 )
 
 
+# Who is told when the value of a load changes: what follows loads stands above what they are stored in.
+load_followers: list[Callable[[bpy.types.Context], object]] = []
+
+
+def _tell_followers(_settings: bpy.types.PropertyGroup, context: bpy.types.Context) -> None:
+    for follower in load_followers:
+        follower(context)
+
+
 def _keep_name_unique(tag: TagDefinition, _context: bpy.types.Context) -> None:
     """Results are told by tag name, and 'untagged' is what they call the rest."""
     taken = {other.name for other in tag.id_data.fluxface.tags if other.uid != tag.uid} | {"untagged"}
@@ -62,12 +73,12 @@ class Terms:
     use_heat: BoolProperty(name="Heat", description="Watts that enter through these faces, spread over their area")
     heat: FloatProperty(
         name="Heat (W)", description="Total heat into the part through all faces of the tag; negative draws heat out",
-        default=1.0, step=10, precision=3,
+        default=1.0, step=10, precision=3, update=_tell_followers,
     )  # fmt: skip
     use_heat_flux: BoolProperty(name="Heat flux", description="Watts per square metre that enter through these faces")
     heat_flux: FloatProperty(
         name="Heat flux (W/m²)", description="Heat into the part per area; negative draws heat out",
-        default=1000.0, step=1000, precision=1,
+        default=1000.0, step=1000, precision=1, update=_tell_followers,
     )  # fmt: skip
     use_convection: BoolProperty(name="Convection", description="Air or a liquid that carries heat off these faces")
     film: EnumProperty(name="Film", items=FILMS, description="Where the film coefficient comes from")
@@ -78,7 +89,7 @@ class Terms:
     )  # fmt: skip
     ambient: FloatProperty(
         name="Fluid at", description="Temperature of the air or liquid away from the part",
-        default=ROOM, min=0.0, unit="TEMPERATURE", step=100,
+        default=ROOM, min=0.0, unit="TEMPERATURE", step=100, update=_tell_followers,
     )  # fmt: skip
     fluid: EnumProperty(name="Fluid", description="Fluid of the film correlation", items=FLUIDS)
     length: FloatProperty(
@@ -104,7 +115,7 @@ class Terms:
     )
     temperature: FloatProperty(
         name="Held at", description="Temperature of these faces",
-        default=ROOM, min=0.0, unit="TEMPERATURE", step=100,
+        default=ROOM, min=0.0, unit="TEMPERATURE", step=100, update=_tell_followers,
     )  # fmt: skip
 
 
@@ -198,6 +209,7 @@ class Outcome(bpy.types.PropertyGroup):
     active_run: IntProperty()
     areas: StringProperty()
     summary: StringProperty()
+    live: StringProperty(description="The summary of other loads than the run had, while they are shown")
     inputs: StringProperty()
     message: StringProperty()
     mend: StringProperty()
@@ -219,8 +231,12 @@ class PartSettings(bpy.types.PropertyGroup):
         name="Heat released in the volume",
         items=(("TOTAL", "Total (W)", "Watts over the whole part"), ("DENSITY", "Per volume (W/m³)", "")),
     )
-    heat: FloatProperty(name="Heat in the volume (W)", description="Released evenly in the whole part", step=10)
-    heat_density: FloatProperty(name="Heat per volume (W/m³)", description="Released evenly in the whole part")
+    heat: FloatProperty(
+        name="Heat in the volume (W)", description="Released evenly in the whole part", step=10, update=_tell_followers
+    )  # fmt: skip
+    heat_density: FloatProperty(
+        name="Heat per volume (W/m³)", description="Released evenly in the whole part", update=_tell_followers
+    )
     areas: StringProperty()
     shape: StringProperty()
     body: StringProperty()

@@ -17,6 +17,8 @@ from .units import metres_per_unit
 
 # World positions below this share of a unit are rounding of the host's single-precision matrices.
 PLACE_DIGITS = 6
+# What of a tag the temperatures are proportional to.
+LOADS = ("heat", "heat_flux", "ambient", "temperature")
 
 
 def parts(context: bpy.types.Context) -> list[bpy.types.Object]:
@@ -68,8 +70,9 @@ def run_folder(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> P
 
 
 def summary(left: Outcome) -> Summary | None:
-    """The summary of the last run that was solved."""
-    return json.loads(left.summary) if left.summary else None
+    """The summary of what is shown: of the last run that was solved, or of other loads than it had."""
+    shown = left.live or left.summary
+    return json.loads(shown) if shown else None
 
 
 def tag_areas(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> dict[int, float]:
@@ -100,6 +103,17 @@ def inputs(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> str:
         "study": [*settings.gravity, settings.order, settings.size, scene.unit_settings.scale_length],
         "parts": [_inputs_of(part, origin) for part in members],
     }
+    return json.dumps(document)
+
+
+def without_loads(told: str) -> str:
+    """Inputs, as told, without the values of their loads."""
+    document = json.loads(told)
+    for terms in (*document["tags"], document["untagged"]):
+        for key in LOADS:
+            terms[key] = None
+    for part in document["parts"]:
+        part[-2:] = (None, None)
     return json.dumps(document)
 
 

@@ -11,7 +11,7 @@ import numpy as np
 from bpy.app.handlers import persistent
 
 from ..solver.errors import Trouble
-from . import history, host, inspection, jobs, study, tags
+from . import history, host, inspection, jobs, live, study, tags
 from .glance import glance
 from .inspection import inspector
 from .overlay import tag_colours
@@ -75,6 +75,7 @@ def refresh() -> None:
             measure(part, depsgraph)
     if not bpy.app.background:
         inspector.follow()
+    live.loads_changed(context)  # after an undo the settings are other ones, and nobody was told
     host.redraw()
 
 

@@ -11,6 +11,7 @@ import numpy as np
 
 from . import memory
 from .answers import report
+from .answers.responses import responses
 from .case import Case, Surface, Tag
 from .errors import Trouble
 from .fem.mesh import Mesh, joined, ordered, quadratic
@@ -26,7 +27,7 @@ from .keeping import Kept
 from .physics import steady
 from .physics.film import film_law
 from .physics.problem import adrift, check_sheds_heat, faces, put_together
-from .result import Field, Summary
+from .result import Field, Responses, Summary
 from .room import check_room
 
 # stage, fraction of it, text
@@ -271,6 +272,18 @@ def _meshed_in_room(case: Case, progress: Progress, kept: Kept) -> tuple[list[Bo
     bodies, mesh = meshed(case, progress)
     check_room(case, len(mesh.nodes), kept)
     return bodies, mesh
+
+
+def respond(case: Case, kept: Kept) -> Responses:
+    """How a linear case answers to each of its loads; quick where the case has just been solved.
+
+    Raises Trouble of kind "case" when it is not linear, and as :func:`solve` does.
+    """
+    kept.reused.clear()
+    _check_tags(case)
+    _, mesh = kept.made("mesh", _meshing_inputs(case), lambda: meshed(case, lambda stage, fraction, text: None))
+    check_sheds_heat(put_together(case, mesh))
+    return responses(case, mesh, kept)
 
 
 def _meshing_inputs(case: Case) -> tuple[Any, ...]:

@@ -19,6 +19,7 @@ FORMAT = "fluxface.result/1"
 SUMMARY_FILE = "summary.json"
 FIELD_FILE = "field.npz"
 SKIN_FILE = "skin.npz"
+RESPONSES_FILE = "responses.npz"
 
 # A 6-node triangle (mid-sides 01 12 20) as four, so that a temperature quadratic over it is seen as such.
 QUARTERS = np.array([[0, 3, 5], [3, 1, 4], [5, 4, 2], [3, 4, 5]])
@@ -63,13 +64,18 @@ class HotSkin:
 
 def hot_skin(field: Field) -> HotSkin:
     """The boundary of a field; a place where two parts meet is there once for each of them."""
+    nodes, triangles, part = skin_nodes(field)
+    return HotSkin(field.nodes[nodes], triangles, part, field.temperature[nodes])
+
+
+def skin_nodes(field: Field) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The places of the hot skin by their nodes (P,), its triangles (T, 3), and the part of each (T,)."""
     faces, part = field.boundary, field.boundary_part
     if faces.shape[1] == 6:
         faces, part = faces[:, QUARTERS].reshape(-1, 3), np.repeat(part, 4)
     corners = np.stack([np.broadcast_to(part[:, None], faces.shape), faces], axis=-1).reshape(-1, 2)
     keys, triangles = np.unique(corners @ (len(field.nodes), 1), return_inverse=True)
-    used = keys % len(field.nodes)
-    return HotSkin(field.nodes[used], triangles.reshape(-1, 3), part, field.temperature[used])
+    return keys % len(field.nodes), triangles.reshape(-1, 3), part
 
 
 def write_skin(skin: HotSkin, folder: Path) -> None:
@@ -84,6 +90,39 @@ def read_skin(folder: Path) -> HotSkin:
     _sound(folder / SKIN_FILE, skin.part, (triangles,), "iu")
     _sound(folder / SKIN_FILE, skin.temperature, (points,), "f")
     return skin
+
+
+@dataclass(frozen=True)
+class Responses:
+    """How a linear steady case answers to each of its L loads: temperatures and heats are sums of value times response.
+
+    loads: the bytes of a JSON list of {"owner": "tag" | "part" | "untagged", "name", "key"}. values: (L,), as solved.
+    temperature: (L, N) at the nodes. tag_mean, tag_heat: (L, K), of the summary's tags. part_mean, part_heat: (L, P).
+    Units are those of the result, over those of the load.
+    """
+
+    loads: np.ndarray
+    values: np.ndarray
+    temperature: np.ndarray
+    tag_mean: np.ndarray
+    tag_heat: np.ndarray
+    part_mean: np.ndarray
+    part_heat: np.ndarray
+
+
+def write_responses(responses: Responses, folder: Path) -> None:
+    """Raises OSError when the place cannot be written; nothing is left behind then."""
+    beside = folder / f".{RESPONSES_FILE}"
+    try:
+        np.savez(beside, **vars(responses))
+        os.replace(beside, folder / RESPONSES_FILE)
+    finally:
+        beside.unlink(missing_ok=True)
+
+
+def read_responses(folder: Path) -> Responses:
+    """Raises Trouble of kind "case" when there are no sound responses in ``folder``."""
+    return Responses(**read_arrays(folder / RESPONSES_FILE, Responses.__dataclass_fields__))
 
 
 def write_result(summary: Summary, field: Field, folder: Path) -> None:

@@ -1,9 +1,9 @@
 """``fluxface work``: a solver that stays, with its libraries loaded and its last case at hand.
 
-Requests are JSON objects, one a line on stdin: ``{"id": 1, "do": "solve", "case": PATH, "out": PATH}``. Each is
-answered on stdout by lines of progress and a last one, ``{"id": 1, "code": 0}`` or ``{"id": 1, "code": 3, "trouble":
-{...}}``, with the exit code and the trouble that ``fluxface solve`` would have ended with. When stdin ends the worker
-ends, whatever it is at.
+Requests are JSON objects, one a line on stdin: ``{"id": 1, "do": "solve", "case": PATH, "out": PATH}``, or "respond"
+for the responses to its loads. Each is answered on stdout by lines of progress and a last one, ``{"id": 1, "code": 0}``
+or ``{"id": 1, "code": 3, "trouble": {...}}``, with the exit code and the trouble that ``fluxface solve`` would have
+ended with. When stdin ends the worker ends, whatever it is at.
 """
 
 from __future__ import annotations
@@ -15,6 +15,8 @@ import signal
 import sys
 import threading
 import traceback
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any
 
@@ -22,7 +24,7 @@ from . import memory, pipeline
 from .case import read_case
 from .errors import Trouble
 from .keeping import Kept
-from .result import write_result
+from .result import write_responses, write_result
 
 # Nobody has asked for so long: the memory is of more use elsewhere.
 SECONDS_IDLE = 1800.0
@@ -50,7 +52,7 @@ def answer(line: str, kept: Kept) -> dict[str, Any]:
     try:
         request = json.loads(line)
         number = request["id"]
-        do = {"solve": _solve}[request["do"]]
+        do = {"solve": _solve, "respond": _respond}[request["do"]]
         case, out = Path(request["case"]), Path(request["out"])
     except (ValueError, KeyError, TypeError) as error:
         trouble = Trouble(
@@ -79,8 +81,21 @@ def _solve(number: Any, case: Path, out: Path, kept: Kept) -> None:
     solved = pipeline.solve(read_case(case), progress, kept)
     if len(solved.field.nodes) > MOST_NODES_KEPT:
         kept.forget()
-    try:
+    with _told_if_unwritten(out):
         write_result(solved.summary, solved.field, out)
+
+
+def _respond(_number: Any, case: Path, out: Path, kept: Kept) -> None:
+    """Put the responses of a case that was solved into its result folder."""
+    made = pipeline.respond(read_case(case), kept)
+    with _told_if_unwritten(out):
+        write_responses(made, out)
+
+
+@contextmanager
+def _told_if_unwritten(out: Path) -> Iterator[None]:
+    try:
+        yield
     except OSError as error:
         raise Trouble(
             "limits", f"The result cannot be written to {out}: {error.strerror}.", "Free some space or choose a place."

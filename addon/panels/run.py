@@ -38,6 +38,8 @@ def standing(context: bpy.types.Context, left: Outcome) -> tuple[str, str]:
     """An icon and a few words for how the result shown relates to the present settings."""
     if not left.summary:
         return "BLANK1", "Not run yet"
+    if left.live:
+        return "RADIOBUT_ON", "Live: Run confirms these loads"
     if study.is_current(context.scene, study.parts(context)):
         return "CHECKMARK", "The result is current"
     return "FILE_REFRESH", "Changed since the last run"

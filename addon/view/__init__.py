@@ -10,14 +10,14 @@ import bpy
 from . import legend_in_view, settings
 from .picture import picture_frame, render_picture
 from .result_object import build_results, part_of, remove_result, result_of
-from .settings import draw_settings, material_of, refresh, settings_of
+from .settings import draw_settings, material_of, recolour, refresh, settings_of
 
 __all__ = [
     "clear",
     "draw_settings",
     "has_result",
     "part_of",
-    "picture_frame",
+    "picture_frame", "recolour",
     "register",
     "render_picture",
     "settings_of",

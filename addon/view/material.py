@@ -11,6 +11,8 @@ from .scale import Scale
 # therefore reads the same kelvin under a name of their own.
 SHOWN = "shown_temperature"
 
+FRACTION = "fraction of the range"
+
 # Linear light, 0..1.
 Colour = tuple[float, float, float]
 
@@ -28,13 +30,20 @@ def paint(material: bpy.types.Material, scale: Scale) -> None:
     temperature = tree.nodes.new("ShaderNodeAttribute")
     temperature.attribute_name = SHOWN
     fraction = tree.nodes.new("ShaderNodeMapRange")
-    fraction.inputs["From Min"].default_value = scale.low
-    fraction.inputs["From Max"].default_value = scale.high
+    fraction.name = FRACTION
+    set_range(material, scale)
     ramp = tree.nodes.new("ShaderNodeValToRGB")
     _fill(ramp.color_ramp, scale.colour_map)
     tree.links.new(temperature.outputs["Fac"], fraction.inputs["Value"])
     tree.links.new(fraction.outputs["Result"], ramp.inputs["Fac"])
     _show_to_camera(material, ramp.outputs["Color"])
+
+
+def set_range(material: bpy.types.Material, scale: Scale) -> None:
+    """Let a material that was painted show another range; its nodes stay, so that nothing is compiled anew."""
+    fraction = material.node_tree.nodes[FRACTION]
+    fraction.inputs["From Min"].default_value = scale.low
+    fraction.inputs["From Max"].default_value = scale.high
 
 
 def paint_plain(material: bpy.types.Material, colour: Colour) -> None:

@@ -3,17 +3,18 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 import bpy
+import numpy as np
 from bpy.props import BoolProperty, EnumProperty, FloatProperty, PointerProperty, StringProperty
 
 from ..host import redraw
 from ..units import TEMPERATURE_UNITS
 from .colours import DEFAULT_MAP, colour_maps
-from .material import paint
-from .result_object import colour, part_of, results_in, settle, temperatures
+from .material import SHOWN, paint, set_range
+from .result_object import TEMPERATURE, colour, part_of, result_of, results_in, settle, temperatures
 from .scale import Scale, Unit, spanning
 
 TRUE_TRANSFORM = "Standard"
@@ -126,6 +127,28 @@ def refresh(scene: bpy.types.Scene) -> None:
     scale = scale_of(scene)
     paint(material_of(scene), scale)
     for result, _ in fields:
+        colour(result, scale)
+    redraw()
+
+
+def recolour(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], temperature: Sequence[np.ndarray]) -> None:
+    """Give the results of ``parts`` other temperatures (P,) K at their vertices, quickly enough for a drag."""
+    settings, ends = settings_of(scene), []
+    for part, values in zip(parts, temperature, strict=True):
+        result = result_of(part)
+        if result is None or len(result.data.vertices) != len(values):
+            continue
+        for name in (TEMPERATURE, SHOWN):
+            result.data.attributes[name].data.foreach_set("value", values.astype(np.float32))
+        ends += [float(values.min()), float(values.max())]
+    if not ends:
+        return
+    settings.coldest, settings.hottest = min(ends), max(ends)
+    if settings.range == "AUTOMATIC":
+        settings.low, settings.high = settings.coldest, settings.hottest
+    scale = scale_of(scene)
+    set_range(material_of(scene), scale)
+    for result in results_in(scene):
         colour(result, scale)
     redraw()
 

@@ -51,6 +51,14 @@ class LinearSolver:
             self._hierarchy = None
         return solution[:, 0]
 
+    def solve_all(self, matrix: csr_array, loads: np.ndarray, reduction: float) -> np.ndarray:
+        """Solutions (n, k) for loads (n, k) of one symmetric matrix, in step: each to its own load's ``reduction``."""
+        if matrix.shape[0] <= DIRECT:
+            return splu(matrix.tocsc()).solve(loads)
+        if self._hierarchy is None:
+            self._hierarchy, self._first_iterations = hierarchy(matrix, self._interpolation), 0
+        return conjugate_gradients(matrix, loads, reduction, self._hierarchy.cycle)[0]
+
 
 def conjugate_gradients(
     matrix: csr_array, loads: np.ndarray, reduction: float, precondition: Precondition

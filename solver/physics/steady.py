@@ -137,7 +137,8 @@ def _matrix_inputs(problem: Problem) -> tuple[object, ...]:
     """All that the linear terms' matrix depends on; loads are not among it."""
     mesh, case = problem.mesh, problem.case
     films = [
-        sum(law.coefficient for law in patch.laws.values() if isinstance(law, Linear)) for patch in problem.patches
+        sum((law.coefficient for law in patch.laws.values() if isinstance(law, Linear)), 0.0)
+        for patch in problem.patches
     ]
     materials = [part.material for part in case.parts]
     return (mesh.nodes, mesh.cells, mesh.cell_part, mesh.boundary_tag, materials, case.contacts, films)
@@ -196,7 +197,7 @@ def solve(
     free = np.delete(np.arange(len(problem.mesh.nodes)), nodes)
 
     def new_solver() -> LinearSolver:
-        return LinearSolver(system.symmetric, _free_interpolation(problem.mesh, free))
+        return solver_of(problem.mesh, system.symmetric, free)
 
     # What a nonlinear problem's solver was set up for is gone with its last iterate.
     linear = not system.nonlinear
@@ -214,7 +215,7 @@ def solve(
             break
         left = f"{100 * share:.2g} % of the heat is still unbalanced" if steps else f"{len(free)} temperatures"
         progress(min(0.95, steps / 10.0), left)
-        change = linear_solver.solve(_on_free(iterate.tangent, free, free), -iterate.residual[free], reduction)
+        change = linear_solver.solve(on_free(iterate.tangent, free, free), -iterate.residual[free], reduction)
         following = _damped(system, iterate, free, change, SMALLEST_DAMPING if share > ROUNDING else 1.0)
         steps += 1
         if following is None and share <= ROUNDING:
@@ -247,7 +248,12 @@ class Iterate:
         return np.sum(self.residuals, axis=0)
 
 
-def _on_free(matrix: csr_array, rows: np.ndarray, columns: np.ndarray) -> csr_array:
+def solver_of(mesh: Mesh, symmetric: bool, free: np.ndarray) -> LinearSolver:
+    """For matrices on the free nodes of a mesh."""
+    return LinearSolver(symmetric, _free_interpolation(mesh, free))
+
+
+def on_free(matrix: csr_array, rows: np.ndarray, columns: np.ndarray) -> csr_array:
     """The rows and columns of those numbers, rising; the matrix itself where they are all."""
     some = matrix if len(rows) == matrix.shape[0] else matrix[rows]
     return some if len(columns) == matrix.shape[1] else some[:, columns]
@@ -258,7 +264,7 @@ def _free_interpolation(mesh: Mesh, free: np.ndarray) -> csr_array | None:
     if mesh.order == 1:
         return None
     whole = midside_interpolation(mesh)
-    return _on_free(whole, free, free[free < whole.shape[1]])
+    return on_free(whole, free, free[free < whole.shape[1]])
 
 
 def _unbalanced_share(problem: Problem, system: System, iterate: Iterate, free: np.ndarray) -> float:
