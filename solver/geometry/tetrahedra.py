@@ -39,7 +39,7 @@ FLAT = 3e-4
 FLATTEST = 1e-13  # of the cube of the longest edge: the least volume of a cell
 REACH = 1e-6  # of the unit diagonal: how far a boundary triangle's middle may lie from its modelled face
 # s: where a size is given, and where it is ours to choose, with so much more for each triangle.
-SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 60, 4e-4
+SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 120, 4e-4
 # Axes that no modelled edge follows.
 ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
 
