@@ -96,16 +96,20 @@ class Job:
         code = self._process.poll()
         ended = code is not None and not any(reader.is_alive() for reader in self._readers)
         while not self._lines.empty():
-            self._said = self._lines.get()
-            self.progress = _progress(self._said) or self.progress
+            self._take_in(self._lines.get())
         if not ended:
             return None
-        self._process.stdin.close()
+        with contextlib.suppress(OSError):  # a request that was not taken any more
+            self._process.stdin.close()
         self._scratch.cleanup()
         _live.discard(self)
         if self._cancelled:
             return Ending(cancelled=True)
         return Ending(said=self._said) if code == 0 else Ending(_trouble(code, self._stderr))
+
+    def _take_in(self, line: str) -> None:
+        self._said = line
+        self.progress = _progress(line) or self.progress
 
     @property
     def was_cancelled(self) -> bool:
@@ -140,15 +144,11 @@ class Worker(Job):
         self.progress = Progress("mesh", 0.0, "Starting")
         return Request(self, number)
 
-    def take_in(self) -> Ending | None:
-        """What the worker has said since the last call; its ending, if it has ended."""
-        while not self._lines.empty():
-            line = self._lines.get()
-            self.progress = _progress(line) or self.progress
-            said = _answer(line)
-            if said is not None:
-                self.answers[said["id"]] = said
-        return self.poll()
+    def _take_in(self, line: str) -> None:
+        super()._take_in(line)
+        said = _answer(line)
+        if said is not None:
+            self.answers[said["id"]] = said
 
     @property
     def has_ended(self) -> bool:
@@ -167,7 +167,7 @@ class Request:
 
     def poll(self) -> Ending | None:
         """Take in what the worker has said since the last call; the ending of this request once there is one."""
-        ended = self._worker.take_in()
+        ended = self._worker.poll()
         answer = self._worker.answers.pop(self._number, None)
         if answer is not None and not self._worker.was_cancelled:
             return Ending() if answer["code"] == 0 else Ending(_trouble_of(answer["trouble"]))
