@@ -52,7 +52,7 @@ def build_case(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], depsgr
         untagged=untagged,
         contacts=tuple(_contact(contact, names, metres) for contact in contacts),
         gravity=_gravity(settings),
-        accuracy=Accuracy(int(settings.order), as_typed(settings.size) * metres or None, settings.max_nodes),
+        accuracy=accuracy(scene),
         title=names[0] if settings.collection is None else settings.collection.name,
     )
 
@@ -219,6 +219,11 @@ def _contact(contact: ContactSettings, names: Sequence[str], metres: float) -> C
             "Give it a value greater than zero, or make it bonded.",
         )
     return Contact((names.index(pair[0]), names.index(pair[1])), conductance, as_typed(contact.gap) * metres or None)
+
+
+def accuracy(scene: bpy.types.Scene) -> Accuracy:
+    settings = scene.fluxface
+    return Accuracy(int(settings.order), as_typed(settings.size) * metres_per_unit(scene) or None, settings.max_nodes)
 
 
 def _gravity(settings: StudySettings) -> tuple[float, float, float]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import tempfile
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import bpy
@@ -13,7 +13,7 @@ import bpy
 from ..solver.case import write_case
 from ..solver.errors import Trouble
 from . import host, jobs, study
-from .cases import build_shapes
+from .cases import accuracy, build_shapes
 from .glance import Finding
 from .parts import in_sight
 
@@ -80,7 +80,8 @@ def start(context: bpy.types.Context, parts: Sequence[bpy.types.Object]) -> Look
     with in_sight(context, bodies) as depsgraph:
         case = build_shapes(context.scene, bodies, depsgraph)
     folder = tempfile.TemporaryDirectory(prefix="fluxface-", ignore_cleanup_errors=True)
-    write_case(case, Path(folder.name))
+    # Walls are thin against the size that is chosen.
+    write_case(replace(case, accuracy=accuracy(context.scene)), Path(folder.name))
     uids = tuple(part.session_uid for part in bodies)
     return Look(jobs.inspect(Path(folder.name)), uids, tuple(part.fluxface.body for part in bodies), folder)
 

@@ -152,6 +152,15 @@ def test_the_solver_finds_what_a_glance_does_not(scene):
     assert "crossing faces" in kinds(part)
 
 
+def test_walls_are_thin_against_the_size_that_is_chosen(scene):
+    part = block(size=(0.08, 0.06, 0.002))
+    assert kinds(part) == []
+    scene.fluxface.size = 0.01
+    part.data.vertices[0].co.x -= 0.001
+    part.data.update()
+    assert kinds(part) == ["thin walls"]
+
+
 def alive(process: int) -> bool:
     status = Path(f"/proc/{process}/stat")
     return status.exists() and status.read_text().rpartition(")")[2].split()[0] != "Z"
