@@ -12,17 +12,19 @@ from dataclasses import dataclass
 
 import numpy as np
 from pyamg.aggregation import standard_aggregation
-from pyamg.strength import symmetric_strength_of_connection
 from scipy.linalg import eigh_tridiagonal
 from scipy.sparse import csc_array, csr_array, csr_matrix
 from scipy.sparse.linalg import SuperLU, splu
 
+from ..parallel import side_by_side
+from .around import stacked
 from .mesh import CELL_EDGES, Mesh
-from .products import Rows, in_rows, product
+from .products import Rows, in_pieces, in_rows, product
 
-# Couplings below this share of their neighbours' are left out of the aggregation, so that aggregates keep to one side
-# of thin insulation.
-WEAK = 0.05
+# Couplings below this share of their nodes' largest are left out of the aggregation, so that aggregates keep to one
+# side of thin insulation and lie along what conducts best.
+WEAK = 0.25
+DAMPING = 2.0 / 3.0
 COARSEST = 500
 LANCZOS_STEPS = 10
 # The smoother damps the upper part of the spectrum, from this share of the largest eigenvalue; the coarse level does
@@ -71,42 +73,61 @@ def hierarchy(matrix: csr_array, interpolation: csr_array | None) -> Hierarchy:
     """For a symmetric positive definite matrix (n, n); interpolation: (n, c) from linear functions, if there is one."""
     levels = []
     if interpolation is not None:
-        level, matrix = _coarsened(matrix, interpolation, *_scaling(matrix))
+        level, matrix = _coarsened(matrix, interpolation)
         levels.append(level)
     while matrix.shape[0] > COARSEST:
-        inverse_diagonal, largest = _scaling(matrix)
-        smoothed = _smoothed_aggregates(matrix, inverse_diagonal, largest)
-        level, matrix = _coarsened(matrix, smoothed, inverse_diagonal, largest)
+        level, matrix = _coarsened(matrix, _smoothed_aggregates(matrix))
         levels.append(level)
     return Hierarchy(tuple(levels), splu(csc_array(matrix)))
 
 
-def _coarsened(
-    matrix: csr_array, prolongation: csr_array, inverse_diagonal: np.ndarray, largest: float
-) -> tuple[Level, csr_array]:
+def _coarsened(matrix: csr_array, prolongation: csr_array) -> tuple[Level, csr_array]:
     """A level, and the Galerkin matrix of the next."""
     restriction = csr_array(prolongation.T)
     coarse = product(restriction, product(matrix, prolongation))
-    fine = Level(
-        in_rows(matrix), in_rows(prolongation), in_rows(restriction), *_smoother(inverse_diagonal[:, None], largest)
-    )
+    fine = Level(in_rows(matrix), in_rows(prolongation), in_rows(restriction), *_smoother(*_scaling(matrix)))
     return fine, coarse
 
 
 def _smoother(inverse_diagonal: np.ndarray, largest: float) -> tuple[np.ndarray, np.ndarray, float]:
     """What two Chebyshev steps for D^-1 A from zero come to: x = a b and then c x + e (b - A x); a, e and c."""
+    inverse_diagonal = inverse_diagonal[:, None]
     centre, radius = 0.5 * largest * (1.0 + DAMPED_FROM), 0.5 * largest * (1.0 - DAMPED_FROM)
     share = 1.0 / (2.0 * centre - radius**2 / centre)
     return inverse_diagonal / centre, 2.0 * share * inverse_diagonal, 1.0 + share * radius**2 / centre
 
 
-def _smoothed_aggregates(matrix: csr_array, inverse_diagonal: np.ndarray, largest: float) -> csr_array:
-    """(n, c) prolongation: one on each aggregate of strongly coupled nodes, smoothed by one damped Jacobi step."""
-    strong = symmetric_strength_of_connection(csr_matrix(matrix), WEAK)
-    aggregates = csr_array(standard_aggregation(strong)[0], dtype=float)
-    step = product(matrix, aggregates)
-    step.data *= np.repeat(-4.0 / 3.0 / largest * inverse_diagonal, np.diff(step.indptr))
+def _smoothed_aggregates(matrix: csr_array) -> csr_array:
+    """(n, c) prolongation: one on each aggregate of strongly coupled nodes, smoothed by one damped Jacobi step.
+
+    The step is that of the strong couplings alone, the others lumped: its largest eigenvalue is at most 2, and what
+    was left out of the aggregates does not fill the next matrix.
+    """
+    strong = _strong_couplings(matrix)
+    aggregates = csr_array(standard_aggregation(csr_matrix(strong))[0], dtype=float)
+    step = product(strong, aggregates)
+    diagonal = strong.sum(axis=1) + np.maximum(matrix.sum(axis=1), 0.0)
+    step.data *= np.repeat(DAMPING / np.where(diagonal > 0, diagonal, 1.0), np.diff(step.indptr))
+    aggregates.data *= 1.0 - DAMPING
     return aggregates + step
+
+
+def _strong_couplings(matrix: csr_array) -> csr_array:
+    """(n, n) the sizes of negative entries off the diagonal that are not small beside the largest of both their rows.
+
+    A cell that is flat, or conducts along one axis above all, has large positive entries too: its diagonal says less.
+    """
+    largest = np.sqrt(np.maximum(-np.minimum.reduceat(matrix.data, matrix.indptr[:-1]), 0.0))
+
+    def of_rows(rows: csr_array, of_row: np.ndarray) -> csr_array:
+        least = np.repeat(WEAK * of_row, np.diff(rows.indptr)) * largest.take(rows.indices)
+        kept = np.flatnonzero((rows.data < 0) & (-rows.data >= least))
+        starts = np.searchsorted(kept, rows.indptr).astype(np.int32)
+        return csr_array((-rows.data[kept], rows.indices[kept], starts), shape=rows.shape)
+
+    rows = in_pieces(matrix)
+    of_row = np.split(largest, np.cumsum([block.shape[0] for block in rows])[:-1])
+    return stacked(side_by_side(lambda pair: of_rows(*pair), zip(rows, of_row, strict=True)))
 
 
 def _scaling(matrix: csr_array) -> tuple[np.ndarray, float]:

@@ -48,10 +48,15 @@ def in_rows(matrix: csr_array) -> Rows:
 
 def product(left: csr_array, right: csr_array) -> csr_array:
     """The matrix left @ right."""
-    blocks = _blocks(left, 1 + left.nnz // ENTRIES_AT_ONCE)
+    blocks = in_pieces(left)
     if len(blocks) == 1:
         return left @ right
     return stacked(side_by_side(lambda block: block @ right, blocks))
+
+
+def in_pieces(matrix: csr_array) -> tuple[csr_array, ...]:
+    """Blocks of rows, the same whatever the number of threads, for work that is done piece by piece."""
+    return _blocks(matrix, 1 + matrix.nnz // ENTRIES_AT_ONCE)
 
 
 def _blocks(matrix: csr_array, count: int) -> tuple[csr_array, ...]:
