@@ -21,9 +21,15 @@ STAMP = "fluxface-environment"
 SYSTEM_LIBRARIES = "libx11-6 libxi6 libxfixes3 libxrender1 libxkbcommon0 libsm6 libice6 libgl1"
 
 
-def enter(script: str) -> None:
-    """Go on with ``script`` and its arguments inside the environment; returns when already there."""
-    python = ready(*chosen_interpreter())
+def enter(script: str, extra: str | None = None) -> None:
+    """Go on with ``script`` and its arguments inside the environment; returns when already there.
+
+    extra: one more of the extras of pyproject.toml that the script needs.
+    """
+    version, interpreter = chosen_interpreter()
+    python = ready(version, interpreter)
+    if extra is not None:
+        _add(python, version, interpreter, extra)
     if Path(sys.prefix).resolve() == python.parent.parent:
         return
     command = [str(python), script, *sys.argv[1:]]
@@ -133,9 +139,19 @@ def _create(folder: Path, version: str, interpreter: str) -> None:
     subprocess.run([interpreter, "-m", "venv", "--without-pip", str(folder)], check=True)
 
 
-def _install(python: Path, interpreter: str) -> None:
+def _add(python: Path, version: str, interpreter: str, extra: str) -> None:
+    """Install an extra into a finished environment, once."""
+    stamp = python.parent.parent / f"{STAMP}-{extra}"
+    if stamp.exists() and stamp.read_text("utf-8") == _stamp(version):
+        return
+    print(f"Adding what '{extra}' asks for, only once.", flush=True)
+    _install(python, interpreter, extra)
+    stamp.write_text(_stamp(version), "utf-8")
+
+
+def _install(python: Path, interpreter: str, extras: str = EXTRAS) -> None:
     pip = [interpreter, "-m", "pip", "--python", str(python), "--disable-pip-version-check", "-qq"]
-    subprocess.run([*pip, "install", "--editable", f"{ROOT}[{EXTRAS}]"], check=True, stdin=subprocess.DEVNULL)
+    subprocess.run([*pip, "install", "--editable", f"{ROOT}[{extras}]"], check=True, stdin=subprocess.DEVNULL)
 
 
 def host_trouble(python: str | Path) -> str | None:

@@ -1,7 +1,7 @@
 """How long it takes from pressing Run to the colours, on the work lamp; prints medians and asserts nothing.
 
-    python3 tests/bench/run.py              seven runs
-    python3 tests/bench/run.py --runs 15
+    python3 tests/bench/lamp.py              seven runs
+    python3 tests/bench/lamp.py --runs 15
 
 The first run, which finds nothing warm, is told apart from the others.
 """
