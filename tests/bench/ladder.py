@@ -26,7 +26,7 @@ def measured(rungs: dict[int, tuple[int, ...]], folder: Path, out: Path) -> None
             name = f"{shape}, {('linear', 'quadratic')[order - 1]}"
             slope = np.polyfit(np.log(rows[:, 0]), np.log(rows[:, 3:7].sum(axis=1)), 1)[0]
             print(f"\n{name}: processor seconds grow as nodes to the {slope:.2f} after meshing")
-            print(f"{'nodes':>12}" + "".join(f"{stage:>10}" for stage in (*STAGES, "iterations", "bandwidth")))
+            print(f"{'nodes':>12}" + "".join(f"{stage:>10}" for stage in (*STAGES, "steps", "bandwidth")))
             for nodes, mesh, iterations, *stages, moved in rows:
                 spent = "".join(f"{seconds:10.2f}" for seconds in (mesh, *stages))
                 print(f"{nodes:12,.0f}{spent}{iterations:10.0f}{moved / triad:10.2f}")
