@@ -4,9 +4,26 @@ from __future__ import annotations
 
 import atexit
 
-from . import inspection, jobs, live, operators, overlay, panels, preferences, properties, unattended, upkeep, view
+from . import (
+    auto_run,
+    inspection,
+    jobs,
+    live,
+    operators,
+    overlay,
+    panels,
+    preferences,
+    properties,
+    tag_names,
+    unattended,
+    upkeep,
+    view,
+)
 
-ROOMS = (preferences, properties, view, operators, panels, overlay, inspection, live, upkeep, unattended)
+ROOMS = (
+    preferences, properties, view, operators, panels, overlay, tag_names, inspection, live, upkeep, auto_run,
+    unattended,
+)  # fmt: skip
 
 
 def register() -> None:

@@ -21,7 +21,8 @@ from . import host, jobs, study, view
 from .properties import Outcome, load_followers
 from .units import as_typed
 
-SECONDS_BETWEEN_LOOKS = 0.1
+# The next run shall not have to wait: one that follows at once is waited for.
+SECONDS_BETWEEN_LOOKS, SECONDS_IDLE = 0.1, 1.0
 # The responses of larger cases take long to make and much room to hold.
 MOST_NODES = 300_000
 
@@ -60,25 +61,36 @@ class Live:
         self._held: Held | None = None
         self._folder = ""
         self._request: jobs.Request | None = None
+        self._case: Path | None = None
 
     def prepare(self, scene: bpy.types.Scene, members: Sequence[bpy.types.Object], case: Path, nodes: int) -> None:
-        """Have the responses of a case made that was just solved, where it is linear; it returns at once."""
+        """Have the responses of a case made that was just solved, where it is linear, once the solver is idle."""
         self.forget()
         if nodes <= MOST_NODES and not why_not(scene, members):
-            self._request = jobs.respond(case, case / "result")
+            self._case = case
             if not bpy.app.background:
-                bpy.app.timers.register(self._wait, first_interval=SECONDS_BETWEEN_LOOKS)
+                bpy.app.timers.register(wait, first_interval=SECONDS_IDLE)
 
-    def _wait(self) -> float | None:
-        if self._request is None or self._request.poll() is not None:
+    def ask(self) -> jobs.Request | None:
+        """The request for what was prepared, made now."""
+        if self._case is not None:
+            self._request, self._case = jobs.respond(self._case, self._case / "result"), None
+        return self._request
+
+    def look(self) -> float | None:
+        """What the host's clock calls until it is told that there is nothing to wait for."""
+        if bpy.context.window_manager.fluxface.running:  # a run comes first, and brings responses of its own
+            self._case = None
+        request = self.ask()
+        if request is None or request.poll() is not None:
             self._request = None
             return None
         return SECONDS_BETWEEN_LOOKS
 
     def forget(self) -> None:
-        if bpy.app.timers.is_registered(self._wait):
-            bpy.app.timers.unregister(self._wait)
-        self._held, self._folder, self._request = None, "", None
+        if bpy.app.timers.is_registered(wait):
+            bpy.app.timers.unregister(wait)
+        self._held, self._folder, self._request, self._case = None, "", None, None
 
     def held(self, folder: str) -> Held | None:
         """The responses that lie in a result folder, if any do."""
@@ -93,6 +105,7 @@ class Live:
 
 # One for the session: what it holds is as large as the result that is worked on.
 live = Live()
+wait = live.look  # one and the same object each time, by which the host knows what it calls
 
 
 def _read(folder: Path) -> Held:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import Any
 
 import bpy
@@ -34,6 +35,11 @@ class TagColours:
         """``surface``: in the part's own axes."""
         self._skins[part.name] = surface
         self._batches.pop(part.name, None)
+
+    @property
+    def skins(self) -> Mapping[str, Skin]:
+        """What is drawn, by the name of the part; each in the part's own axes."""
+        return self._skins
 
     def drop(self, part: bpy.types.Object) -> None:
         """Draw nothing on a part whose shape is changing, until it is taken anew."""

@@ -296,6 +296,9 @@ class StudySettings(bpy.types.PropertyGroup):
     show_tags: BoolProperty(
         name="Show on the Part", description="Draw the faces of each tag in its colour", default=True
     )  # fmt: skip
+    auto_run: BoolProperty(
+        name="Run After Each Change", description="Run by itself, a moment after the last change, while work goes on"
+    )  # fmt: skip
     collection: PointerProperty(
         name="Parts", type=bpy.types.Collection,
         description="Every mesh object of this collection is a part; none = the active object alone",

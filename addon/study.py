@@ -91,6 +91,25 @@ def is_current(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> b
     return bool(left.summary) and left.inputs == inputs(scene, members)
 
 
+def changes(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> list[str]:
+    """What has changed since the last run, in words; empty where its result is current or there is none."""
+    left = outcome(scene, members)
+    if not left.inputs:
+        return []
+    before, now = json.loads(left.inputs), json.loads(inputs(scene, members))
+    if [part[0] for part in before["parts"]] != [part[0] for part in now["parts"]]:
+        return ["parts"]
+    kinds = {
+        "shape": [[part[1:3] for part in told["parts"]] for told in (before, now)],
+        "tags": [[told["tags"], told["untagged"]] for told in (before, now)],
+        "materials": [[part[3:5] for part in told["parts"]] for told in (before, now)],
+        "heat in the volume": [[part[5:] for part in told["parts"]] for told in (before, now)],
+        "contacts": [told["contacts"] for told in (before, now)],
+        "mesh and units": [told["study"] for told in (before, now)],
+    }
+    return [kind for kind, (was, is_now) in kinds.items() if was != is_now]
+
+
 def inputs(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> str:
     """Everything a result depends on, as text to compare: settings, shapes, and how the parts lie to each other."""
     settings = scene.fluxface

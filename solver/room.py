@@ -10,7 +10,7 @@ from .keeping import Kept
 
 # The peak of ``fluxface solve`` on a block, less what it takes at rest, measured on Linux x64 with NumPy 1.26 and
 # rounded up. Order 1: 3 800 and 3 910 bytes a node at 57 000 and 183 000 nodes, nearly all for making the mesh.
-# Order 2: 1 780, 1 800 and 1 810 at 63 000, 254 000 and 993 000 nodes, 2 270 with radiation, and 2 830 where the
+# Order 2: 1 780, 1 800 and 1 910 at 63 000, 254 000 and 993 000 nodes, 2 270 with radiation, and 2 830 where the
 # conductivity is a table too; nearly all for solving.
 BYTES_AT_REST = 90 << 20
 BYTES_PER_NODE = {1: 4_000, 2: 2_900}

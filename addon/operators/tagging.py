@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import bpy
 import numpy as np
-from bpy.props import StringProperty
+from bpy.props import IntProperty, StringProperty
 
 from ...solver.errors import Trouble
-from .. import study, tags, upkeep, view
+from .. import presets, study, tags, upkeep, view
 from ..places import enter_edit_mode
 from .telling import TellsTrouble
 
@@ -123,4 +123,20 @@ class DeleteTag(TellsTrouble, bpy.types.Operator):
         upkeep.refresh()
 
 
-register, unregister = bpy.utils.register_classes_factory((NewTag, GiveToTag, TakeFromTags, SelectTag, DeleteTag))
+class UsePreset(_OnTag, bpy.types.Operator):
+    bl_idname = "fluxface.preset_use"
+    bl_label = "Use Preset"
+
+    which: IntProperty(options={"HIDDEN"}, max=len(presets.PRESETS) - 1, min=0)
+
+    @classmethod
+    def description(cls, _context: bpy.types.Context, properties: bpy.types.OperatorProperties) -> str:
+        return presets.PRESETS[properties.which].about
+
+    def act(self, context: bpy.types.Context) -> None:
+        presets.apply(tags.active(context.scene), presets.PRESETS[self.which])
+
+
+register, unregister = bpy.utils.register_classes_factory(
+    (NewTag, GiveToTag, TakeFromTags, SelectTag, DeleteTag, UsePreset)
+)

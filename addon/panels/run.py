@@ -31,7 +31,8 @@ class RunPanel(Sidebar, bpy.types.Panel):
         if left.message:
             _draw_trouble(context, layout, left)
         icon, told = standing(context, left)
-        layout.label(text=told, icon=icon)
+        paragraph(context, layout, told, icon)
+        layout.prop(context.scene.fluxface, "auto_run")
 
 
 def standing(context: bpy.types.Context, left: Outcome) -> tuple[str, str]:
@@ -42,7 +43,8 @@ def standing(context: bpy.types.Context, left: Outcome) -> tuple[str, str]:
         return "RADIOBUT_ON", "Live: Run confirms these loads"
     if study.is_current(context.scene, study.parts(context)):
         return "CHECKMARK", "The result is current"
-    return "FILE_REFRESH", "Changed since the last run"
+    changed = ", ".join(study.changes(context.scene, study.parts(context)))
+    return "FILE_REFRESH", f"Changed since the last run: {changed}"
 
 
 def _draw_trouble(context: bpy.types.Context, layout: bpy.types.UILayout, left: Outcome) -> None:

@@ -8,6 +8,7 @@ from ...solver.errors import Trouble
 from ...solver.materials import library
 from .. import ledger, study, tags, words
 from ..cases import FILM_NEEDS
+from ..presets import PRESETS
 from ..properties import Terms
 from ..units import area_text
 from .sidebar import Sidebar, fields, paragraph
@@ -66,6 +67,7 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         row.operator("fluxface.tag_take")
         row.operator("fluxface.tag_select")
         layout.prop(settings, "show_tags")
+        layout.menu("FLUXFACE_MT_presets", icon="PRESET")
         draw_terms(context, layout, tag)
 
 
@@ -162,6 +164,16 @@ TERMS = (
 )
 
 
+class PresetsMenu(bpy.types.Menu):
+    bl_idname = "FLUXFACE_MT_presets"
+    bl_label = "Usual Surroundings"
+    bl_description = "Air, water or a hand about the faces of the tag: figures to start from"
+
+    def draw(self, _context: bpy.types.Context) -> None:
+        for number, preset in enumerate(PRESETS):
+            self.layout.operator("fluxface.preset_use", text=preset.name).which = number
+
+
 class FinishesMenu(bpy.types.Menu):
     bl_idname = "FLUXFACE_MT_finishes"
     bl_label = "Finish"
@@ -179,5 +191,5 @@ class FinishesMenu(bpy.types.Menu):
 
 
 register, unregister = bpy.utils.register_classes_factory(
-    (TagList, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel)
+    (TagList, PresetsMenu, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel)
 )

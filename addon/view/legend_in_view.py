@@ -76,18 +76,18 @@ def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> 
     corner = corner - (0, spare * pixel)
     bar_top = BAR_BOTTOM + BAR_HEIGHT
 
-    def write(words: str, x: float, y: float, size: float, colour: Sequence[float] = BRIGHT) -> None:
-        _write(words, corner + np.array((x, y)) * pixel, size * pixel, colour)
+    def say(words: str, x: float, y: float, size: float, colour: Sequence[float] = BRIGHT) -> None:
+        write(words, corner + np.array((x, y)) * pixel, size * pixel, colour)
 
     def fill(places: Sequence[Sequence[float]], colours: Sequence[Sequence[float]]) -> None:
         _fill(corner + np.array(places, dtype=float) * pixel, colours)
 
     fill(_box(0, spare, CARD[0], CARD[1] - spare), [GROUND] * 4)
-    write(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL, FAINT)
+    say(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL, FAINT)
     for label, kelvin, height in (("Hottest", legend.hottest, bar_top + 24), ("Coldest", legend.coldest, 42)):
-        write(label, INSET, height, LABEL, FAINT)
-        write(text(kelvin), INSET + FIGURES, height, VALUE)
-    write(remark, INSET, INSET, SMALL, FAINT)
+        say(label, INSET, height, LABEL, FAINT)
+        say(text(kelvin), INSET + FIGURES, height, VALUE)
+    say(remark, INSET, INSET, SMALL, FAINT)
 
     heights = np.linspace(BAR_BOTTOM, bar_top, STEPS)
     shades = srgb_from_linear(colours_at(legend.scale.colour_map, np.linspace(0.0, 1.0, STEPS)))
@@ -103,12 +103,17 @@ def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> 
     for tick in legend.ticks:
         height = BAR_BOTTOM + tick.fraction * BAR_HEIGHT
         fill(_box(beside, height - 0.5, TICK, 1), [FAINT] * 4)
-        write(tick.label, beside + TICK + 5, height - 0.36 * LABEL, LABEL)
+        say(tick.label, beside + TICK + 5, height - 0.36 * LABEL, LABEL)
 
 
 def _box(left: float, bottom: float, width: float, height: float) -> list[tuple[float, float]]:
     right, top = left + width, bottom + height
     return [(left, bottom), (right, bottom), (left, top), (right, top)]
+
+
+def fill_box(corner: np.ndarray, size: np.ndarray, colour: Sequence[float]) -> None:
+    """A rectangle of one colour from its lower left ``corner`` (2,) on, both in pixels."""
+    _fill(corner + np.array(_box(0, 0, *size)), [colour] * 4)
 
 
 def _fill(places: np.ndarray, colours: Sequence[Sequence[float]]) -> None:
@@ -123,7 +128,7 @@ def _fill(places: np.ndarray, colours: Sequence[Sequence[float]]) -> None:
     gpu.state.blend_set("NONE")
 
 
-def _write(words: str, pixel: np.ndarray, size: float, colour: Sequence[float]) -> None:
+def write(words: str, pixel: np.ndarray, size: float, colour: Sequence[float]) -> None:
     import blf
 
     blf.size(0, size)

@@ -40,7 +40,7 @@ def main() -> None:
     scene.fluxface.max_nodes = 20_000_000
     bpy.ops.fluxface.run()
     started = time.perf_counter()
-    while live.live._request is not None and live.live._request.poll() is None:
+    while live.live.look() is not None:
         time.sleep(0.01)
     print(f"responses made in {time.perf_counter() - started:.2f} s after the run")
     seconds = []

@@ -1,0 +1,107 @@
+"""The name of each tag, written on its faces in the 3D view."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import bpy
+import numpy as np
+from bpy_extras.view3d_utils import location_3d_to_region_2d, region_2d_to_origin_3d
+from mathutils import Vector
+
+from .overlay import tag_colours
+from .parts import Skin
+
+# In the host's interface pixels, before its resolution scale.
+SIZE, INSET, CHIP, GAP = 11, 6, 8, 5
+GROUND, BRIGHT = (0.10, 0.105, 0.115, 0.82), (0.94, 0.94, 0.93, 1.0)
+
+# What the host gave for the drawing that was added, to take it off again.
+_drawings: list[Any] = []
+
+
+class Places:
+    """Where each tag's name stands: looked up anew when the skin is another."""
+
+    def __init__(self) -> None:
+        self._found: dict[str, tuple[Skin, dict[int, tuple[Vector, Vector]]]] = {}
+
+    def of(self, name: str, surface: Skin) -> dict[int, tuple[Vector, Vector]]:
+        """By tag: the place and the normal there, in the part's own axes."""
+        known = self._found.get(name)
+        if known is None or known[0] is not surface:
+            known = self._found[name] = (surface, middles(surface))
+        return known[1]
+
+    def forget(self) -> None:
+        self._found.clear()
+
+
+places = Places()
+
+
+def middles(surface: Skin) -> dict[int, tuple[Vector, Vector]]:
+    """The middle of each tag's faces, moved onto the nearest of them, and the normal there."""
+    vectors = surface.area_vectors
+    area = np.linalg.norm(vectors, axis=1)
+    centres = surface.vertices[surface.triangles].mean(axis=1)
+    found = {}
+    for uid in np.unique(surface.uid[surface.uid != 0]).tolist():
+        mine = np.flatnonzero((surface.uid == uid) & (area > 0))
+        if len(mine):
+            middle = np.average(centres[mine], axis=0, weights=area[mine])
+            nearest = mine[np.linalg.norm(centres[mine] - middle, axis=1).argmin()]
+            found[uid] = (Vector(centres[nearest]), Vector(vectors[nearest] / area[nearest]))
+    return found
+
+
+def register() -> None:
+    if not bpy.app.background:
+        _drawings.append(bpy.types.SpaceView3D.draw_handler_add(_draw, (), "WINDOW", "POST_PIXEL"))
+
+
+def unregister() -> None:
+    while _drawings:
+        bpy.types.SpaceView3D.draw_handler_remove(_drawings.pop(), "WINDOW")
+    places.forget()
+
+
+def _draw() -> None:
+    context = bpy.context
+    settings = context.scene.fluxface
+    if not (settings.show_tags and context.space_data.overlay.show_overlays):
+        return
+    tags = {tag.uid: tag for tag in settings.tags}
+    for name, surface in tag_colours.skins.items():
+        part = context.scene.objects.get(name)
+        if part is None or not part.visible_get(viewport=context.space_data):
+            continue
+        for uid, (place, normal) in places.of(name, surface).items():
+            if uid in tags:
+                _draw_name(context, part, place, normal, tags[uid])
+
+
+def _draw_name(
+    context: bpy.types.Context, part: bpy.types.Object, place: Vector, normal: Vector, tag: bpy.types.PropertyGroup
+) -> None:
+    """Nothing on faces that look away."""
+    import blf
+
+    from .view.legend_in_view import fill_box, write
+
+    world = part.matrix_world @ place
+    outward = part.matrix_world.to_3x3().inverted_safe().transposed() @ normal
+    pixel = location_3d_to_region_2d(context.region, context.region_data, world)
+    if pixel is None:
+        return
+    eye = region_2d_to_origin_3d(context.region, context.region_data, pixel)
+    if outward.dot(eye - world) <= 0:
+        return
+    scale = context.preferences.system.ui_scale
+    blf.size(0, SIZE * scale)
+    width = blf.dimensions(0, tag.name)[0] / scale
+    left = np.array(pixel) - np.array(((2 * INSET + CHIP + GAP + width) / 2, SIZE)) * scale
+    size = np.array((2 * INSET + CHIP + GAP + width, 2 * SIZE)) * scale
+    fill_box(left, size, GROUND)
+    fill_box(left + np.array((INSET, SIZE - CHIP / 2)) * scale, np.array((CHIP, CHIP)) * scale, (*tag.colour, 1.0))
+    write(tag.name, left + np.array((INSET + CHIP + GAP, SIZE - 0.36 * SIZE)) * scale, SIZE * scale, BRIGHT)
