@@ -16,6 +16,9 @@ from .parts import Skin
 SIZE, INSET, CHIP, GAP = 11, 6, 8, 5
 GROUND, BRIGHT = (0.10, 0.105, 0.115, 0.82), (0.94, 0.94, 0.93, 1.0)
 
+# A place and the normal there, in the part's own axes.
+Place = tuple[Vector, Vector]
+
 # What the host gave for the drawing that was added, to take it off again.
 _drawings: list[Any] = []
 
@@ -24,10 +27,10 @@ class Places:
     """Where each tag's name stands: looked up anew when the skin is another."""
 
     def __init__(self) -> None:
-        self._found: dict[str, tuple[Skin, dict[int, tuple[Vector, Vector]]]] = {}
+        self._found: dict[str, tuple[Skin, dict[int, list[Place]]]] = {}
 
-    def of(self, name: str, surface: Skin) -> dict[int, tuple[Vector, Vector]]:
-        """By tag: the place and the normal there, in the part's own axes."""
+    def of(self, name: str, surface: Skin) -> dict[int, list[Place]]:
+        """By tag, as :func:`middles` finds them."""
         known = self._found.get(name)
         if known is None or known[0] is not surface:
             known = self._found[name] = (surface, middles(surface))
@@ -40,18 +43,20 @@ class Places:
 places = Places()
 
 
-def middles(surface: Skin) -> dict[int, tuple[Vector, Vector]]:
-    """The middle of each tag's faces, moved onto the nearest of them, and the normal there."""
+def middles(surface: Skin) -> dict[int, list[Place]]:
+    """For each tag and each of the six ways that its faces look: their middle, moved onto the nearest of them."""
     vectors = surface.area_vectors
     area = np.linalg.norm(vectors, axis=1)
     centres = surface.vertices[surface.triangles].mean(axis=1)
-    found = {}
-    for uid in np.unique(surface.uid[surface.uid != 0]).tolist():
-        mine = np.flatnonzero((surface.uid == uid) & (area > 0))
-        if len(mine):
-            middle = np.average(centres[mine], axis=0, weights=area[mine])
-            nearest = mine[np.linalg.norm(centres[mine] - middle, axis=1).argmin()]
-            found[uid] = (Vector(centres[nearest]), Vector(vectors[nearest] / area[nearest]))
+    axis = np.abs(vectors).argmax(axis=1)
+    way = 2 * axis + (np.take_along_axis(vectors, axis[:, None], axis=1)[:, 0] > 0)
+    found: dict[int, list[Place]] = {}
+    tagged = (surface.uid != 0) & (area > 0)
+    for uid, look in np.unique(np.stack([surface.uid, way], axis=1)[tagged], axis=0).tolist():
+        mine = np.flatnonzero(tagged & (surface.uid == uid) & (way == look))
+        middle = np.average(centres[mine], axis=0, weights=area[mine])
+        nearest = mine[np.linalg.norm(centres[mine] - middle, axis=1).argmin()]
+        found.setdefault(uid, []).append((Vector(centres[nearest]), Vector(vectors[nearest] / area[nearest])))
     return found
 
 
@@ -76,26 +81,30 @@ def _draw() -> None:
         part = context.scene.objects.get(name)
         if part is None or not part.visible_get(viewport=context.space_data):
             continue
-        for uid, (place, normal) in places.of(name, surface).items():
+        for uid, found in places.of(name, surface).items():
             if uid in tags:
-                _draw_name(context, part, place, normal, tags[uid])
+                _draw_name(context, part, found, tags[uid])
 
 
 def _draw_name(
-    context: bpy.types.Context, part: bpy.types.Object, place: Vector, normal: Vector, tag: bpy.types.PropertyGroup
+    context: bpy.types.Context, part: bpy.types.Object, found: list[Place], tag: bpy.types.PropertyGroup
 ) -> None:
-    """Nothing on faces that look away."""
+    """On those of its faces that look at the eye the most; nothing where none does."""
     import blf
 
     from .view.legend_in_view import fill_box, write
 
-    world = part.matrix_world @ place
-    outward = part.matrix_world.to_3x3().inverted_safe().transposed() @ normal
-    pixel = location_3d_to_region_2d(context.region, context.region_data, world)
+    turned = part.matrix_world.to_3x3().inverted_safe().transposed()
+    facing, pixel = 0.0, None
+    for place, normal in found:
+        world = part.matrix_world @ place
+        seen = location_3d_to_region_2d(context.region, context.region_data, world)
+        if seen is not None:
+            eye = region_2d_to_origin_3d(context.region, context.region_data, seen)
+            cosine = (turned @ normal).normalized().dot((eye - world).normalized())
+            if cosine > facing:
+                facing, pixel = cosine, seen
     if pixel is None:
-        return
-    eye = region_2d_to_origin_3d(context.region, context.region_data, pixel)
-    if outward.dot(eye - world) <= 0:
         return
     scale = context.preferences.system.ui_scale
     blf.size(0, SIZE * scale)
