@@ -17,6 +17,7 @@ from . import inspection, jobs, tags, upkeep
 from .cases import build_shapes
 from .parts import in_sight, world_matrix
 from .units import metres_per_unit
+from .view.result_object import add_geometry
 
 # Radians: triangles that the mending made of one flat face become one polygon again. The host's angles between normals
 # in single precision are good to half of that.
@@ -101,13 +102,7 @@ def replace_mesh(scene: bpy.types.Scene, part: bpy.types.Object, surface: Surfac
     uid = np.array([*uids, 0], np.int32)[surface.tag]
 
     mesh.clear_geometry()
-    mesh.vertices.add(len(places))
-    mesh.vertices.foreach_set("co", places.astype(np.float32).ravel())
-    mesh.loops.add(triangles.size)
-    mesh.loops.foreach_set("vertex_index", triangles.astype(np.int32).ravel())
-    mesh.polygons.add(len(triangles))
-    mesh.polygons.foreach_set("loop_start", np.arange(0, triangles.size, 3, dtype=np.int32))
-    mesh.update(calc_edges=True)
+    add_geometry(mesh, places, triangles)
     tags.give(mesh, np.ones(len(triangles), bool), uid)
     _join_flat(mesh, material[origin], smooth[origin], uid)
     if was_edited:

@@ -97,6 +97,12 @@ def _build_result(
 def mesh_of(name: str, places: np.ndarray, triangles: np.ndarray) -> bpy.types.Mesh:
     """A mesh of ``places`` (P, 3) in the host's units and ``triangles`` (T, 3)."""
     mesh = bpy.data.meshes.new(name)
+    add_geometry(mesh, places, triangles)
+    return mesh
+
+
+def add_geometry(mesh: bpy.types.Mesh, places: np.ndarray, triangles: np.ndarray) -> None:
+    """Give an empty mesh ``places`` (P, 3) in the host's units and ``triangles`` (T, 3)."""
     mesh.vertices.add(len(places))
     mesh.vertices.foreach_set("co", places.astype(np.float32).ravel())
     mesh.loops.add(triangles.size)
@@ -104,7 +110,6 @@ def mesh_of(name: str, places: np.ndarray, triangles: np.ndarray) -> bpy.types.M
     mesh.polygons.add(len(triangles))
     mesh.polygons.foreach_set("loop_start", np.arange(0, triangles.size, 3, dtype=np.int32))
     mesh.update(calc_edges=True)
-    return mesh
 
 
 def write_kelvin(mesh: bpy.types.Mesh, name: str, temperature: np.ndarray) -> None:
