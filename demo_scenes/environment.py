@@ -15,21 +15,19 @@ from pathlib import Path
 
 ROOT = Path(__file__).resolve().parent.parent
 VERSIONS = ("3.11", "3.13")  # those that the 3D suite's module is released for
-EXTRAS = "host,test"
+# What the libraries to measure against ask of NumPy, the host cannot do with.
+EXTRAS = {"": "host,test", "bench": "test,bench"}
 RUNNING = f"{sys.version_info.major}.{sys.version_info.minor}"
 STAMP = "fluxface-environment"
 SYSTEM_LIBRARIES = "libx11-6 libxi6 libxfixes3 libxrender1 libxkbcommon0 libsm6 libice6 libgl1"
 
 
-def enter(script: str, extra: str | None = None) -> None:
+def enter(script: str, purpose: str = "") -> None:
     """Go on with ``script`` and its arguments inside the environment; returns when already there.
 
-    extra: one more of the extras of pyproject.toml that the script needs.
+    purpose: one of EXTRAS; each but the usual one has an environment of its own.
     """
-    version, interpreter = chosen_interpreter()
-    python = ready(version, interpreter)
-    if extra is not None:
-        _add(python, version, interpreter, extra)
+    python = ready(*chosen_interpreter(), purpose)
     if Path(sys.prefix).resolve() == python.parent.parent:
         return
     command = [str(python), script, *sys.argv[1:]]
@@ -78,12 +76,12 @@ def _version_of(python: str) -> str | None:
     return answer.stdout.strip() if answer.returncode == 0 else None
 
 
-def ready(version: str, interpreter: str) -> Path:
+def ready(version: str, interpreter: str, purpose: str = "") -> Path:
     """The Python of an environment that holds what pyproject.toml asks for; made, remade or brought up to date first.
 
     Exits with one sentence when it cannot be made.
     """
-    folder = _folder_for(version)
+    folder = _folder_for(version, purpose)
     python = folder / ("Scripts/python.exe" if os.name == "nt" else "bin/python")
     wanted = _stamp(version)
     if _read_stamp(folder) == wanted:
@@ -94,7 +92,7 @@ def ready(version: str, interpreter: str) -> Path:
         else:
             print(f"Bringing {folder.name} up to date with pyproject.toml.", flush=True)
         (folder / STAMP).write_text("unfinished\n", "utf-8")
-        _install(python, interpreter)
+        _install(python, interpreter, EXTRAS[purpose])
     except (OSError, subprocess.CalledProcessError) as error:
         sys.exit(f"{folder.name} could not be made: {error}. Mend what the lines above say and run this again.")
     except KeyboardInterrupt:
@@ -103,8 +101,10 @@ def ready(version: str, interpreter: str) -> Path:
     return python
 
 
-def _folder_for(version: str) -> Path:
-    """``.venv`` for the version it was first made for, ``.venv-X.Y`` for any other."""
+def _folder_for(version: str, purpose: str) -> Path:
+    """``.venv`` for the version it was first made for, ``.venv-X.Y`` for any other; ``.venv-PURPOSE`` for a purpose."""
+    if purpose:
+        return ROOT / f".venv-{purpose}"
     first = ROOT / ".venv"
     return first if _made_for(first) in (None, version) else ROOT / f".venv-{version}"
 
@@ -139,17 +139,7 @@ def _create(folder: Path, version: str, interpreter: str) -> None:
     subprocess.run([interpreter, "-m", "venv", "--without-pip", str(folder)], check=True)
 
 
-def _add(python: Path, version: str, interpreter: str, extra: str) -> None:
-    """Install an extra into a finished environment, once."""
-    stamp = python.parent.parent / f"{STAMP}-{extra}"
-    if stamp.exists() and stamp.read_text("utf-8") == _stamp(version):
-        return
-    print(f"Adding what '{extra}' asks for, only once.", flush=True)
-    _install(python, interpreter, extra)
-    stamp.write_text(_stamp(version), "utf-8")
-
-
-def _install(python: Path, interpreter: str, extras: str = EXTRAS) -> None:
+def _install(python: Path, interpreter: str, extras: str) -> None:
     pip = [interpreter, "-m", "pip", "--python", str(python), "--disable-pip-version-check", "-qq"]
     subprocess.run([*pip, "install", "--editable", f"{ROOT}[{extras}]"], check=True, stdin=subprocess.DEVNULL)
 
