@@ -102,7 +102,24 @@ def _mended_body(
 ) -> Body:
     tags = [tag.name for tag in case.tags]
     made = mended(surface, case.parts[index].name, tags, lambda candidate: fill(candidate, index), limits)
+    _check_heat_kept(case, index, surface, made.surface)
     return Body(made.surface, found, made)
+
+
+def _check_heat_kept(case: Case, index: int, given: Surface, made: Surface) -> None:
+    """Find no tag that brings heat to have lost every face in mending: its watts would be missing unnoticed."""
+    elsewhere = case.surface.tag[case.surface.part != index]
+    for number in np.setdiff1d(given.tag, np.union1d(made.tag, elsewhere)):
+        tag = case.tags[number]
+        if tag.heat or tag.heat_flux:
+            gone = given.tag == number
+            raise Trouble(
+                "geometry",
+                f"The tag '{tag.name}' brings heat, and mending '{case.parts[index].name}' left none of its faces.",
+                "Tag faces that lie on the outside of the part, or mend it by hand.",
+                np.unique(given.face[gone]).tolist(),
+                triangle_corners(given)[gone].mean(axis=1).tolist(),
+            )
 
 
 def _check_apart(case: Case, surfaces: list[Surface]) -> None:
@@ -304,7 +321,8 @@ def _brings_heat(tag: Tag) -> bool:
 def mend(case: Case, progress: Progress = lambda stage, fraction, text: None) -> tuple[Case, list[Body]]:
     """The case with the surfaces of those parts mended that could not be filled as they were; the others as given.
 
-    It is asked for, so that holes are closed that solving refuses. Raises Trouble of kind "geometry" when a part is
+    It is asked for, so that holes are closed that solving refuses. A tag that is left without a face carries nothing
+    any more. Raises Trouble of kind "geometry" when a part is
     beyond mending, "limits" when it takes too many nodes.
     """
     filled, bodies, surfaces = filling(case, progress), [], []
@@ -315,7 +333,10 @@ def mend(case: Case, progress: Progress = lambda stage, fraction, text: None) ->
             body = _mended_body(case, index, surface, body.findings, filled, ON_THEIR_WORD)
         bodies.append(body)
         surfaces.append(body.surface if body.mended else one_part(case.surface, index))
-    return replace(case, surface=united(surfaces)), bodies
+    made = replace(case, surface=united(surfaces))
+    lost = np.setdiff1d(case.surface.tag, made.surface.tag)
+    tags = tuple(Tag(tag.name) if number in lost else tag for number, tag in enumerate(case.tags))
+    return replace(made, tags=tags), bodies
 
 
 def _is_filled(surface: Surface, index: int, fill: Fill) -> bool:

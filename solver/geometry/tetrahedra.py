@@ -5,6 +5,7 @@ Si, TetGen, a Delaunay-based quality tetrahedral mesh generator, ACM Trans. Math
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -54,6 +55,8 @@ class Attempt:
 
 # What one way refuses another often takes: which predicates come out as zero depends on axes and tolerance. Measured.
 ATTEMPTS = (Attempt(), Attempt(turned=True), Attempt("T1e-12"))
+KEEPING_FACETS = (Attempt("Y"),)
+KEPT = 5.0  # of the size: the longest edge of a facet that is kept as it is
 
 
 def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.ndarray | None = None) -> Mesh:
@@ -73,27 +76,58 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
     if flat and accuracy.size:
         longest = np.minimum(longest, LONGEST_EDGE * size)
     unit = _split(unit, longest, name, accuracy)
+    switches = _switches(size, FLAT_CELLS if flat else COMPACT_CELLS, accuracy)
+    try:
+        filled = _filled(unit, (centre, scale), switches, ATTEMPTS, name, accuracy)
+    except Trouble as trouble:
+        if trouble.kind != "geometry":
+            raise
+        # Facets that the mesher cannot split it often takes as they are, unless they are far too large for the size.
+        unit = _split(unit, np.full(len(unit.triangles), KEPT * size), name, accuracy)
+        try:
+            filled = _filled(unit, (centre, scale), switches, KEEPING_FACETS, name, accuracy)
+        except Trouble:
+            raise trouble from trouble.__cause__
+    return Mesh(
+        nodes=filled.nodes * scale + centre,
+        cells=filled.cells,
+        cell_part=np.full(len(filled.cells), part, np.int32),
+        boundary=filled.boundary,
+        boundary_tag=unit.tag[filled.face],
+        boundary_part=np.full(len(filled.boundary), part, np.int32),
+        boundary_face=unit.face[filled.face],
+    )
+
+
+@dataclass(frozen=True)
+class _Filled:
+    """nodes (N, 3) of unit diagonal, cells (M, 4), boundary (B, 3), face (B,) the surface's triangle under each."""
+
+    nodes: np.ndarray
+    cells: np.ndarray
+    boundary: np.ndarray
+    face: np.ndarray
+
+
+def _filled(
+    unit: Surface,
+    frame: tuple[np.ndarray, float],
+    switches: str,
+    attempts: Sequence[Attempt],
+    name: str,
+    accuracy: Accuracy,
+) -> _Filled:
+    """What fills the surface of unit diagonal. frame: centre (3,) and diagonal, m, of the part itself."""
     corners = triangle_corners(unit)
-    patches = _flat_patches(unit)
-    markers = patches + 1
-    found = _tetrahedralise(unit, markers, size, FLAT_CELLS if flat else COMPACT_CELLS, name, accuracy)
+    markers = _flat_patches(unit) + 1
+    found = _tetrahedralise(unit, markers, switches, attempts, name, accuracy)
     cells = _within(found["points"], found["cells"], found["regions"], corners)
     boundary = outer_faces(cells)
     marker = _markers_of(boundary, found["faces"], found["markers"], len(found["points"]))
     points, cells, boundary = _used(found["points"], cells, boundary)
-    _check_cells(points, cells, name, centre, scale)
+    _check_cells(points, cells, name, *frame)
     _check_faithful(points, boundary, marker, corners, markers, name)
-    tag_of = np.empty(patches.max() + 1, np.int32)
-    tag_of[patches] = unit.tag
-    return Mesh(
-        nodes=points * scale + centre,
-        cells=cells,
-        cell_part=np.full(len(cells), part, np.int32),
-        boundary=boundary,
-        boundary_tag=tag_of[marker - 1],
-        boundary_part=np.full(len(boundary), part, np.int32),
-        boundary_face=unit.face[_lying_on(points[boundary].mean(axis=1), marker, corners, markers)],
-    )
+    return _Filled(points, cells, boundary, _lying_on(points[boundary].mean(axis=1), marker, corners, markers))
 
 
 def _flat_patches(surface: Surface) -> np.ndarray:
@@ -137,18 +171,24 @@ def _too_many(name: str, nodes: float, accuracy: Accuracy) -> Trouble:
     )
 
 
-def _tetrahedralise(
-    unit: Surface, markers: np.ndarray, size: float, shape: str, name: str, accuracy: Accuracy
-) -> dict[str, np.ndarray]:
-    """TetGen's points, cells, regions, faces and markers for the surface of unit diagonal."""
-    most = int(accuracy.max_nodes / NODES_PER_CORNER[accuracy.order])
-    added = most if accuracy.size else min(most, ADDED_POINTS_BY_DEFAULT)
+def _switches(size: float, shape: str, accuracy: Accuracy) -> str:
     # s0: no smoothing pass, which takes most of the time; the bound of 10 degrees removes the slivers it would.
     # A: number the regions, so that cavities can be told from solid.
-    switches = f"pq{shape}a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{added}Q"
+    return f"pq{shape}a{LARGEST_CELL * REGULAR * size**3:.12e}As0S{_most_added(accuracy)}Q"
+
+
+def _most_added(accuracy: Accuracy) -> int:
+    most = int(accuracy.max_nodes / NODES_PER_CORNER[accuracy.order])
+    return most if accuracy.size else min(most, ADDED_POINTS_BY_DEFAULT)
+
+
+def _tetrahedralise(
+    unit: Surface, markers: np.ndarray, switches: str, attempts: Sequence[Attempt], name: str, accuracy: Accuracy
+) -> dict[str, np.ndarray]:
+    """TetGen's points, cells, regions, faces and markers for the surface of unit diagonal."""
     seconds = SECONDS if accuracy.size else round(SECONDS_BY_DEFAULT + SECONDS_PER_FACE * len(unit.triangles))
     refusals = []
-    for attempt in ATTEMPTS:
+    for attempt in attempts:
         axes = ASKEW if attempt.turned else np.eye(3)
         surface = {
             "points": unit.vertices @ axes if attempt.turned else unit.vertices,
@@ -162,7 +202,7 @@ def _tetrahedralise(
             if apart.kind in ("missing", "time", "memory"):
                 break
             continue
-        if accuracy.size and len(found["points"]) - len(unit.vertices) >= added:
+        if accuracy.size and len(found["points"]) - len(unit.vertices) >= _most_added(accuracy):
             raise _too_many(name, len(found["points"]) * NODES_PER_CORNER[accuracy.order], accuracy)
         if attempt.turned:
             found["points"] = found["points"] @ axes.T

@@ -13,12 +13,15 @@ from pathlib import Path
 import numpy as np
 import pytest
 from cases import case_of, run
-from fluxface.solver.case import Convection, Surface, Tag, read_case, write_case
+from fluxface.solver import pipeline
+from fluxface.solver.case import Accuracy, Case, Convection, Surface, Tag, read_case, write_case
 from fluxface.solver.errors import Trouble
+from fluxface.solver.geometry import tetrahedra
+from fluxface.solver.geometry.apart import Apart, run_apart
 from fluxface.solver.geometry.carrying import tag_areas
 from fluxface.solver.geometry.closing import ON_THEIR_WORD, UNASKED, Limits
 from fluxface.solver.geometry.mending import Mended, mended
-from fluxface.solver.geometry.surface import enclosed_volume, triangle_corners, weld
+from fluxface.solver.geometry.surface import areas, enclosed_volume, triangle_corners, weld
 from fluxface.solver.geometry.tidying import chosen
 from shapes import assembly, box, facing, merged, moved, surface_of, tagged
 
@@ -215,3 +218,41 @@ def test_the_command_refuses_what_is_beyond_mending_and_writes_nothing(tmp_path:
     ran = run("mend", tmp_path / "given", "--out", tmp_path / "mended", "--json")
     assert ran.code == 3 and ran.trouble["where"]["points"] and not (tmp_path / "mended").exists()
     assert json.loads(ran.out)["parts"][0]["findings"][0]["kind"] == "open edges"
+
+
+def within_a_block(inner: Tag) -> Case:
+    """A block with a small box of faces turned outwards in its middle, which bounds nothing, and its tag."""
+    box_within = replace(box((0.004, 0.004, 0.004), at=(0.012, 0.008, 0.003)), tag=np.full(12, 2, np.int32))
+    return case_of(merged(block(), box_within), [*TAGS, inner], order=1)
+
+
+def test_a_tag_that_brings_heat_and_would_lose_every_face_keeps_the_run_from_starting() -> None:
+    case = within_a_block(Tag("inner", heat=1.0))
+    with pytest.raises(Trouble, match="'inner' brings heat") as caught:
+        pipeline.solve(case)
+    assert caught.value.faces == np.unique(case.surface.face[case.surface.tag == 2]).tolist()
+
+
+def test_a_tag_that_mending_leaves_no_face_carries_nothing_and_is_told() -> None:
+    case, (body,) = pipeline.mend(within_a_block(Tag("inner", convection=Convection(298.15, 5.0))))
+    assert case.tags == (*TAGS, Tag("inner"))
+    assert body.mended is not None and any("'inner' lost 100 %" in warning for warning in body.mended.warnings)
+    summary = pipeline.solve(case).summary
+    assert summary["tags"][2]["area"] == 0 and summary["balance"]["in"] == pytest.approx(2.0)
+
+
+def test_facets_that_cannot_be_split_are_kept(monkeypatch: pytest.MonkeyPatch) -> None:
+    asked = []
+
+    def refusing(tool: str, surface: dict[str, np.ndarray], switches: str, seconds: float) -> dict[str, np.ndarray]:
+        asked.append(switches)
+        if "Y" not in switches:
+            raise Apart("refused", "Internal TetGen error")
+        return run_apart(tool, surface, switches, seconds)
+
+    monkeypatch.setattr(tetrahedra, "run_apart", refusing)
+    mesh = tetrahedra.fill(weld(block()), "block", 0, Accuracy(1, 1e-3))
+    sides = mesh.nodes[mesh.boundary] - np.roll(mesh.nodes[mesh.boundary], 1, axis=1)
+    assert len(asked) == len(tetrahedra.ATTEMPTS) + 1
+    assert np.linalg.norm(sides, axis=2).max() <= tetrahedra.KEPT * 1e-3
+    assert np.bincount(mesh.boundary_tag + 1, areas(mesh.nodes[mesh.boundary]))[1] == pytest.approx(HEAD, rel=1e-9)
