@@ -26,7 +26,7 @@ from fluxface.solver.errors import EXIT_CODES, Trouble
 from fluxface.solver.result import Field, hot_skin, read_field, read_skin, read_summary, write_result, write_skin
 from shapes import assembly, box, facing, tagged
 
-SECONDS = 2.0  # of processor time, for any refusal; a tenth of it is usual
+SECONDS = 1.0  # of processor time, for any refusal; a fiftieth of it is usual
 SEED = 20_261_201
 
 
