@@ -44,12 +44,18 @@ FLUIDS = (
 )
 
 
-# Who is told when the value of a load changes: what follows loads stands above what they are stored in.
+# Who is told when a load's value or the mesh size changes: what follows them stands above what they are stored in.
 load_followers: list[Callable[[bpy.types.Context], object]] = []
+size_followers: list[Callable[[bpy.types.Context], object]] = []
 
 
 def _tell_followers(_settings: bpy.types.PropertyGroup, context: bpy.types.Context) -> None:
     for follower in load_followers:
+        follower(context)
+
+
+def _tell_of_size(_settings: bpy.types.PropertyGroup, context: bpy.types.Context) -> None:
+    for follower in size_followers:
         follower(context)
 
 
@@ -315,7 +321,7 @@ class StudySettings(bpy.types.PropertyGroup):
     )  # fmt: skip
     size: FloatProperty(
         name="Mesh size", description="Mean edge length of the mesh inside the part; 0 = chosen by the solver",
-        min=0.0, unit="LENGTH", precision=4,
+        min=0.0, unit="LENGTH", precision=4, update=_tell_of_size,
     )  # fmt: skip
     max_nodes: IntProperty(
         name="Most nodes", description="A finer mesh than this is refused", default=2_000_000, min=4

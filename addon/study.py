@@ -17,6 +17,8 @@ from .units import metres_per_unit
 
 # World positions below this share of a unit are rounding of the host's single-precision matrices.
 PLACE_DIGITS = 6
+# Objects with a surface of their own that is no mesh.
+SHAPED = {"CURVE", "SURFACE", "META", "FONT"}
 # What of a tag the temperatures are proportional to.
 LOADS = ("heat", "heat_flux", "ambient", "temperature")
 
@@ -36,6 +38,14 @@ def parts(context: bpy.types.Context) -> list[bpy.types.Object]:
     if part is None:
         raise Trouble("case", "No mesh object is active.", "Click the part to make it the active object.")
     return [part]
+
+
+def left_out(scene: bpy.types.Scene) -> list[str]:
+    """Names of what has a shape in the chosen collection and is no mesh, so that it is not among the parts."""
+    collection = scene.fluxface.collection
+    if collection is None:
+        return []
+    return sorted(thing.name for thing in collection.all_objects if thing.type in SHAPED)
 
 
 def active_part(context: bpy.types.Context) -> bpy.types.Object | None:

@@ -16,6 +16,7 @@ from .glance import glance
 from .inspection import inspector
 from .overlay import tag_colours
 from .parts import modelled, placed, world_matrix
+from .properties import size_followers
 from .recovery import memory
 from .units import metres_per_unit
 
@@ -36,7 +37,9 @@ def measure(part: bpy.types.Object, depsgraph: bpy.types.Depsgraph) -> None:
     world = placed(surface, world_matrix(part), metres)
     shape = _digest(surface.vertices, surface.triangles, surface.uid)
     scale = np.linalg.norm(world_matrix(part)[:3, :3], axis=0) * metres
-    body = _digest(scale.astype(np.float32), surface.vertices, surface.triangles)
+    # Walls are thin against the mesh size, so that what is found depends on it as well.
+    size = np.array([bpy.context.scene.fluxface.size], np.float32)
+    body = _digest(size, scale.astype(np.float32), surface.vertices, surface.triangles)
     areas = {uid: area / metres**2 for uid, area in world.area_by_tag().items()}
     tagged = json.dumps({uid: area for uid, area in areas.items() if uid})
     if (settings.areas, settings.shape, settings.body) == (tagged, shape, body):
@@ -88,7 +91,12 @@ def on_change(_scene: bpy.types.Scene, depsgraph: bpy.types.Depsgraph) -> None:
             tag_colours.drop(update.id)
     part = study.active_part(bpy.context)
     changed = any(update.is_updated_geometry or update.is_updated_transform for update in changes)
-    if (changed or (part is not None and not tag_colours.knows(part))) and not bpy.app.background:
+    if changed or (part is not None and not tag_colours.knows(part)):
+        refresh_once_quiet(bpy.context)
+
+
+def refresh_once_quiet(_context: bpy.types.Context) -> None:
+    if not bpy.app.background:
         _stop_waiting()
         bpy.app.timers.register(refresh, first_interval=QUIET_SECONDS)
 
@@ -139,10 +147,12 @@ def _stop_waiting() -> None:
 def register() -> None:
     for moment, handler in HANDLERS:
         getattr(bpy.app.handlers, moment).append(handler)
+    size_followers.append(refresh_once_quiet)
 
 
 def unregister() -> None:
     for moment, handler in HANDLERS:
         getattr(bpy.app.handlers, moment).remove(handler)
+    size_followers.remove(refresh_once_quiet)
     _stop_waiting()
     memory.forget()

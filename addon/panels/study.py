@@ -23,6 +23,10 @@ class StudyPanel(Sidebar, bpy.types.Panel):
             return
         names = ", ".join(part.name for part in members)
         paragraph(context, self.layout, f"{len(members)} parts: {names}" if len(members) > 1 else f"Part: {names}")
+        left_out = study.left_out(context.scene)
+        if left_out:
+            told = f"Left out, as no meshes: {', '.join(left_out)}. Object > Convert > Mesh makes parts of them."
+            paragraph(context, self.layout, told, "INFO")
 
 
 class AccuracyPanel(Sidebar, bpy.types.Panel):

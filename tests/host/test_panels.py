@@ -221,6 +221,16 @@ def test_contacts_are_listed_with_how_heat_crosses(scene):
     assert "until a contact says how" in drawn(scene, contacts.ContactsPanel).replace("\n", " ")
 
 
+def test_what_is_left_out_of_a_collection_is_told(scene):
+    parts = bpy.data.collections.new("parts")
+    parts.objects.link(lamp(scene))
+    scene.fluxface.collection = parts
+    assert "Left out" not in drawn(scene, study_panels.StudyPanel)
+    parts.objects.link(bpy.data.objects.new("badge", bpy.data.curves.new("badge", "FONT")))
+    told = drawn(scene, study_panels.StudyPanel).replace("\n", " ")
+    assert "Left out, as no meshes: badge." in told and "Part: lamp" in told
+
+
 def test_no_line_is_longer_than_the_sidebar(scene):
     context = SimpleNamespace(region=SimpleNamespace(width=280), preferences=PREFERENCES)
     page = Page(context, [])

@@ -99,6 +99,10 @@ def test_an_edit_makes_findings_stale_and_a_move_does_not(scene):
     bpy.context.view_layer.update()
     upkeep.refresh()
     assert inspection.is_current(part)
+    scene.fluxface.size = 0.5
+    upkeep.refresh()
+    assert not inspection.is_current(part)  # walls are thin against the mesh size
+    looked_at(part)
     without_lid(part)
     upkeep.refresh()
     assert not inspection.is_current(part)
