@@ -9,7 +9,7 @@ import numpy as np
 from .edges import Edges, boundary_sides, groups
 from .surface import areas
 
-MOST_SIDES = 400
+MOST_SIDES = 400  # closed at once: the time it takes grows with their cube
 # Between ways to close a hole of nearly the same area, the one of shorter sides: this share of the longest's square.
 SHORTER = 1e-4
 
@@ -18,8 +18,7 @@ SHORTER = 1e-4
 class Hole:
     """A loop of sides without mates. vertices: (n,) in the order in which the surface runs along it.
 
-    triangles: (n - 2, 3) or less, that close it, seen from outside; none where it has more than MOST_SIDES sides.
-    area: m2 of those.
+    triangles: (n - 2, 3) or less, that close it, seen from outside. area: m2 of those.
     """
 
     vertices: np.ndarray
@@ -28,19 +27,29 @@ class Hole:
 
 
 def holes(vertices: np.ndarray, edges: Edges) -> list[Hole]:
-    """The holes of a surface, each with its closing of least area.
+    """The holes of a surface, each with its closing of least area, or near it where a hole has very many sides.
 
     Barequet & Sharir, Filling gaps in the boundary of a polyhedron, Computer Aided Geometric Design 12 (1995) 207.
     """
     found = []
     for loop in _loops(edges):
-        triangles = np.zeros((0, 3), np.int64)
-        if 3 <= len(loop) <= MOST_SIDES:
-            triangles = loop[_least_area(vertices[loop])][:, ::-1]
-            a, b, c = triangles.T  # where the loop comes by a vertex twice, some are folded flat and close nothing
-            triangles = triangles[(a != b) & (b != c) & (c != a)]
+        triangles = _closing(vertices, loop)[:, ::-1]
+        a, b, c = triangles.T  # where the loop comes by a vertex twice, some are folded flat and close nothing
+        triangles = triangles[(a != b) & (b != c) & (c != a)]
         found.append(Hole(loop, triangles, float(areas(vertices[triangles]).sum())))
     return found
+
+
+def _closing(vertices: np.ndarray, loop: np.ndarray) -> np.ndarray:
+    """(n - 2, 3) triangles over the vertices of a loop (n,): a coarser loop is closed first, then what it left out."""
+    if len(loop) < 3:
+        return np.zeros((0, 3), np.int64)
+    if len(loop) <= MOST_SIDES:
+        return loop[_least_area(vertices[loop])]
+    step = -(-len(loop) // MOST_SIDES)
+    round_again = np.append(loop, loop[0])
+    left_out = [round_again[first : first + step + 1] for first in range(0, len(loop), step)]
+    return np.concatenate([_closing(vertices, some) for some in (loop[::step], *left_out)])
 
 
 def _loops(edges: Edges) -> list[np.ndarray]:

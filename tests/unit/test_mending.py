@@ -23,7 +23,7 @@ from fluxface.solver.geometry.closing import ON_THEIR_WORD, UNASKED, Limits
 from fluxface.solver.geometry.mending import Mended, mended
 from fluxface.solver.geometry.surface import areas, enclosed_volume, triangle_corners, weld
 from fluxface.solver.geometry.tidying import chosen
-from shapes import assembly, box, facing, merged, moved, surface_of, tagged
+from shapes import assembly, box, centres_and_normals, cylinder, facing, merged, moved, surface_of, tagged
 
 needs_union = pytest.mark.skipif(not find_spec("manifold3d"), reason="needs manifold3d, of the extra 'mend'")
 
@@ -119,6 +119,13 @@ def test_a_small_hole_is_closed_with_the_tag_beside_it() -> None:
     fine = with_tags(box(SIZE, (12, 8, 4)))
     made = mend(without(fine, face_at(fine, 0.015, 0.01, 0.01)))
     assert_whole(made, "Small holes were closed (1, 0.28 % of the surface).")
+
+
+def test_a_hole_of_a_thousand_sides_is_closed() -> None:
+    rod = cylinder(0.002, 0.06, 1000)
+    made = mend(chosen(rod, ~facing("+z")(*centres_and_normals(rod))))
+    assert volume(made) == pytest.approx(enclosed_volume(triangle_corners(rod)), rel=1e-9)
+    assert made.said[0].startswith("Small holes were closed (1, 1.6 %")
 
 
 def test_a_large_hole_is_refused_with_its_place_and_closed_when_asked_for() -> None:
