@@ -6,6 +6,7 @@ import atexit
 
 from . import (
     auto_run,
+    cutting,
     inspection,
     jobs,
     live,
@@ -21,7 +22,7 @@ from . import (
 )
 
 ROOMS = (
-    preferences, properties, view, operators, panels, overlay, tag_names, inspection, live, upkeep, auto_run,
+    preferences, properties, view, operators, panels, overlay, tag_names, inspection, live, cutting, upkeep, auto_run,
     unattended,
 )  # fmt: skip
 

@@ -17,7 +17,7 @@ import numpy as np
 from ..solver.case import read_case
 from ..solver.errors import Trouble
 from ..solver.result import Responses, read_field, read_responses, skin_nodes
-from . import host, jobs, study, view
+from . import cutting, host, jobs, study, view
 from .properties import Outcome, load_followers
 from .units import as_typed
 
@@ -140,8 +140,7 @@ def follow(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> bool:
         return _back(scene, members, left)
     temperature = values @ held.responses.temperature
     left.live = json.dumps(_summary(json.loads(left.summary), held, values, temperature))
-    view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
-    host.redraw()
+    _show(scene, members, held, temperature)
     return True
 
 
@@ -161,10 +160,14 @@ def _back(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], left: Out
         left.live = ""
         held = live.held(left.folder)
         if held is not None:
-            temperature = held.responses.values @ held.responses.temperature
-            view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
-            host.redraw()
+            _show(scene, members, held, held.responses.values @ held.responses.temperature)
     return False
+
+
+def _show(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], held: Held, temperature: np.ndarray) -> None:
+    view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
+    cutting.recolour(scene, members, temperature)
+    host.redraw()
 
 
 def _values(

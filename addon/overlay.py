@@ -9,15 +9,11 @@ import bpy
 import gpu
 import numpy as np
 from gpu_extras.batch import batch_for_shader
-from mathutils import Matrix
 
+from .drawing import lifted
 from .parts import Skin
 
 OPACITY = 0.45
-# Towards the eye, enough to win over the face itself and too little to show through a thin wall: as a share of the
-# distance in perspective, and of the whole depth without it.
-LIFT = 1e-3
-FLAT_LIFT = 5e-7
 
 
 class TagColours:
@@ -69,7 +65,7 @@ class TagColours:
         gpu.state.blend_set("ALPHA")
         gpu.state.depth_test_set("LESS_EQUAL")
         with gpu.matrix.push_pop_projection():
-            gpu.matrix.load_projection_matrix(_lifted(gpu.matrix.get_projection_matrix()))
+            gpu.matrix.load_projection_matrix(lifted(gpu.matrix.get_projection_matrix()))
             for name in self._skins:
                 part = context.scene.objects.get(name)
                 if part is None or not part.visible_get(viewport=context.space_data):
@@ -97,16 +93,6 @@ class TagColours:
                 if uid
             }
         return self._batches[name]
-
-
-def _lifted(projection: Matrix) -> Matrix:
-    """The projection with everything a little nearer to the eye in depth, and nowhere else."""
-    lifted = projection.copy()
-    if projection[3][3]:
-        lifted[2][3] -= FLAT_LIFT
-    else:
-        lifted[2][3] *= 1.0 + LIFT
-    return lifted
 
 
 # One for all views, as are the host's drawing handlers that it is among.

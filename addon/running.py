@@ -13,7 +13,7 @@ import bpy
 from ..solver.case import write_case
 from ..solver.errors import Trouble
 from ..solver.result import read_summary
-from . import history, host, jobs, live, study, tags, upkeep, view
+from . import cutting, history, host, jobs, live, study, tags, upkeep, view
 from .cases import build_case
 from .parts import in_sight
 from .properties import Outcome
@@ -145,6 +145,8 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
         return trouble
     left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
     left.live = ""
+    cutting.cutting.forget()
+    cutting.follow(scene, members)
     live.live.prepare(scene, members, run.result.parent, summary["mesh"]["nodes"])
     left.areas, left.lost = json.dumps(run.areas), False
     for part in members:

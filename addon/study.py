@@ -51,7 +51,8 @@ def left_out(scene: bpy.types.Scene) -> list[str]:
 def active_part(context: bpy.types.Context) -> bpy.types.Object | None:
     """The part that is active, or whose result is."""
     thing = context.view_layer.objects.active
-    return view.part_of(thing) if thing is not None and thing.type == "MESH" else None
+    part = None if thing is None else view.part_of(thing)
+    return part if part is not None and part.type == "MESH" else None
 
 
 def outcome(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> Outcome:

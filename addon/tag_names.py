@@ -90,9 +90,7 @@ def _draw_name(
     context: bpy.types.Context, part: bpy.types.Object, found: list[Place], tag: bpy.types.PropertyGroup
 ) -> None:
     """On those of its faces that look at the eye the most; nothing where none does."""
-    import blf
-
-    from .view.legend_in_view import fill_box, write
+    from .view.legend_in_view import fill_box, text_width, write
 
     turned = part.matrix_world.to_3x3().inverted_safe().transposed()
     facing, pixel = 0.0, None
@@ -107,8 +105,7 @@ def _draw_name(
     if pixel is None:
         return
     scale = context.preferences.system.ui_scale
-    blf.size(0, SIZE * scale)
-    width = blf.dimensions(0, tag.name)[0] / scale
+    width = text_width(tag.name, SIZE * scale) / scale
     left = np.array(pixel) - np.array(((2 * INSET + CHIP + GAP + width) / 2, SIZE)) * scale
     size = np.array((2 * INSET + CHIP + GAP + width, 2 * SIZE)) * scale
     fill_box(left, size, GROUND)

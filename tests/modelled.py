@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import time
 from collections.abc import Sequence
 
 import bpy
 import numpy as np
-from fluxface.addon import tags
+from fluxface.addon import live, tags
 from fluxface.addon.properties import TagDefinition
 
 # Corner numbers of a block's faces, outward, and the direction each looks in.
@@ -69,3 +70,12 @@ def select(part: bpy.types.Object, faces: np.ndarray) -> None:
     bpy.context.tool_settings.mesh_select_mode = (False, False, True)
     bpy.ops.mesh.select_all(action="DESELECT")
     tags.select(part.data, faces)
+
+
+def ready() -> None:
+    """What the clock of a window would see to."""
+    for _ in range(1000):
+        if live.live.look() is None:
+            return
+        time.sleep(0.02)
+    raise AssertionError("the responses did not come")

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from . import contacts, history, materials, publishing, running, shape, tagging
+from . import contacts, history, materials, publishing, running, seeing, shape, tagging
 
-ROOMS = (tagging, shape, materials, contacts, running, publishing, history)
+ROOMS = (tagging, shape, materials, contacts, running, seeing, publishing, history)
 
 
 def register() -> None:

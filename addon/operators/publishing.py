@@ -7,9 +7,9 @@ from pathlib import Path
 import bpy
 from bpy.props import StringProperty
 
-from ...solver.errors import Trouble
 from .. import report, study, view
 from ..report import PICTURE, REPORT
+from .seeing import members_with_result
 from .telling import TellsTrouble
 
 
@@ -20,13 +20,7 @@ class _Publishes(TellsTrouble):
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
-        try:
-            shown = all(view.has_result(part) for part in study.parts(context))
-        except Trouble:
-            shown = False
-        if not shown:
-            cls.poll_message_set("There is no result yet: press Run first")
-        return shown
+        return members_with_result(cls, context)
 
     def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
         self.filepath = self.filepath or str(study.run_folder(context.scene, study.parts(context)) / self.file_name)

@@ -7,23 +7,52 @@ from pathlib import Path
 
 import bpy
 
-from . import legend_in_view, settings
+from . import drawn_in_view, legend_in_view, settings
 from .picture import picture_frame, render_picture
-from .result_object import build_results, part_of, remove_result, result_of
-from .settings import draw_settings, material_of, recolour, refresh, settings_of
+from .result_object import (
+    PLANE,
+    build_results,
+    part_of,
+    placing,
+    remove_result,
+    result_of,
+    settle,
+    shown_of,
+    world_box,
+)
+from .settings import (
+    apply_showing,
+    draw_lines,
+    draw_settings,
+    material_of,
+    recolour,
+    refresh,
+    refresh_cut,
+    settings_of,
+)
 
 __all__ = [
+    "PLANE",
+    "apply_showing",
     "clear",
+    "draw_lines",
     "draw_settings",
     "has_result",
     "part_of",
-    "picture_frame", "recolour",
+    "picture_frame",
+    "placing",
+    "recolour",
+    "refresh_cut",
     "register",
     "render_picture",
+    "result_of",
     "settings_of",
+    "settle",
     "show",
+    "shown_of",
     "unregister",
-]  # fmt: skip
+    "world_box",
+]
 
 
 def show(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], result_folder: Path) -> list[bpy.types.Object]:
@@ -48,7 +77,8 @@ def clear(part: bpy.types.Object) -> None:
     if result is None:
         return
     scenes = part.users_scene
-    remove_result(result)
+    for shown in {result, shown_of(part)}:
+        remove_result(shown)
     for scene in scenes:
         settings.reveal(scene, part)
         settings.apply_showing(scene)
@@ -58,8 +88,10 @@ def clear(part: bpy.types.Object) -> None:
 def register() -> None:
     settings.register()
     legend_in_view.register()
+    drawn_in_view.register()
 
 
 def unregister() -> None:
+    drawn_in_view.unregister()
     legend_in_view.unregister()
     settings.unregister()

@@ -10,7 +10,7 @@ import numpy as np
 
 from .colours import colours_at, srgb_from_linear
 from .legend import Legend
-from .result_object import results_in
+from .result_object import shown_in
 from .settings import TRUE_SOLID, TRUE_TRANSFORM, scale_of, settings_of
 
 # Measures in the host's interface pixels, before its resolution scale.
@@ -45,7 +45,7 @@ def _draw() -> None:
     scene, settings = context.scene, settings_of(context.scene)
     if not (settings.legend and settings.showing == "RESULT" and context.space_data.overlay.show_overlays):
         return
-    if not any(result.visible_get() for result in results_in(scene)):
+    if not any(result.visible_get() for result in shown_in(scene)):
         return
     scale = scale_of(scene)
     legend = Legend(scale, scale.ticks(), settings.coldest, settings.hottest)
@@ -114,6 +114,21 @@ def _box(left: float, bottom: float, width: float, height: float) -> list[tuple[
 def fill_box(corner: np.ndarray, size: np.ndarray, colour: Sequence[float]) -> None:
     """A rectangle of one colour from its lower left ``corner`` (2,) on, both in pixels."""
     _fill(corner + np.array(_box(0, 0, *size)), [colour] * 4)
+
+
+def fill_ring(middle: np.ndarray, inner: float, outer: float, colour: Sequence[float], steps: int = 32) -> None:
+    """A ring of one colour about ``middle`` (2,), all in pixels."""
+    angle = np.linspace(0.0, 2 * np.pi, steps + 1)
+    circle = np.stack([np.cos(angle), np.sin(angle)], axis=1)
+    strip = np.stack([inner * circle, outer * circle], axis=1).reshape(-1, 2)
+    _fill(middle + strip, [colour] * len(strip))
+
+
+def text_width(words: str, size: float) -> float:
+    import blf
+
+    blf.size(0, size)
+    return blf.dimensions(0, words)[0]
 
 
 def _fill(places: np.ndarray, colours: Sequence[Sequence[float]]) -> None:

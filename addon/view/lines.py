@@ -50,22 +50,27 @@ def isotherms(
     places: np.ndarray, triangles: np.ndarray, temperature: np.ndarray, levels: Iterable[float]
 ) -> tuple[np.ndarray, np.ndarray]:
     """Segments (S, 2, 3) along which the temperature (linear over each triangle) is a level, and that level (S,)."""
-    found = [_isotherm(places[triangles], temperature[triangles], level) for level in levels]
-    segments = [np.zeros((0, 2, 3)), *(segment for segment, _ in found)]
-    return np.concatenate(segments), np.concatenate([np.zeros(0), *(at for _, at in found)])
+    at_corners = temperature[triangles]
+    coldest, hottest = at_corners.min(axis=1), at_corners.max(axis=1)
+    segments, at = [np.zeros((0, 2, 3))], [np.zeros(0)]
+    for level in levels:
+        crossed = np.flatnonzero((coldest <= level) & (hottest > level))
+        segments.append(_isotherm(places[triangles[crossed]], at_corners[crossed], level))
+        at.append(np.full(len(crossed), level))
+    return np.concatenate(segments), np.concatenate(at)
 
 
-def _isotherm(corners: np.ndarray, temperature: np.ndarray, level: float) -> tuple[np.ndarray, np.ndarray]:
+def _isotherm(corners: np.ndarray, temperature: np.ndarray, level: float) -> np.ndarray:
+    """Segments (S, 2, 3) across triangles of these corners (S, 3, 3), all of which the level crosses."""
     above = temperature > level
-    crossed = np.flatnonzero(above.any(axis=1) & ~above.all(axis=1))
-    above = above[crossed]
     # The corner that is alone on its side of the level: the segment runs between the two sides that meet there.
     alone = np.where((above.sum(axis=1) == 1)[:, None], above, ~above).argmax(axis=1)
     others = np.stack([(alone + 1) % 3, (alone + 2) % 3], axis=1)
-    start, ends = temperature[crossed, alone], temperature[crossed[:, None], others]
+    row = np.arange(len(corners))
+    start, ends = temperature[row, alone], temperature[row[:, None], others]
     share = ((level - start)[:, None] / (ends - start[:, None]))[..., None]
-    apex = corners[crossed, alone][:, None]
-    return apex + share * (corners[crossed[:, None], others] - apex), np.full(len(crossed), level)
+    apex = corners[row, alone][:, None]
+    return apex + share * (corners[row[:, None], others] - apex)
 
 
 def outside(segments: np.ndarray, frame: Frame, pixel: np.ndarray, radius: float) -> tuple[np.ndarray, np.ndarray]:

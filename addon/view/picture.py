@@ -9,21 +9,21 @@ from __future__ import annotations
 import shutil
 import tempfile
 from collections.abc import Sequence
-from dataclasses import replace
 from pathlib import Path
 
 import bpy
 import numpy as np
 
 from ...solver.errors import Trouble
-from .colours import ColourMap, linear_from_srgb
+from .colours import linear_from_srgb
 from .framing import Frame, framed, looking
 from .legend import Legend
 from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
 from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
-from .result_object import read_kelvin, result_of, settle, write_kelvin
-from .settings import material_of, refresh, scale_of, settings_of
+from .result_object import read_kelvin, result_of, settle, shown_of, write_kelvin
+from .scale import Scale, inked
+from .settings import levels_of, material_of, refresh, scale_of, settings_of
 from .skin import Skin, hottest_in_view, skin_of
 from .studio import Studio, opened
 
@@ -77,7 +77,7 @@ def render_picture(
             studio.place(result.data, studio.scaled @ result.matrix_world, coloured)
         if frame.axes[2, 2] > LOWEST and not studio.sees_vertices_alone:
             studio.cast_shadow(skin.places[:, 2].min(), BACKDROP, Path(folder))
-        _draw_lines(studio, skin, legend, ringed)
+        _draw_lines(studio, skin, scale, levels_of(scene), ringed)
         write_legend(studio, ", ".join(part.name for part in parts), legend, coloured, INK)
         if ringed is not None:
             draw_ring(studio, ringed, INK)
@@ -98,17 +98,15 @@ def _results(parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:
     lacking = [part.name for part in parts if result_of(part) is None]
     if lacking or not parts:
         raise Trouble("case", f"There is no result to picture of {', '.join(lacking) or 'no part'}.", "Run first.")
-    return [result_of(part) for part in parts]
+    return [shown_of(part) for part in parts]
 
 
-def _draw_lines(studio: Studio, skin: Skin, legend: Legend, ringed: np.ndarray | None) -> None:
+def _draw_lines(studio: Studio, skin: Skin, scale: Scale, levels: Sequence[float], ringed: np.ndarray | None) -> None:
     """Outlines, edges and isotherms; none of them in the ring about the pixel ``ringed`` (2,)."""
     creases, outlines = drawn_edges(skin.places, skin.triangles, studio.frame.eye)
-    levels = [tick.temperature for tick in legend.ticks]
     curves, at = isotherms(skin.places, skin.triangles, skin.temperature, levels)
     # Inked over the colours in a darker or lighter shade of them, so that lines are seen on all of them.
-    shades = studio.new_material()
-    inked_scale = replace(legend.scale, colour_map=inked(legend.scale.colour_map))
+    shades, inked_scale = studio.new_material(), inked(scale)
     paint(shades, inked_scale)
     studio.colours[shades.name] = lambda mesh: inked_scale.colours(read_kelvin(mesh, SHOWN))
     step = min(studio.frame.size) / 100.0
@@ -123,14 +121,6 @@ def _draw_lines(studio: Studio, skin: Skin, legend: Legend, ringed: np.ndarray |
         places, triangles = ribbons(segments, studio.frame, width * step)
         mesh = studio.draw(places, triangles, studio.scaled, material)
         write_kelvin(mesh, SHOWN, np.repeat(temperature.mean(axis=1), 4))
-
-
-def inked(colour_map: ColourMap) -> ColourMap:
-    """The map's colours, dark ones lightened and light ones darkened."""
-    stops = colour_map.stops
-    luminance = stops @ (0.2126, 0.7152, 0.0722)
-    lighter, darker = stops + 0.25 * (1 - stops), 0.32 * stops
-    return replace(colour_map, stops=np.where(luminance[:, None] < 0.10, lighter, darker))
 
 
 def _moved(made: Path, path: Path) -> Path:

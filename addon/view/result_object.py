@@ -15,7 +15,10 @@ from .lines import CREASE
 from .material import SHOWN
 from .scale import Scale
 
-MARK = "fluxface_result"
+# What is a result, what is left of it by a cut, and the empty that cuts it: each is a child of its part.
+MARK, CUT, PLANE = "fluxface_result", "fluxface_cut", "fluxface_plane"
+# Kept with a result: its part's number in the case, and the (4, 4) matrix from the world in metres to its own axes.
+NUMBER, PLACED = "fluxface_part", "fluxface_placed"
 TEMPERATURE = "temperature"
 COLOUR = "temperature_colour"
 
@@ -25,13 +28,39 @@ def result_of(part: bpy.types.Object) -> bpy.types.Object | None:
     return next((child for child in part.children if child.get(MARK)), None)
 
 
+def cut_of(part: bpy.types.Object) -> bpy.types.Object | None:
+    """What a cut leaves of the part's result, or None."""
+    return next((child for child in part.children if child.get(CUT)), None)
+
+
+def shown_of(part: bpy.types.Object) -> bpy.types.Object | None:
+    """What shows the part's temperatures: its result, or what a cut leaves of it; None where there is none."""
+    return cut_of(part) or result_of(part)
+
+
 def part_of(object_: bpy.types.Object) -> bpy.types.Object:
-    """The part whose result ``object_`` is, or ``object_`` itself if it is no result."""
-    return object_.parent if object_.get(MARK) and object_.parent else object_
+    """The part whose result, cut or cutting plane ``object_`` is, or ``object_`` itself if it is none."""
+    is_ours = any(object_.get(mark) for mark in (MARK, CUT, PLANE))
+    return object_.parent if is_ours and object_.parent else object_
+
+
+def placing(result: bpy.types.Object) -> tuple[int, np.ndarray]:
+    """The part's number in the case, and the matrix (4, 4) from the world in metres, as solved, to its own axes."""
+    return result[NUMBER], np.reshape(result[PLACED], (4, 4))
+
+
+def world_box(part: bpy.types.Object) -> np.ndarray:
+    """(8, 3) corners of the part's bounding box in the world."""
+    matrix = np.array(part.matrix_world)
+    return np.array(part.bound_box) @ matrix[:3, :3].T + matrix[:3, 3]
 
 
 def results_in(scene: bpy.types.Scene) -> list[bpy.types.Object]:
     return [object_ for object_ in scene.objects if object_.get(MARK) and object_.parent]
+
+
+def shown_in(scene: bpy.types.Scene) -> list[bpy.types.Object]:
+    return [shown_of(result.parent) for result in results_in(scene)]
 
 
 def settle(scene: bpy.types.Scene) -> None:
@@ -51,7 +80,7 @@ def build_results(
     _check(field, len(parts))
     settle(scene)
     skin = hot_skin(field)
-    return [_build_result(scene, part, *_surface_of(skin, index), material) for index, part in enumerate(parts)]
+    return [_build_result(scene, part, index, *_surface_of(skin, index), material) for index, part in enumerate(parts)]
 
 
 def _check(field: Field, parts: int) -> None:
@@ -73,14 +102,15 @@ def _surface_of(skin: HotSkin, part: int) -> tuple[np.ndarray, np.ndarray, np.nd
 def _build_result(
     scene: bpy.types.Scene,
     part: bpy.types.Object,
+    number: int,
     places: np.ndarray,
     triangles: np.ndarray,
     temperature: np.ndarray,
     material: bpy.types.Material,
 ) -> bpy.types.Object:
     matrix = np.array(part.matrix_world)
-    world = places / metres_per_unit(scene)
-    local = np.linalg.solve(matrix[:3, :3], (world - matrix[:3, 3]).T).T
+    placed = np.linalg.inv(matrix) @ np.diag([1 / metres_per_unit(scene)] * 3 + [1.0])
+    local = places @ placed[:3, :3].T + placed[:3, 3]
     if np.linalg.det(matrix[:3, :3]) < 0:  # a mirrored part turns its faces over, and these are outward in the world
         triangles = triangles[:, ::-1]
     mesh = mesh_of(f"{part.name} temperature", local, triangles)
@@ -88,7 +118,8 @@ def _build_result(
         write_kelvin(mesh, name, temperature)
     mesh.set_sharp_from_angle(angle=CREASE)
     mesh.materials.append(material)
-    result = result_of(part) or _new_result(part, mesh)
+    result = result_of(part) or new_child(part, mesh, MARK)
+    result[NUMBER], result[PLACED] = number, placed.ravel().tolist()
     stale, result.data = result.data, mesh
     _drop(stale)
     return result
@@ -117,10 +148,10 @@ def write_kelvin(mesh: bpy.types.Mesh, name: str, temperature: np.ndarray) -> No
     mesh.attributes.new(name, "FLOAT", "POINT").data.foreach_set("value", temperature.astype(np.float32))
 
 
-def _new_result(part: bpy.types.Object, mesh: bpy.types.Mesh) -> bpy.types.Object:
+def new_child(part: bpy.types.Object, mesh: bpy.types.Mesh, mark: str) -> bpy.types.Object:
     """A child at the part's own place, so that it goes where the part goes and nowhere else."""
     result = bpy.data.objects.new(mesh.name, mesh)
-    result[MARK] = True
+    result[mark] = True
     part.users_collection[0].objects.link(result)
     result.parent = part
     result.lock_location = result.lock_rotation = result.lock_scale = (True, True, True)
@@ -150,16 +181,20 @@ def read_kelvin(mesh: bpy.types.Mesh, name: str) -> np.ndarray:
     return values
 
 
-def places_and_triangles(result: bpy.types.Object) -> tuple[np.ndarray, np.ndarray]:
-    """World places (P, 3) in the host's units and outward triangles (T, 3) of a result object."""
-    mesh, matrix = result.data, np.array(result.matrix_world)
+def local_surface(mesh: bpy.types.Mesh) -> tuple[np.ndarray, np.ndarray]:
+    """Places (P, 3) and triangles (T, 3) of a mesh of triangles, in its own axes."""
     places = np.empty(3 * len(mesh.vertices), dtype=np.float32)
     mesh.vertices.foreach_get("co", places)
-    mesh.calc_loop_triangles()
-    triangles = np.empty(3 * len(mesh.loop_triangles), dtype=np.int32)
-    mesh.loop_triangles.foreach_get("vertices", triangles)
-    world = places.reshape(-1, 3).astype(np.float64) @ matrix[:3, :3].T + matrix[:3, 3]
-    triangles = triangles.reshape(-1, 3)
+    triangles = np.empty(len(mesh.loops), dtype=np.int32)
+    mesh.loops.foreach_get("vertex_index", triangles)
+    return places.reshape(-1, 3).astype(np.float64), triangles.reshape(-1, 3)
+
+
+def places_and_triangles(result: bpy.types.Object) -> tuple[np.ndarray, np.ndarray]:
+    """World places (P, 3) in the host's units and outward triangles (T, 3) of a result object."""
+    places, triangles = local_surface(result.data)
+    matrix = np.array(result.matrix_world)
+    world = places @ matrix[:3, :3].T + matrix[:3, 3]
     return world, triangles if np.linalg.det(matrix[:3, :3]) > 0 else triangles[:, ::-1]
 
 

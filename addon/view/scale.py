@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -12,6 +12,9 @@ from .colours import ColourMap, colours_at
 # A part of one temperature still gets a scale: half a kelvin to either side.
 LEAST_SPAN = 1e-3
 SPAN_OF_ONE_TEMPERATURE = 1.0
+
+# More isotherms than these run into each other.
+MOST_LEVELS = 100
 
 
 @dataclass(frozen=True)
@@ -76,6 +79,18 @@ class Scale:
             for value in numbers.tolist()
         )
 
+    def levels(self, step: float) -> tuple[float, ...]:
+        """Temperatures (K) of the isotherms: multiples of ``step`` (K) in the unit, or the ticks where that is 0.
+
+        A step that would draw more than MOST_LEVELS is widened to the next that does not.
+        """
+        if step <= 0:
+            return tuple(tick.temperature for tick in self.ticks())
+        least = (self.high - self.low) / MOST_LEVELS
+        step = step * math.ceil(least / step - 1e-9) if step < least else step
+        first, last = math.ceil((self.low - self.unit.zero) / step), math.floor((self.high - self.unit.zero) / step)
+        return tuple(self.unit.zero + step * number for number in range(first, last + 1))
+
 
 def spanning(coldest: float, hottest: float, unit: Unit, colour_map: ColourMap) -> Scale:
     """The scale from ``coldest`` to ``hottest`` (K), widened about its middle where the two are as good as one."""
@@ -83,6 +98,16 @@ def spanning(coldest: float, hottest: float, unit: Unit, colour_map: ColourMap) 
         middle, half = 0.5 * (coldest + hottest), 0.5 * SPAN_OF_ONE_TEMPERATURE
         return Scale(middle - half, middle + half, unit, colour_map)
     return Scale(coldest, hottest, unit, colour_map)
+
+
+def inked(scale: Scale) -> Scale:
+    """The scale of lines drawn over its colours: dark ones lightened and light ones darkened, so that all are seen."""
+    stops = scale.colour_map.stops
+    luminance = stops @ (0.2126, 0.7152, 0.0722)
+    lighter, darker = stops + 0.25 * (1 - stops), 0.32 * stops
+    return replace(
+        scale, colour_map=replace(scale.colour_map, stops=np.where(luminance[:, None] < 0.10, lighter, darker))
+    )
 
 
 def round_step(least: float) -> float:

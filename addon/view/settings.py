@@ -14,7 +14,18 @@ from ..host import redraw
 from ..units import TEMPERATURE_UNITS
 from .colours import DEFAULT_MAP, colour_maps
 from .material import SHOWN, paint, set_range
-from .result_object import TEMPERATURE, colour, part_of, result_of, results_in, settle, temperatures
+from .over_result import over_results
+from .result_object import (
+    TEMPERATURE,
+    colour,
+    part_of,
+    result_of,
+    results_in,
+    settle,
+    shown_in,
+    shown_of,
+    temperatures,
+)
 from .scale import Scale, Unit, spanning
 
 TRUE_TRANSFORM = "Standard"
@@ -31,6 +42,11 @@ def _range_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
 
 def _refreshed(settings: ViewSettings, _context: bpy.types.Context) -> None:
     refresh(settings.id_data)
+
+
+def _lines_changed(_settings: ViewSettings, _context: bpy.types.Context) -> None:
+    over_results.forget()
+    redraw()
 
 
 def _showing_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
@@ -78,6 +94,18 @@ class ViewSettings(bpy.types.PropertyGroup):
     legend: BoolProperty(
         name="Legend", description="Draw the legend in the 3D view", default=True, update=lambda _self, _c: redraw()
     )
+    marks: BoolProperty(
+        name="Hottest and coldest", description="Mark the hottest and the coldest place on the surfaces in the 3D view",
+        default=True, update=lambda _self, _c: redraw(),
+    )  # fmt: skip
+    isotherms: BoolProperty(
+        name="Isotherms", description="Draw lines of equal temperature, in the 3D view and in pictures",
+        default=True, update=_lines_changed,
+    )  # fmt: skip
+    isotherm_step: FloatProperty(
+        name="Degrees between", description="From one isotherm to the next, in the scene's degrees; 0 = as the legend",
+        min=0.0, default=0.0, precision=2, update=_lines_changed,
+    )  # fmt: skip
     engine: EnumProperty(
         name="Render with",
         description="What renders pictures; their colours are the same with each",
@@ -91,6 +119,7 @@ class ViewSettings(bpy.types.PropertyGroup):
     coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
     hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")
     material: PointerProperty(type=bpy.types.Material, options={"HIDDEN"})
+    cut: PointerProperty(type=bpy.types.Object, options={"HIDDEN"}, description="The empty that cuts the results open")
     solid_before: StringProperty(options={"HIDDEN"}, description="How Solid shading was set before results, as JSON")
 
 
@@ -113,21 +142,26 @@ def scale_of(scene: bpy.types.Scene) -> Scale:
     return spanning(settings.low, settings.high, unit, colour_maps()[settings.colour_map])
 
 
+def levels_of(scene: bpy.types.Scene) -> tuple[float, ...]:
+    """Temperatures (K) of the isotherms; none where none are wanted."""
+    settings, scale = settings_of(scene), scale_of(scene)
+    return scale.levels(settings.isotherm_step * scale.unit.kelvin_per_degree) if settings.isotherms else ()
+
+
 def refresh(scene: bpy.types.Scene) -> None:
     """Bring range, material and vertex colours in line with the settings and with the results in the scene."""
-    fields = [(result, temperatures(result)) for result in results_in(scene)]
-    fields = [(result, field) for result, field in fields if field.size]
+    fields = [field for result in results_in(scene) if (field := temperatures(result)).size]
     if not fields:
         return
     settings = settings_of(scene)
-    settings.coldest = min(float(field.min()) for _, field in fields)
-    settings.hottest = max(float(field.max()) for _, field in fields)
-    if settings.range == "AUTOMATIC":
-        settings.low, settings.high = settings.coldest, settings.hottest
+    settings.coldest = min(float(field.min()) for field in fields)
+    settings.hottest = max(float(field.max()) for field in fields)
+    _span_all(scene)
     scale = scale_of(scene)
     paint(material_of(scene), scale)
-    for result, _ in fields:
+    for result in {*results_in(scene), *shown_in(scene)}:
         colour(result, scale)
+    over_results.forget()
     redraw()
 
 
@@ -144,12 +178,32 @@ def recolour(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], temperat
     if not ends:
         return
     settings.coldest, settings.hottest = min(ends), max(ends)
-    if settings.range == "AUTOMATIC":
-        settings.low, settings.high = settings.coldest, settings.hottest
+    _span_all(scene)
     scale = scale_of(scene)
     set_range(material_of(scene), scale)
     for result in results_in(scene):
         colour(result, scale)
+    over_results.forget()
+    redraw()
+
+
+def _span_all(scene: bpy.types.Scene) -> None:
+    """Let an automatic range span all that is shown: the surfaces, and what a cut shows of the inside."""
+    settings = settings_of(scene)
+    if settings.range == "AUTOMATIC":
+        inside = [field for shown in shown_in(scene) if (field := temperatures(shown)).size]
+        settings.low = min([settings.coldest, *(float(field.min()) for field in inside)])
+        settings.high = max([settings.hottest, *(float(field.max()) for field in inside)])
+
+
+def refresh_cut(scene: bpy.types.Scene) -> None:
+    """Bring what a cut shows in line with the rest, quickly enough for a plane that is being moved."""
+    _span_all(scene)
+    scale = scale_of(scene)
+    set_range(material_of(scene), scale)
+    for shown in shown_in(scene):
+        colour(shown, scale)
+    over_results.forget()
     redraw()
 
 
@@ -159,8 +213,10 @@ def apply_showing(scene: bpy.types.Scene) -> None:
     settings, results = settings_of(scene), results_in(scene)
     shown = settings.showing == "RESULT"
     for result in results:
-        _hide(scene, result, not shown)
-        _hide(scene, part_of(result), shown)
+        part = part_of(result)
+        for object_ in {result, shown_of(part)}:
+            _hide(scene, object_, not shown or object_ != shown_of(part))
+        _hide(scene, part, shown)
     if results and shown:
         _colour_solid_views(settings)
     else:
@@ -231,6 +287,16 @@ def draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
         warning = layout.column(align=True)
         warning.label(text=f"{scene.view_settings.view_transform} shifts the colours outside Solid.", icon="INFO")
         warning.operator(ShowTrueColours.bl_idname)
+
+
+def draw_lines(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
+    """What is drawn over the surfaces, as rows of ``layout``."""
+    settings = settings_of(scene)
+    layout.prop(settings, "marks")
+    layout.prop(settings, "isotherms")
+    step = layout.row()
+    step.active = settings.isotherms
+    step.prop(settings, "isotherm_step")
 
 
 class ShowTrueColours(bpy.types.Operator):

@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-import time
-
 import bpy
 import numpy as np
 import pytest
 from fluxface.addon import live, study, view
 from fluxface.addon.panels.run import standing
 from fluxface.addon.view.result_object import TEMPERATURE, read_kelvin, result_of
-from modelled import lamp
+from modelled import lamp, ready
 
 
 @pytest.fixture
@@ -20,15 +18,6 @@ def part(scene) -> bpy.types.Object:
     bpy.ops.fluxface.run()
     ready()
     return made
-
-
-def ready() -> None:
-    """What the clock of a window would see to."""
-    for _ in range(1000):
-        if live.live.look() is None:
-            return
-        time.sleep(0.02)
-    raise AssertionError("the responses did not come")
 
 
 def shown(part: bpy.types.Object) -> np.ndarray:
