@@ -149,6 +149,8 @@ def _sized_tag(tag: TagDefinition, metres: float) -> Tag:
 
 def _tag(terms: Terms, name: str, metres: float) -> Tag:
     """Raises Trouble when the terms exclude each other or lack something."""
+    if terms.insulated:
+        return as_tag(terms, name, metres)
     others = [
         words
         for words, used in (
@@ -173,7 +175,9 @@ def _tag(terms: Terms, name: str, metres: float) -> Tag:
 
 
 def as_tag(terms: Terms, name: str, metres: float) -> Tag:
-    """The terms that are switched on, whether or not they go together."""
+    """The terms that are switched on, whether or not they go together; none where it is meant to be insulated."""
+    if terms.insulated:
+        return Tag(name=name)
     return Tag(
         name=name,
         heat=as_typed(terms.heat) if terms.use_heat else 0.0,

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gpu
 from mathutils import Matrix
 
 # Towards the eye, enough to win over the face itself and too little to show through a thin wall: as a share of the
@@ -18,3 +19,25 @@ def lifted(projection: Matrix) -> Matrix:
     else:
         nearer[2][3] *= 1.0 + LIFT
     return nearer
+
+
+def hatching() -> gpu.types.GPUShader:
+    """Fills with stripes across the screen. Needs a window.
+
+    place: from the part's axes to the screen. stripes, between: their colours, in linear light. period: pixels.
+    """
+    told = gpu.types.GPUShaderCreateInfo()
+    told.push_constant("MAT4", "place")
+    told.push_constant("VEC4", "stripes")
+    told.push_constant("VEC4", "between")
+    told.push_constant("FLOAT", "period")
+    told.vertex_in(0, "VEC3", "pos")
+    told.fragment_out(0, "VEC4", "colour")
+    told.vertex_source("void main() { gl_Position = place * vec4(pos, 1.0); }")
+    told.fragment_source(
+        "void main() {"
+        " float along = fract((gl_FragCoord.x + gl_FragCoord.y) / period);"
+        " colour = mix(between, stripes, step(along, 0.35));"
+        " }"
+    )
+    return gpu.shader.create_from_info(told)

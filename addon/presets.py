@@ -33,7 +33,7 @@ PRESETS = (
 
 def apply(terms: Terms, preset: Preset) -> None:
     """Give a tag the surroundings of a preset; its heat stays as it is."""
-    terms.use_temperature = False
+    terms.use_temperature = terms.insulated = False
     terms.use_convection, terms.film = True, "COEFFICIENT"
     terms.coefficient, terms.ambient = preset.coefficient, preset.ambient
     terms.use_radiation = preset.emissivity is not None

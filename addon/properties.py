@@ -76,6 +76,9 @@ def next_free_name(name: str, taken: set[str]) -> str:
 class Terms:
     """What a set of faces carries; the terms in use add up."""
 
+    insulated: BoolProperty(
+        name="Insulated", description="No heat crosses these faces, and that is meant: the other terms are left out"
+    )  # fmt: skip
     use_heat: BoolProperty(name="Heat", description="Watts that enter through these faces, spread over their area")
     heat: FloatProperty(
         name="Heat (W)", description="Total heat into the part through all faces of the tag; negative draws heat out",
@@ -123,6 +126,12 @@ class Terms:
         name="Held at", description="Temperature of these faces",
         default=ROOM, min=0.0, unit="TEMPERATURE", step=100, update=_tell_followers,
     )  # fmt: skip
+
+
+def carries_heat(terms: Terms) -> bool:
+    """Whether any term is in force."""
+    switches = (terms.use_heat, terms.use_heat_flux, terms.use_convection, terms.use_radiation, terms.use_temperature)
+    return any(switches) and not terms.insulated
 
 
 class TagDefinition(Terms, bpy.types.PropertyGroup):
@@ -301,6 +310,9 @@ class StudySettings(bpy.types.PropertyGroup):
     untagged: PointerProperty(type=UntaggedTerms)
     show_tags: BoolProperty(
         name="Show on the Part", description="Draw the faces of each tag in its colour", default=True
+    )  # fmt: skip
+    show_untagged: BoolProperty(
+        name="The Rest Too", description="Draw the faces without a tag in grey, hatched where nothing is set for them"
     )  # fmt: skip
     auto_run: BoolProperty(
         name="Run After Each Change", description="Run by itself, a moment after the last change, while work goes on"

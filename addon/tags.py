@@ -9,6 +9,7 @@ from __future__ import annotations
 import json
 import secrets
 from collections.abc import Iterable
+from itertools import compress
 from typing import Any
 
 import bmesh
@@ -47,6 +48,22 @@ def new(scene: bpy.types.Scene, name: str) -> TagDefinition:
 def active(scene: bpy.types.Scene) -> TagDefinition | None:
     settings = scene.fluxface
     return settings.tags[settings.active_tag] if 0 <= settings.active_tag < len(settings.tags) else None
+
+
+def of_uid(scene: bpy.types.Scene, uid: int) -> TagDefinition | None:
+    return next((tag for tag in scene.fluxface.tags if tag.uid == uid), None)
+
+
+def activate(scene: bpy.types.Scene, uid: int) -> TagDefinition:
+    """Make a tag the active one.
+
+    Raises Trouble when there is none of that id, as on a face without a tag.
+    """
+    tag = of_uid(scene, uid)
+    if tag is None:
+        raise Trouble("case", "There is no tagged face at that place.", "Pick a face that is drawn in a tag's colour.")
+    scene.fluxface.active_tag = list(scene.fluxface.tags).index(tag)
+    return tag
 
 
 def delete(scene: bpy.types.Scene, uid: int) -> None:
@@ -133,6 +150,17 @@ def selected(mesh: bpy.types.Mesh) -> np.ndarray:
     return chosen
 
 
+def selections(parts: Iterable[bpy.types.Object]) -> list[tuple[bpy.types.Object, np.ndarray]]:
+    """The parts that have selected faces, and which (F,).
+
+    Raises Trouble when no face is selected.
+    """
+    found = [(part, selected(part.data)) for part in parts]
+    if not any(faces.any() for _, faces in found):
+        raise Trouble("case", "No faces are selected.", "Select faces in edit mode.")
+    return [(part, faces) for part, faces in found if faces.any()]
+
+
 def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int | np.ndarray) -> None:
     """Give the faces, (F,) bool, to a tag, or to one each; 0 leaves them untagged. The shape is not touched.
 
@@ -141,10 +169,9 @@ def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int | np.ndarray) -> None
     if mesh.is_editmode:
         edited = bmesh.from_edit_mesh(mesh)
         layer = edited.faces.layers.int.get(ATTRIBUTE) or edited.faces.layers.int.new(ATTRIBUTE)
-        edited.faces.ensure_lookup_table()
-        chosen = np.flatnonzero(faces).tolist()
-        for index, given in zip(chosen, np.broadcast_to(uid, len(chosen)).tolist(), strict=True):
-            edited.faces[index][layer] = given
+        given = np.broadcast_to(uid, int(faces.sum())).tolist()
+        for face, its in zip(compress(edited.faces, faces.tolist()), given, strict=True):
+            face[layer] = its
         bmesh.update_edit_mesh(mesh, loop_triangles=False, destructive=False)
         return
     uids = read(mesh)
@@ -164,9 +191,8 @@ def replace(mesh: bpy.types.Mesh, uid: int, other: int) -> None:
 def select(mesh: bpy.types.Mesh, faces: np.ndarray) -> None:
     """In edit mode, select the faces, (F,) bool, besides what is selected; hidden ones come back in sight."""
     edited = bmesh.from_edit_mesh(mesh)
-    edited.faces.ensure_lookup_table()
-    for index in np.flatnonzero(faces):
-        edited.faces[index].hide_set(False)
-        edited.faces[index].select_set(True)
+    for face in compress(edited.faces, faces.tolist()):
+        face.hide_set(False)
+        face.select_set(True)
     edited.select_flush_mode()
     bmesh.update_edit_mesh(mesh, loop_triangles=False, destructive=False)

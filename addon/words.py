@@ -6,6 +6,7 @@ import bpy
 
 from ..solver.case import Convection, Tag
 from .cases import as_tag
+from .language import label
 from .properties import ContactSettings, Terms
 from .units import as_typed, metres_per_unit, power_text, short_temperature_text
 
@@ -19,6 +20,13 @@ CAUTIONS = (
 def carries(scene: bpy.types.Scene, terms: Terms) -> str:
     """The terms of a tag in short, as in "12 W" or "8 W/m²K to 25 °C"; empty when it carries none."""
     return carried(scene, as_tag(terms, "", metres_per_unit(scene)))
+
+
+def carries_or_not(scene: bpy.types.Scene, terms: Terms) -> str:
+    """The same; where it carries none, whether that is meant."""
+    if terms.insulated:
+        return label("insulated")
+    return carries(scene, terms) or label("nothing set: insulated")
 
 
 def carried(scene: bpy.types.Scene, tag: Tag) -> str:
@@ -49,6 +57,8 @@ def _film(convection: Convection) -> str:
 
 def clash(terms: Terms) -> str:
     """The warning that two terms exclude each other, or nothing."""
+    if terms.insulated:
+        return ""
     others = terms.use_heat or terms.use_heat_flux or terms.use_convection or terms.use_radiation
     return "A held temperature excludes every other term." if terms.use_temperature and others else ""
 

@@ -4,37 +4,26 @@ from __future__ import annotations
 
 import bpy
 import numpy as np
-from bpy.props import IntProperty, StringProperty
+from bpy.props import BoolProperty, IntProperty, StringProperty
 
 from ...solver.errors import Trouble
 from .. import presets, study, tags, upkeep, view
+from ..language import report
 from ..places import enter_edit_mode
 from .telling import TellsTrouble
 
 
-def _meshes(context: bpy.types.Context) -> list[bpy.types.Mesh]:
+def _parts(context: bpy.types.Context) -> list[bpy.types.Object]:
     """Those in edit mode, or else the active one."""
     edited = context.mode == "EDIT_MESH"
-    return [part.data for part in (context.objects_in_mode_unique_data if edited else [study.active_part(context)])]
+    return list(context.objects_in_mode_unique_data) if edited else [study.active_part(context)]
 
 
-def _selections(context: bpy.types.Context) -> list[tuple[bpy.types.Mesh, np.ndarray]]:
-    """Meshes with the faces selected on them.
-
-    Raises Trouble when no face is selected.
-    """
-    found = [(mesh, tags.selected(mesh)) for mesh in _meshes(context)]
-    if not any(faces.any() for _, faces in found):
-        raise Trouble("case", "No faces are selected.", "Select faces in edit mode.")
-    return found
-
-
-def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Mesh, np.ndarray]], uid: int) -> None:
+def _give(context: bpy.types.Context, selections: list[tuple[bpy.types.Object, np.ndarray]], uid: int) -> None:
     view.settings_of(context.scene).showing = "PART"
-    for mesh, faces in selections:
-        if faces.any():
-            tags.give(mesh, faces, uid)
-            tags.keep_copies(context.scene, mesh)
+    for part, faces in selections:
+        tags.give(part.data, faces, uid)
+        tags.keep_copies(context.scene, part.data)
     upkeep.refresh()
 
 
@@ -70,7 +59,7 @@ class NewTag(_OnPart, bpy.types.Operator):
     name: StringProperty(name="Name", default="face tag")
 
     def act(self, context: bpy.types.Context) -> None:
-        selections = _selections(context)
+        selections = tags.selections(_parts(context))
         study.restore_tags(context.scene)
         _give(context, selections, tags.new(context.scene, self.name).uid)
 
@@ -81,7 +70,7 @@ class GiveToTag(_OnTag, bpy.types.Operator):
     bl_description = "Give the selected faces to the active tag; a face is in one tag at most"
 
     def act(self, context: bpy.types.Context) -> None:
-        _give(context, _selections(context), tags.active(context.scene).uid)
+        _give(context, tags.selections(_parts(context)), tags.active(context.scene).uid)
 
 
 class TakeFromTags(_OnPart, bpy.types.Operator):
@@ -90,7 +79,49 @@ class TakeFromTags(_OnPart, bpy.types.Operator):
     bl_description = "Take the selected faces out of whichever tag they are in"
 
     def act(self, context: bpy.types.Context) -> None:
-        _give(context, _selections(context), 0)
+        _give(context, tags.selections(_parts(context)), 0)
+
+
+def _other_tags(_operator: bpy.types.Operator, context: bpy.types.Context, _typed: str) -> list[str]:
+    own = tags.active(context.scene)
+    return [tag.name for tag in context.scene.fluxface.tags if tag != own]
+
+
+class MoveFaces(_OnTag, bpy.types.Operator):
+    bl_idname = "fluxface.tag_move"
+    bl_label = "Move Faces to Tag"
+    bl_description = "Give the faces of the active tag, or those of them that are selected, to another tag"
+
+    to: StringProperty(
+        name="To", description="The tag that gets the faces", search=_other_tags, search_options={"SUGGESTION"}
+    )
+    only_selected: BoolProperty(name="Selected Faces Only", description="Leave the tag's other faces where they are")
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        if len(context.scene.fluxface.tags) < 2:
+            cls.poll_message_set("There is no other tag to move faces to")
+            return False
+        return super().poll(context)
+
+    def invoke(self, context: bpy.types.Context, _event: bpy.types.Event) -> set[str]:
+        others = _other_tags(self, context, "")
+        self.to = self.to if self.to in others else others[0]
+        return context.window_manager.invoke_props_dialog(self)
+
+    def act(self, context: bpy.types.Context) -> None:
+        own, other = tags.active(context.scene), context.scene.fluxface.tags.get(self.to)
+        if other is None or other == own:
+            raise Trouble("case", f"There is no other tag '{self.to}'.", "Choose one of the scene's tags.")
+        moved = []
+        for part in _parts(context):
+            faces = tags.read(part.data) == own.uid
+            moved.append((part, faces & tags.selected(part.data) if self.only_selected else faces))
+        count = int(sum(faces.sum() for _, faces in moved))
+        if not count:
+            raise Trouble("case", f"No such faces are in '{own.name}'.", "Make the tag that has them the active one.")
+        _give(context, moved, other.uid)
+        self.report({"INFO"}, report("Faces moved to '{name}': {count}.", name=other.name, count=count))
 
 
 class SelectTag(_OnTag, bpy.types.Operator):
@@ -101,8 +132,8 @@ class SelectTag(_OnTag, bpy.types.Operator):
     def act(self, context: bpy.types.Context) -> None:
         uid = tags.active(context.scene).uid
         enter_edit_mode(context, study.active_part(context))
-        for mesh in _meshes(context):
-            tags.select(mesh, tags.read(mesh) == uid)
+        for part in _parts(context):
+            tags.select(part.data, tags.read(part.data) == uid)
 
 
 class DeleteTag(TellsTrouble, bpy.types.Operator):
@@ -138,5 +169,5 @@ class UsePreset(_OnTag, bpy.types.Operator):
 
 
 register, unregister = bpy.utils.register_classes_factory(
-    (NewTag, GiveToTag, TakeFromTags, SelectTag, DeleteTag, UsePreset)
+    (NewTag, GiveToTag, TakeFromTags, MoveFaces, SelectTag, DeleteTag, UsePreset)
 )

@@ -8,6 +8,7 @@ from ...solver.errors import Trouble
 from ...solver.materials import library
 from .. import ledger, study, tags, words
 from ..cases import FILM_NEEDS
+from ..language import label
 from ..presets import PRESETS
 from ..properties import Terms
 from ..units import area_text
@@ -36,10 +37,10 @@ class TagList(bpy.types.UIList):
         end = split.row()
         end.alignment = "RIGHT"
         area = areas(context).get(tag.uid)
-        end.label(text=area_text(context.scene, area) if area else "no faces")
+        end.label(text=area_text(context.scene, area) if area else label("no faces"))
         carried = lines.row()
         carried.active = False
-        carried.label(text=words.carries(context.scene, tag) or "insulated")
+        carried.label(text=words.carries_or_not(context.scene, tag))
 
 
 class TagsPanel(Sidebar, bpy.types.Panel):
@@ -53,6 +54,8 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         buttons = row.column(align=True)
         buttons.operator("fluxface.tag_new", text="", icon="ADD")
         buttons.operator("fluxface.tag_delete", text="", icon="REMOVE")
+        buttons.operator("fluxface.tag_pick", text="", icon="EYEDROPPER")
+        buttons.menu("FLUXFACE_MT_tag_faces", text="", icon="DOWNARROW_HLT")
         if changed := ledger.of_present(context):
             box = layout.box()
             for sentence in changed:
@@ -66,7 +69,11 @@ class TagsPanel(Sidebar, bpy.types.Panel):
         row.operator("fluxface.tag_give")
         row.operator("fluxface.tag_take")
         row.operator("fluxface.tag_select")
-        layout.prop(settings, "show_tags")
+        row = layout.row(align=True)
+        row.prop(settings, "show_tags")
+        rest = row.row()
+        rest.active = settings.show_tags
+        rest.prop(settings, "show_untagged")
         layout.menu("FLUXFACE_MT_presets", icon="PRESET")
         draw_terms(context, layout, tag)
 
@@ -97,8 +104,8 @@ class UntaggedPanel(Sidebar, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         untagged = context.scene.fluxface.untagged
         _draw_untagged_faces(context, self.layout)
-        told = words.carries(context.scene, untagged)
-        paragraph(context, self.layout, f"Faces without a tag: {told or 'insulated'}.")
+        told = words.carries_or_not(context.scene, untagged)
+        paragraph(context, self.layout, label("Faces without a tag: {carried}.", carried=told))
         draw_terms(context, self.layout, untagged)
 
 
@@ -107,7 +114,8 @@ def _draw_untagged_faces(context: bpy.types.Context, layout: bpy.types.UILayout)
     if part is not None and part.fluxface.body:
         count = part.fluxface.untagged_faces
         area = area_text(context.scene, part.fluxface.untagged)
-        layout.label(text=f"{count} face{'s' if count != 1 else ''}, {area}" if count else "Every face is in a tag")
+        rest = label("Faces: {count}, {area}", count=count, area=area)
+        layout.label(text=rest if count else label("Every face is in a tag"))
     layout.operator("fluxface.untagged_select", icon="RESTRICT_SELECT_OFF")
 
 
@@ -115,7 +123,9 @@ def draw_terms(context: bpy.types.Context, layout: bpy.types.UILayout, terms: Te
     """A switch for each term and, under it, its fields while it is on."""
     if message := words.clash(terms):
         paragraph(context, layout, message, "ERROR")
+    layout.prop(terms, "insulated")
     column = layout.column()
+    column.active = not terms.insulated
     for switch, draw in TERMS:
         column.prop(terms, switch)
         if getattr(terms, switch):
@@ -164,6 +174,28 @@ TERMS = (
 )
 
 
+class TagFacesMenu(bpy.types.Menu):
+    bl_idname = "FLUXFACE_MT_tag_faces"
+    bl_label = "Face Tags"
+    bl_description = "Select and move the faces of tags, and grow a selection to a patch"
+
+    def draw(self, _context: bpy.types.Context) -> None:
+        layout = self.layout
+        layout.operator("fluxface.select_flat", icon="SNAP_FACE")
+        layout.operator("fluxface.select_smooth", icon="SMOOTHCURVE")
+        layout.separator()
+        layout.operator("fluxface.tag_select", icon="RESTRICT_SELECT_OFF")
+        layout.operator("fluxface.untagged_select")
+        layout.separator()
+        layout.operator("fluxface.tag_move", icon="FORWARD")
+
+
+def offer_in_select_menu(menu: bpy.types.Menu, _context: bpy.types.Context) -> None:
+    """In the host's own menu of edit mode, one line."""
+    menu.layout.separator()
+    menu.layout.menu(TagFacesMenu.bl_idname)
+
+
 class PresetsMenu(bpy.types.Menu):
     bl_idname = "FLUXFACE_MT_presets"
     bl_label = "Usual Surroundings"
@@ -190,6 +222,16 @@ class FinishesMenu(bpy.types.Menu):
             self.layout.operator("fluxface.emissivity_use", text=text).emissivity = emissivity
 
 
-register, unregister = bpy.utils.register_classes_factory(
-    (TagList, PresetsMenu, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel)
+_register, _unregister = bpy.utils.register_classes_factory(
+    (TagList, TagFacesMenu, PresetsMenu, FinishesMenu, TagsPanel, TagMeshPanel, UntaggedPanel)
 )
+
+
+def register() -> None:
+    _register()
+    bpy.types.VIEW3D_MT_select_edit_mesh.append(offer_in_select_menu)
+
+
+def unregister() -> None:
+    bpy.types.VIEW3D_MT_select_edit_mesh.remove(offer_in_select_menu)
+    _unregister()

@@ -1,0 +1,94 @@
+"""Patches of a surface: faces reached from others across edges at which the surface does not turn much."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import bpy
+import numpy as np
+
+# Between unit normals in single precision: a flat face of many pieces is flat to about this.
+ROUNDING = 1e-5
+
+# Which of the faces ``beside`` (n,) may be reached from ``face`` (n,), where all began with ``seed`` (n,).
+Joins = Callable[[np.ndarray, np.ndarray, np.ndarray], np.ndarray]
+
+
+@dataclass(frozen=True)
+class Facets:
+    """The faces of a mesh and what lies beside them.
+
+    normals: (F, 3) unit. start, count: (F,) where each face's sides begin among all, and how many it has. beside: (L,)
+    the face across each side; -1 where there is none, several, or a hidden one.
+    """
+
+    normals: np.ndarray
+    start: np.ndarray
+    count: np.ndarray
+    beside: np.ndarray
+
+    def alike(self, one: np.ndarray, other: np.ndarray, angle: float) -> np.ndarray:
+        """(n,) whether the faces ``one`` and ``other``, both (n,), look the same way to within ``angle`` (radians)."""
+        chord = self.normals[one] - self.normals[other]
+        return np.einsum("ni,ni->n", chord, chord) <= (2.0 * np.sin(0.5 * angle) + ROUNDING) ** 2
+
+
+def flat_patch(facets: Facets, seeds: np.ndarray, angle: float) -> np.ndarray:
+    """(F,) the seeds, (F,) bool, and what is joined to one and looks as it does to within ``angle`` (radians)."""
+    return _reached(facets, seeds, lambda _face, beside, seed: facets.alike(seed, beside, angle))
+
+
+def smooth_patch(facets: Facets, seeds: np.ndarray, angle: float) -> np.ndarray:
+    """(F,) the seeds, (F,) bool, and all up to edges at which the surface turns by more than ``angle`` (radians)."""
+    return _reached(facets, seeds, lambda face, beside, _seed: facets.alike(face, beside, angle))
+
+
+def _reached(facets: Facets, seeds: np.ndarray, joins: Joins) -> np.ndarray:
+    """Ring by ring about the seeds, each ring at once."""
+    reached, front = seeds.copy(), np.flatnonzero(seeds)
+    seed = np.arange(len(seeds))
+    last = np.empty(len(seeds), np.int64)
+    while len(front):
+        count = facets.count[front]
+        within = np.arange(count.sum()) - np.repeat(np.cumsum(count) - count, count)
+        face, beside = np.repeat(front, count), facets.beside[np.repeat(facets.start[front], count) + within]
+        new = (beside >= 0) & ~reached[beside]
+        face, beside = face[new], beside[new]
+        joined = joins(face, beside, seed[face])
+        face, beside = face[joined], beside[joined]
+        # A face may be reached from several at once: the last of them counts.
+        last[beside] = np.arange(len(beside))
+        once = last[beside] == np.arange(len(beside))
+        front = beside[once]
+        reached[front], seed[front] = True, seed[face[once]]
+    return reached
+
+
+def facets_of(part: bpy.types.Object) -> Facets:
+    """The faces of the part's own mesh as they are now, in edit mode too; they look as in the world."""
+    if part.mode == "EDIT":
+        part.update_from_editmode()
+    mesh = part.data
+    sides, count = np.empty(len(mesh.loops), np.int32), np.empty(len(mesh.polygons), np.int32)
+    start, hidden = np.empty(len(mesh.polygons), np.int32), np.empty(len(mesh.polygons), bool)
+    normals = np.empty((len(mesh.polygons), 3), np.float32)
+    mesh.loops.foreach_get("edge_index", sides)
+    mesh.polygons.foreach_get("loop_total", count)
+    mesh.polygons.foreach_get("loop_start", start)
+    mesh.polygons.foreach_get("hide", hidden)
+    mesh.polygons.foreach_get("normal", normals.ravel())
+    turned = normals @ np.linalg.pinv(np.array(part.matrix_world.to_3x3(), float))
+    turned /= np.maximum(np.linalg.norm(turned, axis=1, keepdims=True), 1e-300)
+    return Facets(turned.astype(np.float32), start, count, _beside(sides, count, len(mesh.edges), hidden))
+
+
+def _beside(sides: np.ndarray, count: np.ndarray, edges: int, hidden: np.ndarray) -> np.ndarray:
+    """(L,) the face across each side. sides: (L,) the edge of each."""
+    face = np.repeat(np.arange(len(count)), count)
+    first, last = np.empty(edges, np.int64), np.empty(edges, np.int64)
+    # Of several written to one place the last stays.
+    first[sides[::-1]], last[sides] = face[::-1], face
+    two = np.bincount(sides, minlength=edges) == 2
+    across = np.where(face == first[sides], last[sides], first[sides])
+    return np.where(two[sides] & ~hidden[across], across, -1)
