@@ -88,7 +88,8 @@ def _fill(row: KeptRun, folder: Path, summary: Summary) -> None:
     except (OSError, UnicodeDecodeError):
         row.note = ""
     row.name, row.folder = folder.name, str(folder)
-    row.hottest, row.heat = summary["hottest"]["temperature"], summary["balance"]["in"]
+    row.hottest, row.coldest = (summary[end]["temperature"] for end in ("hottest", "coldest"))
+    row.heat = summary["balance"]["in"]
 
 
 def write_note(run: KeptRun) -> None:

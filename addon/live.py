@@ -17,7 +17,7 @@ import numpy as np
 from ..solver.case import read_case
 from ..solver.errors import Trouble
 from ..solver.result import Responses, read_field, read_responses, skin_nodes
-from . import cutting, host, jobs, study, view
+from . import comparing, cutting, host, jobs, study, view
 from .properties import Outcome, load_followers
 from .units import as_typed
 
@@ -165,6 +165,7 @@ def _back(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], left: Out
 
 
 def _show(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], held: Held, temperature: np.ndarray) -> None:
+    comparing.end(scene, study.outcome(scene, members))
     view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
     cutting.recolour(scene, members, temperature)
     host.redraw()

@@ -203,11 +203,12 @@ def _note_run(run: KeptRun, _context: bpy.types.Context) -> None:
 
 
 class KeptRun(bpy.types.PropertyGroup):
-    """A run whose folder is kept; name: of the folder, and when it was. hottest: K. heat: W that came in."""
+    """A run whose folder is kept; name: of the folder, and when it was. hottest, coldest: K. heat: W that came in."""
 
     folder: StringProperty(subtype="DIR_PATH")
     note: StringProperty(name="Note", description="What was changed for this run", update=_note_run)
     hottest: FloatProperty()
+    coldest: FloatProperty()
     heat: FloatProperty()
 
 
@@ -224,6 +225,7 @@ class Outcome(bpy.types.PropertyGroup):
     active_run: IntProperty()
     areas: StringProperty()
     summary: StringProperty()
+    comparison: StringProperty(description="What is told of the run that is compared with, as JSON")
     live: StringProperty(description="The summary of other loads than the run had, while they are shown")
     inputs: StringProperty()
     message: StringProperty()

@@ -13,7 +13,7 @@ import bpy
 from ..solver.case import write_case
 from ..solver.errors import Trouble
 from ..solver.result import read_summary
-from . import cutting, history, host, jobs, live, study, tags, upkeep, view
+from . import comparing, cutting, history, host, jobs, live, study, tags, upkeep, view
 from .cases import build_case
 from .parts import in_sight
 from .properties import Outcome
@@ -144,7 +144,7 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
         keep_trouble(left, trouble)
         return trouble
     left.summary, left.folder, left.inputs = json.dumps(summary), str(run.result), run.inputs
-    left.live = ""
+    left.live = left.comparison = ""
     cutting.cutting.forget()
     cutting.follow(scene, members)
     live.live.prepare(scene, members, run.result.parent, summary["mesh"]["nodes"])
@@ -152,10 +152,10 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
     for part in members:
         part.fluxface.notes = ""
     keep_trouble(left, None)
-    return _kept(left, run.result.parent)
+    return _kept(scene, left, run.result.parent)
 
 
-def _kept(left: Outcome, case: Path) -> Trouble | None:
+def _kept(scene: bpy.types.Scene, left: Outcome, case: Path) -> Trouble | None:
     """Keep the run with those before it; a result that cannot be kept is shown all the same."""
     try:
         history.keep(case)
@@ -164,6 +164,7 @@ def _kept(left: Outcome, case: Path) -> Trouble | None:
         return trouble
     finally:
         history.refresh(left, case)
+        comparing.share_range(scene, left)
     return None
 
 

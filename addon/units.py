@@ -57,6 +57,12 @@ def difference_text(scene: bpy.types.Scene, kelvin: float) -> str:
     return f"{kelvin / per_degree:.2g} {symbol}"
 
 
+def signed_difference_text(scene: bpy.types.Scene, kelvin: float) -> str:
+    """How much hotter, as in "+3.2 °C" and "−0.4 °C"."""
+    symbol, per_degree, _ = TEMPERATURE_UNITS[scene.unit_settings.temperature_unit]
+    return f"{round(kelvin / per_degree, 1) + 0.0:+.1f} {symbol}".replace("-", "−")
+
+
 def area_text(scene: bpy.types.Scene, square_metres: float) -> str:
     """An area in the scene's unit system, as in "18.3 cm²"."""
     if scene.unit_settings.system == "IMPERIAL":

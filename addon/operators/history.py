@@ -8,8 +8,9 @@ from pathlib import Path
 import bpy
 
 from ...solver.errors import Trouble
-from .. import history, study
+from .. import comparing, history, study
 from ..properties import KeptRun, Outcome
+from .seeing import members_with_result
 from .telling import TellsTrouble
 
 
@@ -61,6 +62,39 @@ class ForgetRun(_OfRun, bpy.types.Operator):
         except OSError as error:
             raise Trouble("case", f"The run cannot be deleted: {error.strerror}.", f"Look at {run.folder}.") from error
         history.refresh(left, case)
+        comparing.share_range(context.scene, left)
 
 
-register, unregister = bpy.utils.register_classes_factory((OpenRunFolder, ForgetRun))
+class CompareRun(_OfRun, bpy.types.Operator):
+    bl_idname = "fluxface.run_compare"
+    bl_label = "Compare with This Run"
+    bl_description = "Show how much hotter or colder each place is now than in the chosen run"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        return super().poll(context) and members_with_result(cls, context)
+
+    def act(self, context: bpy.types.Context) -> None:
+        comparing.compare(context.scene, study.parts(context), chosen(context)[1])
+
+
+class EndComparison(TellsTrouble, bpy.types.Operator):
+    bl_idname = "fluxface.end_comparison"
+    bl_label = "Show Temperatures Again"
+    bl_description = "Leave the comparison and show the result's own temperatures"
+    bl_options = {"REGISTER", "UNDO"}
+
+    @classmethod
+    def poll(cls, context: bpy.types.Context) -> bool:
+        left = chosen(context)
+        if left is None or not left[0].comparison:
+            cls.poll_message_set("Nothing is compared")
+            return False
+        return True
+
+    def act(self, context: bpy.types.Context) -> None:
+        comparing.end(context.scene, chosen(context)[0])
+
+
+register, unregister = bpy.utils.register_classes_factory((OpenRunFolder, ForgetRun, CompareRun, EndComparison))

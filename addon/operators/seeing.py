@@ -66,4 +66,17 @@ class CloseCut(_OfCut, bpy.types.Operator):
         cutting.close(context.scene)
 
 
-register, unregister = bpy.utils.register_classes_factory((CutOpen, TurnCut, CloseCut))
+class ShowTrueColours(bpy.types.Operator):
+    bl_idname = "fluxface.show_true_colours"
+    bl_label = "Show True Colours"
+    bl_description = "Set the scene's view transform to Standard, so that colours are those of the legend"
+    bl_options = {"REGISTER", "UNDO"}
+
+    def execute(self, context: bpy.types.Context) -> set[str]:
+        context.scene.view_settings.view_transform = view.TRUE_TRANSFORM
+        context.scene.view_settings.look = "None"
+        context.scene.view_settings.exposure, context.scene.view_settings.gamma = 0.0, 1.0
+        return {"FINISHED"}
+
+
+register, unregister = bpy.utils.register_classes_factory((ShowTrueColours, CutOpen, TurnCut, CloseCut))

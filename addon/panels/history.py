@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+import json
+from typing import Any
+
 import bpy
 
 from ...solver.errors import Trouble
 from .. import history, study
-from ..units import power_text, temperature_text
-from .sidebar import Sidebar, paragraph
+from ..units import power_text, signed_difference_text, span_text, temperature_text
+from .sidebar import Sidebar, pair, paragraph
+
+ROUNDING = 1e-4  # a share of the surface that is not worth a sentence
 
 
 class RunList(bpy.types.UIList):
@@ -46,7 +51,24 @@ class RunsPanel(Sidebar, bpy.types.Panel):
         buttons = row.column(align=True)
         buttons.operator("fluxface.run_folder", text="", icon="FILE_FOLDER")
         buttons.operator("fluxface.run_forget", text="", icon="TRASH")
+        if left.comparison:
+            _draw_comparison(context, layout, json.loads(left.comparison))
+        else:
+            layout.operator("fluxface.run_compare", icon="ARROW_LEFTRIGHT")
         paragraph(context, layout, f"The latest {history.KEPT} are kept beside the file.")
+
+
+def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, told: dict[str, Any]) -> None:
+    box = layout.box()
+    paragraph(context, box, f"Compared with {told['since']}" + (f", {told['note']}" if told["note"] else ""))
+    column = box.column(align=True)
+    for row in told["rows"]:
+        change = signed_difference_text(context.scene, row["now"] - row["then"])
+        pair(column, row["name"], f"{span_text(context.scene, row['then'], row['now'])}  ({change})")
+    if told["known"] < 1 - ROUNDING:
+        share = f"{100 * (1 - told['known']):.2g} %"
+        paragraph(context, box, f"{share} of the surface was not there then, and is shown grey.", "INFO")
+    box.operator("fluxface.end_comparison", icon="X")
 
 
 register, unregister = bpy.utils.register_classes_factory((RunList, RunsPanel))

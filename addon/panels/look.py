@@ -14,7 +14,7 @@ class LookPanel(OfResult, bpy.types.Panel):
     bl_label = "View and Picture"
 
     def draw(self, context: bpy.types.Context) -> None:
-        view.draw_settings(self.layout, context.scene)
+        _draw_settings(self.layout, context.scene)
         named(self.layout, "Render with").prop(view.settings_of(context.scene), "engine", text="")
         self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
         self.layout.operator("fluxface.write_report", icon="DOCUMENTS")
@@ -27,7 +27,7 @@ class LinesPanel(OfResult, bpy.types.Panel):
     bl_options = {"DEFAULT_CLOSED"}
 
     def draw(self, context: bpy.types.Context) -> None:
-        view.draw_lines(fields(self.layout), context.scene)
+        _draw_lines(fields(self.layout), context.scene)
 
 
 class InsidePanel(OfResult, bpy.types.Panel):
@@ -45,6 +45,41 @@ class InsidePanel(OfResult, bpy.types.Panel):
             row.operator("fluxface.turn_cut", text=axis).axis = axis
         paragraph(context, self.layout, "Move and turn the arrow of the plane to cut elsewhere.")
         self.layout.operator("fluxface.close_cut", icon="X")
+
+
+def _draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
+    """The settings as rows of ``layout``."""
+    settings = view.settings_of(scene)
+    layout.row().prop(settings, "showing", expand=True)
+    column = layout.column()
+    column.use_property_split, column.use_property_decorate = True, False
+    column.prop(settings, "colour_map")
+    column.row().prop(settings, "range", expand=True)
+    ends = column.column(align=True)
+    ends.enabled = settings.range == "LOCKED"
+    ends.prop(settings, "low")
+    ends.prop(settings, "high")
+    column.prop(settings, "legend")
+    if settings.range == "LOCKED" and settings.low >= settings.high:
+        layout.label(text="From is not below To, so one kelvin is shown.", icon="ERROR")
+    elif settings.range == "LOCKED" and (settings.coldest < settings.low or settings.hottest > settings.high):
+        unit = view.scale_of(scene).unit
+        beyond = f"{unit.text(settings.coldest)} to {unit.text(settings.hottest)}"
+        layout.label(text=f"Some surfaces lie beyond the range: {beyond}.", icon="INFO")
+    if scene.view_settings.view_transform != view.TRUE_TRANSFORM:
+        warning = layout.column(align=True)
+        warning.label(text=f"{scene.view_settings.view_transform} shifts the colours outside Solid.", icon="INFO")
+        warning.operator("fluxface.show_true_colours")
+
+
+def _draw_lines(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
+    """What is drawn over the surfaces, as rows of ``layout``."""
+    settings = view.settings_of(scene)
+    layout.prop(settings, "marks")
+    layout.prop(settings, "isotherms")
+    step = layout.row()
+    step.active = settings.isotherms
+    step.prop(settings, "isotherm_step")
 
 
 register, unregister = bpy.utils.register_classes_factory((LookPanel, LinesPanel, InsidePanel))

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import bpy
 
-from . import drawn_in_view, legend_in_view, settings
+from . import drawn_in_view, legend_in_view, settings, showing
 from .picture import picture_frame, render_picture
 from .result_object import (
     PLANE,
@@ -21,22 +21,25 @@ from .result_object import (
     world_box,
 )
 from .settings import (
-    apply_showing,
-    draw_lines,
-    draw_settings,
+    TRUE_TRANSFORM,
+    end_difference,
     material_of,
     recolour,
     refresh,
     refresh_cut,
+    scale_of,
     settings_of,
+    share_range,
+    show_difference,
 )
+from .showing import apply_showing
 
 __all__ = [
     "PLANE",
+    "TRUE_TRANSFORM",
     "apply_showing",
     "clear",
-    "draw_lines",
-    "draw_settings",
+    "end_difference",
     "has_result",
     "part_of",
     "picture_frame",
@@ -46,9 +49,12 @@ __all__ = [
     "register",
     "render_picture",
     "result_of",
+    "scale_of",
     "settings_of",
     "settle",
+    "share_range",
     "show",
+    "show_difference",
     "shown_of",
     "unregister",
     "world_box",
@@ -62,6 +68,7 @@ def show(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], result_folde
     Raises Trouble when the result cannot be read or does not fit the parts; what was shown is still shown then.
     """
     results = build_results(scene, parts, result_folder, material_of(scene))
+    settings_of(scene).compared = ""
     refresh(scene)
     settings_of(scene).showing = "RESULT" if all(part.mode == "OBJECT" for part in parts) else "PART"
     return results
@@ -80,8 +87,8 @@ def clear(part: bpy.types.Object) -> None:
     for shown in {result, shown_of(part)}:
         remove_result(shown)
     for scene in scenes:
-        settings.reveal(scene, part)
-        settings.apply_showing(scene)
+        showing.reveal(scene, part)
+        apply_showing(scene)
         refresh(scene)
 
 

@@ -16,7 +16,10 @@ from types import MappingProxyType
 
 import numpy as np
 
-DEFAULT_MAP = "lipari"
+DEFAULT_MAP, DIFFERENCE_MAP = "lipari", "vik"
+
+# Linear light, of what has no value to show.
+NO_VALUE = (0.21, 0.21, 0.21)
 
 # How finely a map is sampled to find the fraction nearest to a colour.
 SAMPLES = 2048

@@ -16,7 +16,7 @@ from .legend_in_view import BRIGHT, FAINT, GROUND, fill_box, fill_ring, text_wid
 from .over_result import Mark, over_results
 from .result_object import shown_in
 from .scale import inked
-from .settings import levels_of, scale_of, settings_of
+from .settings import levels_of, scale_of, settings_of, words_of
 
 # In the host's interface pixels, before its resolution scale.
 LINE, RADIUS, RING, INSET, GAP = 1.2, 6, 2, 6, 7
@@ -86,9 +86,10 @@ def _draw_marks() -> None:
     found = [(result, over_results.of(result, levels_of(context.scene))) for result in _seen(context)]
     if not found:
         return
+    words = words_of(context.scene)
     ends = (
-        ("Hottest", *max(((result, over.hottest) for result, over in found), key=lambda one: one[1].temperature)),
-        ("Coldest", *min(((result, over.coldest) for result, over in found), key=lambda one: one[1].temperature)),
+        (words.highest, *max(((result, over.hottest) for result, over in found), key=lambda one: one[1].temperature)),
+        (words.lowest, *min(((result, over.coldest) for result, over in found), key=lambda one: one[1].temperature)),
     )
     unit, taken = scale_of(context.scene).unit, list[np.ndarray]()
     for name, result, mark in ends:

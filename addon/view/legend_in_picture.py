@@ -54,15 +54,15 @@ def write_legend(studio: Studio, title: str, legend: Legend, coloured: bpy.types
     write(CAUTION, MARGIN, MARGIN, SMALL, grey, width - 2 * MARGIN)
 
     text = legend.scale.unit.text
-    write("Hottest surface", left, top + 7.6, LABEL, grey)
+    write(f"{legend.words.highest} {legend.words.of}", left, top + 7.6, LABEL, grey)
     write(text(legend.hottest), left, top + 3.6, VALUE, dark)
-    write("Coldest surface", left, bottom - 5.0, LABEL, grey)
+    write(f"{legend.words.lowest} {legend.words.of}", left, bottom - 5.0, LABEL, grey)
     write(text(legend.coldest), left, bottom - 9.0, VALUE, dark)
 
     if legend.in_view is not None:
         draw_ring(studio, np.array((left + RING + RING_LINE, bottom - 12.6)) * step, ink)
         same = text(legend.in_view) == text(legend.hottest)
-        label = "hottest in view" if same else f"{text(legend.in_view)} in view"
+        label = f"{legend.words.highest.lower()} in view" if same else f"{text(legend.in_view)} in view"
         write(label, left + 2 * RING + 1.6, bottom - 13.3, LABEL, grey, COLUMN - 2 * RING - 1.6)
 
     _draw_bar(studio, legend, np.array((left, left + BAR_WIDTH)) * step, np.array((bottom, top)) * step, coloured)

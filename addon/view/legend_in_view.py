@@ -11,7 +11,8 @@ import numpy as np
 from .colours import colours_at, srgb_from_linear
 from .legend import Legend
 from .result_object import shown_in
-from .settings import TRUE_SOLID, TRUE_TRANSFORM, scale_of, settings_of
+from .settings import TRUE_TRANSFORM, scale_of, settings_of, words_of
+from .showing import TRUE_SOLID
 
 # Measures in the host's interface pixels, before its resolution scale.
 CARD = (172, 316)
@@ -48,7 +49,7 @@ def _draw() -> None:
     if not any(result.visible_get() for result in shown_in(scene)):
         return
     scale = scale_of(scene)
-    legend = Legend(scale, scale.ticks(), settings.coldest, settings.hottest)
+    legend = Legend(scale, scale.ticks(), settings.coldest, settings.hottest, words=words_of(scene))
     pixel = context.preferences.system.ui_scale
     sidebar = next(region for region in context.area.regions if region.type == "UI")
     right = context.region.width - (sidebar.width if context.preferences.system.use_region_overlap else 0)
@@ -84,7 +85,8 @@ def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> 
 
     fill(_box(0, spare, CARD[0], CARD[1] - spare), [GROUND] * 4)
     say(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL, FAINT)
-    for label, kelvin, height in (("Hottest", legend.hottest, bar_top + 24), ("Coldest", legend.coldest, 42)):
+    words = legend.words
+    for label, kelvin, height in ((words.highest, legend.hottest, bar_top + 24), (words.lowest, legend.coldest, 42)):
         say(label, INSET, height, LABEL, FAINT)
         say(text(kelvin), INSET + FIGURES, height, VALUE)
     say(remark, INSET, INSET, SMALL, FAINT)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import bpy
 
-from .colours import ColourMap
+from .colours import NO_VALUE, ColourMap
 from .scale import Scale
 
 # The renderer takes an attribute named ``temperature`` for that of a volume, and finds none on a surface; the material
@@ -12,6 +12,9 @@ from .scale import Scale
 SHOWN = "shown_temperature"
 
 FRACTION = "fraction of the range"
+
+# Where nothing is known this is written for kelvin: far below KNOWN, which is below any difference of temperatures.
+UNKNOWN, KNOWN = -1e7, -1e4
 
 # Linear light, 0..1.
 Colour = tuple[float, float, float]
@@ -36,7 +39,17 @@ def paint(material: bpy.types.Material, scale: Scale) -> None:
     _fill(ramp.color_ramp, scale.colour_map)
     tree.links.new(temperature.outputs["Fac"], fraction.inputs["Value"])
     tree.links.new(fraction.outputs["Result"], ramp.inputs["Fac"])
-    _show_to_camera(material, ramp.outputs["Color"])
+    is_known = tree.nodes.new("ShaderNodeMath")
+    is_known.operation = "GREATER_THAN"
+    is_known.inputs[1].default_value = KNOWN
+    tree.links.new(temperature.outputs["Fac"], is_known.inputs[0])
+    either = tree.nodes.new("ShaderNodeMix")
+    either.data_type = "RGBA"
+    unknown, known = (socket for socket in either.inputs if socket.type == "RGBA")
+    unknown.default_value = (*NO_VALUE, 1.0)
+    tree.links.new(is_known.outputs[0], either.inputs[0])
+    tree.links.new(ramp.outputs["Color"], known)
+    _show_to_camera(material, next(socket for socket in either.outputs if socket.type == "RGBA"))
 
 
 def set_range(material: bpy.types.Material, scale: Scale) -> None:

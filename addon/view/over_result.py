@@ -9,7 +9,7 @@ import bpy
 import numpy as np
 
 from .lines import isotherms
-from .result_object import local_surface, temperatures
+from .result_object import local_surface, shown_values
 
 
 @dataclass(frozen=True)
@@ -33,9 +33,9 @@ class OverResult:
 
 def over_result(result: bpy.types.Object, levels: Sequence[float]) -> OverResult:
     places, triangles = local_surface(result.data)
-    temperature = temperatures(result)
+    temperature = shown_values(result)
     segments, level = isotherms(places, triangles, temperature, levels)
-    ends = (int(temperature.argmax()), int(temperature.argmin()))
+    ends = (int(np.nanargmax(temperature)), int(np.nanargmin(temperature)))
     hottest, coldest = (Mark(places[end], _normal_at(end, places, triangles), float(temperature[end])) for end in ends)
     return OverResult(segments, level, hottest, coldest)
 

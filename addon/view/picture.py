@@ -23,7 +23,7 @@ from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
 from .result_object import read_kelvin, result_of, settle, shown_of, write_kelvin
 from .scale import Scale, inked
-from .settings import levels_of, material_of, refresh, scale_of, settings_of
+from .settings import levels_of, material_of, refresh, scale_of, settings_of, words_of
 from .skin import Skin, hottest_in_view, skin_of
 from .studio import Studio, opened
 
@@ -67,7 +67,8 @@ def render_picture(
     skin = skin_of(results)
     marked = hottest_in_view(skin, frame)
     in_view, ringed = (None, None) if marked is None else (skin.temperature[marked], frame.pixels(skin.places[marked]))
-    legend = Legend(scale, scale.ticks(), skin.temperature.min(), skin.temperature.max(), in_view)
+    ends = (np.nanmin(skin.temperature), np.nanmax(skin.temperature))
+    legend = Legend(scale, scale.ticks(), *ends, in_view, words_of(scene))
     with (
         tempfile.TemporaryDirectory() as folder,
         opened(frame, engine or settings_of(scene).engine, BACKDROP) as studio,

@@ -12,7 +12,7 @@ from ...solver.errors import Trouble
 from ...solver.result import Field, HotSkin, hot_skin, read_field
 from ..units import metres_per_unit
 from .lines import CREASE
-from .material import SHOWN
+from .material import KNOWN, SHOWN, UNKNOWN
 from .scale import Scale
 
 # What is a result, what is left of it by a cut, and the empty that cuts it: each is a child of its part.
@@ -174,6 +174,18 @@ def temperatures(result: bpy.types.Object) -> np.ndarray:
     return read_kelvin(result.data, TEMPERATURE)
 
 
+def shown_values(result: bpy.types.Object) -> np.ndarray:
+    """(P,) what is shown at the vertices: kelvin, or kelvin more than in another run; NaN where nothing is known."""
+    values = read_kelvin(result.data, SHOWN)
+    return np.where(values > KNOWN, values, np.nan)
+
+
+def write_shown(result: bpy.types.Object, values: np.ndarray) -> None:
+    """Show values (P,), NaN where nothing is known."""
+    known = np.where(np.isnan(values), UNKNOWN, values)
+    result.data.attributes[SHOWN].data.foreach_set("value", known.astype(np.float32))
+
+
 def read_kelvin(mesh: bpy.types.Mesh, name: str) -> np.ndarray:
     """(P,) kelvin at the vertices, from the attribute ``name``."""
     values = np.empty(len(mesh.vertices), dtype=np.float32)
@@ -200,7 +212,7 @@ def places_and_triangles(result: bpy.types.Object) -> tuple[np.ndarray, np.ndarr
 
 def colour(result: bpy.types.Object, scale: Scale) -> None:
     """Give the vertices the scale's colours, which is what Solid shading shows."""
-    write_colours(result.data, scale.colours(temperatures(result)))
+    write_colours(result.data, scale.colours(shown_values(result)))
     result.data.update()
 
 

@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .colours import ColourMap, colours_at
+from .colours import NO_VALUE, ColourMap, colours_at
 
 # A part of one temperature still gets a scale: half a kelvin to either side.
 LEAST_SPAN = 1e-3
@@ -19,11 +19,15 @@ MOST_LEVELS = 100
 
 @dataclass(frozen=True)
 class Unit:
-    """symbol: as written after a number. kelvin_per_degree: K. zero: kelvin at zero degrees."""
+    """symbol: as written after a number. kelvin_per_degree: K. zero: kelvin at zero degrees, 0 of a difference.
+
+    signed: whether a plus is written, as before differences.
+    """
 
     symbol: str
     kelvin_per_degree: float
     zero: float
+    signed: bool = False
 
     def degrees(self, kelvin: float) -> float:
         return (kelvin - self.zero) / self.kelvin_per_degree
@@ -33,7 +37,11 @@ class Unit:
 
     def text(self, kelvin: float) -> str:
         """As in ``61.3 °C``."""
-        return f"{number(self.degrees(kelvin), 1)} {self.symbol}"
+        return f"{self.number(self.degrees(kelvin), 1)} {self.symbol}"
+
+    def number(self, degrees: float, decimals: int) -> str:
+        text = number(degrees, decimals)
+        return f"+{text}" if self.signed and float(f"{degrees:.{decimals}f}") > 0 else text
 
 
 def number(value: float, decimals: int) -> str:
@@ -65,8 +73,9 @@ class Scale:
         return (temperature - self.low) / (self.high - self.low)
 
     def colours(self, temperature: np.ndarray) -> np.ndarray:
-        """Linear-light colours (N, 3) of temperatures (N,) in kelvin."""
-        return colours_at(self.colour_map, self.fractions(temperature))
+        """Linear-light colours (N, 3) of temperatures (N,) in kelvin, NaN where nothing is known."""
+        known = ~np.isnan(temperature)[:, None]
+        return np.where(known, colours_at(self.colour_map, self.fractions(temperature)), NO_VALUE)
 
     def ticks(self, most: int = 8) -> tuple[Tick, ...]:
         """Round numbers of the unit within the scale, two at least and about ``most`` at most."""
@@ -75,7 +84,7 @@ class Scale:
         decimals = max(0, -math.floor(math.log10(step) + 1e-9))
         numbers = np.arange(math.ceil(first / step - 1e-9), math.floor(last / step + 1e-9) + 1) * step
         return tuple(
-            Tick((value - first) / (last - first), number(value, decimals), self.unit.kelvin(value))
+            Tick((value - first) / (last - first), self.unit.number(value, decimals), self.unit.kelvin(value))
             for value in numbers.tolist()
         )
 

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-import json
-from collections.abc import Iterator, Mapping, Sequence
-from typing import Any
+from collections.abc import Sequence
+from dataclasses import replace
 
 import bpy
 import numpy as np
@@ -12,26 +11,24 @@ from bpy.props import BoolProperty, EnumProperty, FloatProperty, PointerProperty
 
 from ..host import redraw
 from ..units import TEMPERATURE_UNITS
-from .colours import DEFAULT_MAP, colour_maps
+from .colours import DEFAULT_MAP, DIFFERENCE_MAP, colour_maps
+from .legend import OF_TEMPERATURE, Words, of_difference
 from .material import SHOWN, paint, set_range
 from .over_result import over_results
 from .result_object import (
     TEMPERATURE,
     colour,
-    part_of,
     result_of,
     results_in,
-    settle,
     shown_in,
-    shown_of,
+    shown_values,
     temperatures,
+    write_shown,
 )
-from .scale import Scale, Unit, spanning
+from .scale import LEAST_SPAN, Scale, Unit, spanning
+from .showing import apply_showing
 
 TRUE_TRANSFORM = "Standard"
-
-# Solid shading in the results' own colours: no light on them, and form from the drawn ridges and valleys.
-TRUE_SOLID = {"color_type": "VERTEX", "light": "FLAT", "show_cavity": True, "cavity_type": "SCREEN"}
 
 
 def _range_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
@@ -78,6 +75,7 @@ class ViewSettings(bpy.types.PropertyGroup):
         description="Which temperatures the colours span",
         items=(
             ("AUTOMATIC", "Automatic", "From the coldest to the hottest surface of all results in the scene"),
+            ("SHARED", "All Runs", "From the coldest to the hottest of all runs that are kept"),
             ("LOCKED", "Locked", "From one given temperature to another, so that runs can be compared by eye"),
         ),
         default="AUTOMATIC",
@@ -119,6 +117,9 @@ class ViewSettings(bpy.types.PropertyGroup):
     coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
     hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")
     material: PointerProperty(type=bpy.types.Material, options={"HIDDEN"})
+    compared: StringProperty(options={"HIDDEN"}, description="The run that is compared with, in words")
+    shared_low: FloatProperty(options={"HIDDEN"}, description="Coldest of all kept runs, kelvin; 0 = none")
+    shared_high: FloatProperty(options={"HIDDEN"}, description="Hottest of all kept runs, kelvin; 0 = none")
     cut: PointerProperty(type=bpy.types.Object, options={"HIDDEN"}, description="The empty that cuts the results open")
     solid_before: StringProperty(options={"HIDDEN"}, description="How Solid shading was set before results, as JSON")
 
@@ -136,10 +137,18 @@ def material_of(scene: bpy.types.Scene) -> bpy.types.Material:
 
 
 def scale_of(scene: bpy.types.Scene) -> Scale:
-    """The scale that the results in the scene are shown by."""
+    """The scale that the results in the scene are shown by; as far to either side of no change in a comparison."""
     settings = settings_of(scene)
     unit = Unit(*TEMPERATURE_UNITS[scene.unit_settings.temperature_unit])
+    if settings.compared:
+        most = max(abs(settings.coldest), abs(settings.hottest), LEAST_SPAN)
+        return Scale(-most, most, replace(unit, zero=0.0, signed=True), colour_maps()[DIFFERENCE_MAP])
     return spanning(settings.low, settings.high, unit, colour_maps()[settings.colour_map])
+
+
+def words_of(scene: bpy.types.Scene) -> Words:
+    compared = settings_of(scene).compared
+    return of_difference(compared) if compared else OF_TEMPERATURE
 
 
 def levels_of(scene: bpy.types.Scene) -> tuple[float, ...]:
@@ -150,12 +159,12 @@ def levels_of(scene: bpy.types.Scene) -> tuple[float, ...]:
 
 def refresh(scene: bpy.types.Scene) -> None:
     """Bring range, material and vertex colours in line with the settings and with the results in the scene."""
-    fields = [field for result in results_in(scene) if (field := temperatures(result)).size]
+    fields = [field for result in results_in(scene) if np.isfinite(field := shown_values(result)).any()]
     if not fields:
         return
     settings = settings_of(scene)
-    settings.coldest = min(float(field.min()) for field in fields)
-    settings.hottest = max(float(field.max()) for field in fields)
+    settings.coldest = min(float(np.nanmin(field)) for field in fields)
+    settings.hottest = max(float(np.nanmax(field)) for field in fields)
     _span_all(scene)
     scale = scale_of(scene)
     paint(material_of(scene), scale)
@@ -188,12 +197,44 @@ def recolour(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], temperat
 
 
 def _span_all(scene: bpy.types.Scene) -> None:
-    """Let an automatic range span all that is shown: the surfaces, and what a cut shows of the inside."""
+    """Let an automatic range span all that is shown: the surfaces, what a cut shows inside, and the other runs."""
     settings = settings_of(scene)
-    if settings.range == "AUTOMATIC":
-        inside = [field for shown in shown_in(scene) if (field := temperatures(shown)).size]
-        settings.low = min([settings.coldest, *(float(field.min()) for field in inside)])
-        settings.high = max([settings.hottest, *(float(field.max()) for field in inside)])
+    if settings.compared:
+        return
+    if settings.range == "SHARED" and settings.shared_high:
+        settings.low, settings.high = settings.shared_low, settings.shared_high
+    elif settings.range != "LOCKED":
+        inside = [field for shown in shown_in(scene) if np.isfinite(field := shown_values(shown)).any()]
+        settings.low = min([settings.coldest, *(float(np.nanmin(field)) for field in inside)])
+        settings.high = max([settings.hottest, *(float(np.nanmax(field)) for field in inside)])
+
+
+def show_difference(
+    scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], change: Sequence[np.ndarray], since: str
+) -> None:
+    """Show on the results of ``parts`` how much hotter each vertex is (P,), K, than it was; NaN where nobody knows."""
+    for part, values in zip(parts, change, strict=True):
+        write_shown(result_of(part), values)
+    settings_of(scene).compared = since
+    refresh(scene)
+
+
+def end_difference(scene: bpy.types.Scene) -> None:
+    """Show temperatures again, where a comparison was shown."""
+    if settings_of(scene).compared:
+        settings_of(scene).compared = ""
+        for result in results_in(scene):
+            write_shown(result, temperatures(result))
+        refresh(scene)
+
+
+def share_range(scene: bpy.types.Scene, low: float, high: float) -> None:
+    """Tell the coldest and the hottest, K, of all kept runs; 0 where none are kept."""
+    settings = settings_of(scene)
+    if (settings.shared_low, settings.shared_high) != (low, high):
+        settings.shared_low, settings.shared_high = low, high
+        if settings.range == "SHARED":
+            refresh(scene)
 
 
 def refresh_cut(scene: bpy.types.Scene) -> None:
@@ -207,112 +248,7 @@ def refresh_cut(scene: bpy.types.Scene) -> None:
     redraw()
 
 
-def apply_showing(scene: bpy.types.Scene) -> None:
-    """Hide the parts beneath their results or the results over their parts; other objects stay as they are."""
-    settle(scene)  # what has just been made is in no view layer yet, and could not be hidden
-    settings, results = settings_of(scene), results_in(scene)
-    shown = settings.showing == "RESULT"
-    for result in results:
-        part = part_of(result)
-        for object_ in {result, shown_of(part)}:
-            _hide(scene, object_, not shown or object_ != shown_of(part))
-        _hide(scene, part, shown)
-    if results and shown:
-        _colour_solid_views(settings)
-    else:
-        _restore_solid_views(settings)
-
-
-def reveal(scene: bpy.types.Scene, part: bpy.types.Object) -> None:
-    _hide(scene, part, False)
-
-
-def _hide(scene: bpy.types.Scene, object_: bpy.types.Object, hidden: bool) -> None:
-    object_.hide_render = hidden
-    for layer in scene.view_layers:
-        if object_.name in layer.objects:
-            object_.hide_set(hidden, view_layer=layer)
-
-
-def _colour_solid_views(settings: ViewSettings) -> None:
-    """Set Solid shading to the true colours, except where it shows colours already in a way the designer chose."""
-    before = json.loads(settings.solid_before or "{}")
-    for view, shading in _shadings():
-        if shading.color_type != TRUE_SOLID["color_type"]:
-            before[view] = {name: getattr(shading, name) for name in TRUE_SOLID}
-            _set(shading, TRUE_SOLID)
-    settings.solid_before = json.dumps(before)
-
-
-def _restore_solid_views(settings: ViewSettings) -> None:
-    before = json.loads(settings.solid_before or "{}")
-    for view, shading in _shadings():
-        if view in before and shading.color_type == TRUE_SOLID["color_type"]:
-            _set(shading, before[view])
-    settings.solid_before = ""
-
-
-def _set(shading: bpy.types.View3DShading, values: Mapping[str, Any]) -> None:
-    for name, value in values.items():
-        setattr(shading, name, value)
-
-
-def _shadings() -> Iterator[tuple[str, bpy.types.View3DShading]]:
-    """The shading of every 3D view of the file, with a name for it that lasts as long as the layout of the screen."""
-    for screen in bpy.data.screens:
-        for place, area in enumerate(screen.areas):
-            yield from ((f"{screen.name}/{place}", space.shading) for space in area.spaces if space.type == "VIEW_3D")
-
-
-def draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
-    """The settings as rows of ``layout``."""
-    settings = settings_of(scene)
-    layout.row().prop(settings, "showing", expand=True)
-    column = layout.column()
-    column.use_property_split, column.use_property_decorate = True, False
-    column.prop(settings, "colour_map")
-    column.row().prop(settings, "range", expand=True)
-    ends = column.column(align=True)
-    ends.enabled = settings.range == "LOCKED"
-    ends.prop(settings, "low")
-    ends.prop(settings, "high")
-    column.prop(settings, "legend")
-    if settings.range == "LOCKED" and settings.low >= settings.high:
-        layout.label(text="From is not below To, so one kelvin is shown.", icon="ERROR")
-    elif settings.range == "LOCKED" and (settings.coldest < settings.low or settings.hottest > settings.high):
-        unit = scale_of(scene).unit
-        beyond = f"{unit.text(settings.coldest)} to {unit.text(settings.hottest)}"
-        layout.label(text=f"Some surfaces lie beyond the range: {beyond}.", icon="INFO")
-    if scene.view_settings.view_transform != TRUE_TRANSFORM:
-        warning = layout.column(align=True)
-        warning.label(text=f"{scene.view_settings.view_transform} shifts the colours outside Solid.", icon="INFO")
-        warning.operator(ShowTrueColours.bl_idname)
-
-
-def draw_lines(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
-    """What is drawn over the surfaces, as rows of ``layout``."""
-    settings = settings_of(scene)
-    layout.prop(settings, "marks")
-    layout.prop(settings, "isotherms")
-    step = layout.row()
-    step.active = settings.isotherms
-    step.prop(settings, "isotherm_step")
-
-
-class ShowTrueColours(bpy.types.Operator):
-    bl_idname = "fluxface.show_true_colours"
-    bl_label = "Show True Colours"
-    bl_description = "Set the scene's view transform to Standard, so that colours are those of the legend"
-    bl_options = {"REGISTER", "UNDO"}
-
-    def execute(self, context: bpy.types.Context) -> set[str]:
-        context.scene.view_settings.view_transform = TRUE_TRANSFORM
-        context.scene.view_settings.look = "None"
-        context.scene.view_settings.exposure, context.scene.view_settings.gamma = 0.0, 1.0
-        return {"FINISHED"}
-
-
-register_classes, unregister_classes = bpy.utils.register_classes_factory((ViewSettings, ShowTrueColours))
+register_classes, unregister_classes = bpy.utils.register_classes_factory((ViewSettings,))
 
 
 def register() -> None:

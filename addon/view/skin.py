@@ -11,7 +11,7 @@ from mathutils import Vector
 from mathutils.bvhtree import BVHTree
 
 from .framing import Frame
-from .result_object import places_and_triangles, temperatures
+from .result_object import places_and_triangles, shown_values
 
 # How much nearer something must be to hide a place, as a share of the place's distance.
 HIDING = 1e-4
@@ -32,7 +32,7 @@ def skin_of(results: Sequence[bpy.types.Object]) -> Skin:
     return Skin(
         places=np.concatenate([places for places, _ in surfaces]),
         triangles=np.concatenate([triangles + start for (_, triangles), start in zip(surfaces, starts, strict=False)]),
-        temperature=np.concatenate([temperatures(result) for result in results]),
+        temperature=np.concatenate([shown_values(result) for result in results]),
     )
 
 
@@ -46,5 +46,6 @@ def hottest_in_view(skin: Skin, frame: Frame) -> int | None:
         hit = tree.ray_cast(eye, way.normalized(), way.length * (1 - HIDING))
         return hit[0] is None
 
+    order = np.argsort(-skin.temperature)[: np.isfinite(skin.temperature).sum()]  # what is not known comes last
     # Few are asked: the search ends at the first that is seen.
-    return next((int(vertex) for vertex in np.argsort(-skin.temperature) if seen(vertex)), None)
+    return next((int(vertex) for vertex in order if seen(vertex)), None)

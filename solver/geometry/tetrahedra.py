@@ -38,7 +38,9 @@ NODES_PER_CORNER = {1: 1.0, 2: 7.5}
 # face and the turn from one facet to the next of the finest curved surface.
 FLAT = 3e-4
 FLATTEST = 1e-13  # of the cube of the longest edge: the least volume of a cell
-REACH = 1e-6  # of the unit diagonal: how far a boundary triangle's middle may lie from its modelled face
+# Of the unit diagonal: how far a boundary triangle's middle usually lies from its modelled face, and how much wider one
+# is sought where none is so near.
+REACH, WIDER = 1e-6, 10.0
 # s: where a size is given, and where it is ours to choose, with so much more for each triangle.
 SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 120, 4e-4
 # Axes that no modelled edge follows.
@@ -93,7 +95,7 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
         cells=filled.cells,
         cell_part=np.full(len(filled.cells), part, np.int32),
         boundary=filled.boundary,
-        boundary_tag=unit.tag[filled.face],
+        boundary_tag=filled.tag,
         boundary_part=np.full(len(filled.boundary), part, np.int32),
         boundary_face=unit.face[filled.face],
     )
@@ -101,11 +103,12 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
 
 @dataclass(frozen=True)
 class _Filled:
-    """nodes (N, 3) of unit diagonal, cells (M, 4), boundary (B, 3), face (B,) the surface's triangle under each."""
+    """nodes (N, 3) of unit diagonal, cells (M, 4), boundary (B, 3); its tags and the surface's triangles there (B,)."""
 
     nodes: np.ndarray
     cells: np.ndarray
     boundary: np.ndarray
+    tag: np.ndarray
     face: np.ndarray
 
 
@@ -127,7 +130,10 @@ def _filled(
     points, cells, boundary = _used(found["points"], cells, boundary)
     _check_cells(points, cells, name, *frame)
     _check_faithful(points, boundary, marker, corners, markers, name)
-    return _Filled(points, cells, boundary, _lying_on(points[boundary].mean(axis=1), marker, corners, markers))
+    tag_of = np.empty(markers.max() + 1, np.int32)
+    tag_of[markers] = unit.tag
+    face = _lying_on(points[boundary].mean(axis=1), marker, corners, markers)
+    return _Filled(points, cells, boundary, tag_of[marker], face)
 
 
 def _flat_patches(surface: Surface) -> np.ndarray:
@@ -276,12 +282,17 @@ def _markers_of(boundary: np.ndarray, faces: np.ndarray, markers: np.ndarray, no
 def _lying_on(places: np.ndarray, marker: np.ndarray, corners: np.ndarray, modelled_marker: np.ndarray) -> np.ndarray:
     """(B,) the modelled triangle (F, 3, 3) nearest to each place (B, 3), among those of its own marker."""
     nearest, least = np.zeros(len(places), np.int64), np.full(len(places), np.inf)
-    for i, j in meeting(boxes(places, places), boxes_of(corners), REACH):
-        apart = np.where(marker[i] == modelled_marker[j], distances(places[i], corners[j]), np.inf)
-        # Of several candidates for one place the last written stays, and that shall be the nearest.
-        order = np.argsort(-apart)
-        order = order[apart[order] < least[i[order]]]
-        least[i[order]], nearest[i[order]] = apart[order], j[order]
+    reach, modelled = REACH, boxes_of(corners)
+    while len(missed := np.flatnonzero(np.isinf(least))) and reach < 1:
+        # Facets that turn a little from one to the next are one to the mesher, which then leaves them by as much.
+        for i, j in meeting(boxes(places[missed], places[missed]), modelled, reach):
+            i = missed[i]
+            apart = np.where(marker[i] == modelled_marker[j], distances(places[i], corners[j]), np.inf)
+            # Of several candidates for one place the last written stays, and that shall be the nearest.
+            order = np.argsort(-apart)
+            order = order[apart[order] < least[i[order]]]
+            least[i[order]], nearest[i[order]] = apart[order], j[order]
+        reach *= WIDER
     return nearest
 
 

@@ -13,7 +13,8 @@ from fluxface.addon.view.colours import colour_maps
 from fluxface.addon.view.material import SHOWN
 from fluxface.addon.view.result_object import COLOUR, MARK, TEMPERATURE, places_and_triangles, temperatures
 from fluxface.addon.view.scale import spanning
-from fluxface.addon.view.settings import TRUE_SOLID, scale_of, settings_of
+from fluxface.addon.view.settings import scale_of, settings_of
+from fluxface.addon.view.showing import TRUE_SOLID
 from fluxface.solver.errors import Trouble
 from fluxface.solver.result import FIELD_FILE
 from made_results import finned_block, grid_boundary, stand_in, warm_at_one_end, write_made_result

@@ -23,17 +23,19 @@ from fluxface.solver.geometry import apart, tetrahedra
 from fluxface.solver.geometry.edges import edges_of
 from fluxface.solver.geometry.sizing import sizes_at
 from fluxface.solver.geometry.splitting import split_to_size
-from fluxface.solver.geometry.surface import area_vectors, areas, enclosed_volume, triangle_corners, weld
+from fluxface.solver.geometry.surface import area_vectors, areas, distances, enclosed_volume, triangle_corners, weld
 from fluxface.solver.geometry.tetrahedra import fill
 from shapes import (
     blocks,
     box,
+    centres_and_normals,
     facing,
     hollow_sphere,
     inside_out,
     irregular_solid,
     merged,
     moved,
+    prism,
     rotation,
     sphere,
     tagged,
@@ -383,3 +385,24 @@ def test_shells_that_do_not_say_what_is_inside() -> None:
     with pytest.raises(Trouble) as caught:
         filled(doubtful)
     assert caught.value.kind == "geometry"
+
+
+def test_facets_that_turn_by_next_to_nothing_keep_their_tags_and_faces() -> None:
+    """An arched top of facets that the mesher takes for one: each boundary triangle still lies on the face it names."""
+    turn = np.linspace(-4e-3, 4e-3, 41)
+    arch = np.stack([10.0 * np.sin(turn), 10.0 * (np.cos(turn) - 1) + 0.01], axis=1)
+    plate = prism([*arch[::-1].tolist(), (arch[0, 0], 0.0), (arch[-1, 0], 0.0)], 0.05)
+    tags = np.where(centres_and_normals(plate)[0][:, 0] > 0.01, 1, 0)
+    surface = weld(replace(plate, tag=tags.astype(np.int32)))
+    mesh = fill(surface, "plate", 0, Accuracy(1, 0.005))
+    corners, middles = triangle_corners(surface), mesh.nodes[mesh.boundary].mean(axis=1)
+    wanted, found = (
+        np.bincount(tag, areas(places))
+        for tag, places in ((surface.tag, corners), (mesh.boundary_tag, mesh.nodes[mesh.boundary]))
+    )
+    assert found == pytest.approx(wanted, rel=1e-6)
+    off = [
+        distances(np.tile(middle, (int(mine.sum()), 1)), corners[mine]).min()
+        for middle, mine in zip(middles, surface.face == mesh.boundary_face[:, None], strict=True)
+    ]
+    assert max(off) < 8e-5  # the arch's rise over the chord, which is all that the mesher can leave out
