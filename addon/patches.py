@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 
+import bmesh
 import bpy
 import numpy as np
 
@@ -67,9 +69,26 @@ def _reached(facets: Facets, seeds: np.ndarray, joins: Joins) -> np.ndarray:
 
 def facets_of(part: bpy.types.Object) -> Facets:
     """The faces of the part's own mesh as they are now, in edit mode too; they look as in the world."""
-    if part.mode == "EDIT":
-        part.update_from_editmode()
-    mesh = part.data
+    with _as_it_is(part.data) as mesh:
+        return _facets(mesh, np.array(part.matrix_world.to_3x3(), float))
+
+
+@contextmanager
+def _as_it_is(mesh: bpy.types.Mesh) -> Iterator[bpy.types.Mesh]:
+    """The mesh, or in edit mode a copy: one that is brought up to date unasked confuses the host's undo."""
+    if not mesh.is_editmode:
+        yield mesh
+        return
+    copy = bpy.data.meshes.new(mesh.name)
+    try:
+        bmesh.from_edit_mesh(mesh).to_mesh(copy)
+        yield copy
+    finally:
+        bpy.data.meshes.remove(copy)
+
+
+def _facets(mesh: bpy.types.Mesh, matrix: np.ndarray) -> Facets:
+    """matrix: (3, 3) from the mesh's axes to the world's."""
     sides, count = np.empty(len(mesh.loops), np.int32), np.empty(len(mesh.polygons), np.int32)
     start, hidden = np.empty(len(mesh.polygons), np.int32), np.empty(len(mesh.polygons), bool)
     normals = np.empty((len(mesh.polygons), 3), np.float32)
@@ -78,7 +97,7 @@ def facets_of(part: bpy.types.Object) -> Facets:
     mesh.polygons.foreach_get("loop_start", start)
     mesh.polygons.foreach_get("hide", hidden)
     mesh.polygons.foreach_get("normal", normals.ravel())
-    turned = normals @ np.linalg.pinv(np.array(part.matrix_world.to_3x3(), float))
+    turned = normals @ np.linalg.pinv(matrix)
     turned /= np.maximum(np.linalg.norm(turned, axis=1, keepdims=True), 1e-300)
     return Facets(turned.astype(np.float32), start, count, _beside(sides, count, len(mesh.edges), hidden))
 

@@ -1,14 +1,15 @@
-"""Tags of a mesh that lost all face attributes, as voxel remesh does, found again on the new shape."""
+"""What the host loses of tags, found again: on a mesh made anew without them, and definitions that undo leaves out."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import bpy
 import numpy as np
 
 from ..solver.errors import Trouble
-from . import inspection, tags
+from . import groups, inspection, tags
 from .nearest import nearest_uids
 from .parts import triangulated
 
@@ -68,5 +69,36 @@ class Memory:
         self._meshes[mesh.session_uid] = Tagged(vertices, triangles, uids[polygon])
 
 
+class Definitions:
+    """The tags of this session as they last were, by uid.
+
+    In edit mode the host's undo brings back a mesh and not the scene: faces may then be in a tag that the scene has
+    lost, as after a deletion that was undone.
+    """
+
+    def __init__(self) -> None:
+        self._known: dict[int, dict[str, Any]] = {}
+
+    def keep(self, scene: bpy.types.Scene) -> None:
+        self._known |= {tag.uid: groups.as_json(tag) for tag in scene.fluxface.tags}
+
+    def give_back(self, scene: bpy.types.Scene) -> None:
+        """Let the scene know every tag again that faces in it are in."""
+        meshes = {thing.data for thing in scene.objects if thing.type == "MESH" and tags.is_tagged(thing.data)}
+        for mesh in meshes:
+            try:
+                used = np.unique(tags.read(mesh)).tolist()
+            except Trouble:
+                # A foreign attribute of that name is told of when a run starts.
+                continue
+            for uid in used:
+                if uid in self._known and tags.of_uid(scene, uid) is None:
+                    groups.fill(scene.fluxface.tags.add(), self._known[uid])
+
+    def forget(self) -> None:
+        self._known.clear()
+
+
 # One for the session, which is as long as the shapes that it remembers are of use.
 memory = Memory()
+definitions = Definitions()

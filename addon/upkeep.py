@@ -17,7 +17,7 @@ from .inspection import inspector
 from .overlay import tag_colours
 from .parts import modelled, placed, world_matrix
 from .properties import size_followers
-from .recovery import memory
+from .recovery import definitions, memory
 from .units import metres_per_unit
 
 # Long enough that dragging a vertex does not measure the part at every move.
@@ -66,6 +66,7 @@ def refresh() -> None:
     """Bring everything up to date for the parts of the study that are in sight; hidden ones cannot be edited."""
     context = bpy.context
     study.restore_tags(context.scene)
+    definitions.keep(context.scene)
     try:
         members = study.parts(context)
     except Trouble:
@@ -95,6 +96,11 @@ def on_change(_scene: bpy.types.Scene, depsgraph: bpy.types.Depsgraph) -> None:
         refresh_once_quiet(bpy.context)
 
 
+@persistent
+def after_undo(scene: bpy.types.Scene, _depsgraph: bpy.types.Depsgraph | None = None) -> None:
+    definitions.give_back(scene)
+
+
 def refresh_once_quiet(_context: bpy.types.Context) -> None:
     if not bpy.app.background:
         _stop_waiting()
@@ -119,6 +125,7 @@ def before_load(_file: str) -> None:
     bpy.context.window_manager.fluxface.running = False
     tag_colours.forget()
     memory.forget()
+    definitions.forget()
     inspector.stop()
 
 
@@ -132,6 +139,8 @@ def follow_file(_file: str) -> None:
 
 HANDLERS = (
     ("depsgraph_update_post", on_change),
+    ("undo_post", after_undo),
+    ("redo_post", after_undo),
     ("save_pre", before_save),
     ("save_post", follow_file),
     ("load_pre", before_load),
@@ -156,3 +165,4 @@ def unregister() -> None:
     size_followers.remove(refresh_once_quiet)
     _stop_waiting()
     memory.forget()
+    definitions.forget()

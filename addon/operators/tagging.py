@@ -10,6 +10,7 @@ from ...solver.errors import Trouble
 from .. import presets, study, tags, upkeep, view
 from ..language import report
 from ..places import enter_edit_mode
+from ..recovery import definitions
 from .telling import TellsTrouble
 
 
@@ -150,6 +151,8 @@ class DeleteTag(TellsTrouble, bpy.types.Operator):
         return True
 
     def act(self, context: bpy.types.Context) -> None:
+        # Terms that were typed since the last edit are worth as much as the tag when this is undone.
+        definitions.keep(context.scene)
         tags.delete(context.scene, tags.active(context.scene).uid)
         upkeep.refresh()
 
