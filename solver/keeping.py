@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
 from collections.abc import Callable
 from typing import Any, TypeVar
 
@@ -12,28 +11,31 @@ Made = TypeVar("Made")
 
 
 class Kept:
-    """The last thing made of each kind, with a digest of all that it was made from.
+    """The last thing made of each kind, with all that it was made from.
 
     reused: the kinds that the present case found made. A solver that runs once starts and ends with none.
     """
 
     def __init__(self) -> None:
         self.reused: list[str] = []
-        self._made: dict[str, tuple[str, Any]] = {}
+        self._made: dict[str, tuple[tuple[Any, ...], Any]] = {}
 
     def made(self, kind: str, inputs: tuple[Any, ...], make: Callable[[], Made]) -> Made:
-        """What ``make`` gives, or gave when the inputs were the same; arrays count by what they hold."""
-        digest = digest_of(inputs)
+        """What ``make`` gives, or gave when the inputs were the same; arrays, never changed in place, by their values.
+
+        Inputs that are no arrays count by their words, as they may be changed in place.
+        """
+        inputs = tuple(item if isinstance(item, np.ndarray) else repr(item) for item in inputs)
         known = self._made.get(kind)
-        if known is not None and known[0] == digest:
+        if known is not None and len(known[0]) == len(inputs) and all(map(_same, known[0], inputs)):
             self.reused.append(kind)
             return known[1]
         self._made.pop(kind, None)  # its memory is wanted for what takes its place
         value = make()
-        self._made[kind] = (digest, value)
+        self._made[kind] = (inputs, value)
         return value
 
-    def digest(self, kind: str) -> str:
+    def inputs(self, kind: str) -> tuple[Any, ...]:
         """What the thing that is kept of a kind was made from, to stand for it among the inputs of another."""
         return self._made[kind][0]
 
@@ -41,12 +43,7 @@ class Kept:
         self._made.clear()
 
 
-def digest_of(inputs: tuple[Any, ...]) -> str:
-    digest = hashlib.blake2b(digest_size=16)
-    for item in inputs:
-        if isinstance(item, np.ndarray):
-            digest.update(f"{item.dtype} {item.shape}".encode())
-            digest.update(np.ascontiguousarray(item).data)
-        else:
-            digest.update(repr(item).encode())
-    return digest.hexdigest()
+def _same(one: Any, other: Any) -> bool:
+    if not (isinstance(one, np.ndarray) and isinstance(other, np.ndarray)):
+        return type(one) is type(other) and one == other
+    return one is other or (one.dtype == other.dtype and np.array_equal(one, other))

@@ -134,7 +134,7 @@ def _solved(problems: list[Problem], kept: Kept) -> tuple[np.ndarray, np.ndarray
     def new_solver() -> LinearSolver:
         return steady.solver_of(problems[0].mesh, True, free)
 
-    solver = kept.made("solver", (kept.digest("matrix"), nodes), new_solver)
+    solver = kept.made("solver", (*kept.inputs("matrix"), nodes), new_solver)
     on_free = steady.on_free(matrix, free, free)
     temperature[free] = solver.solve_all(on_free, (load - matrix @ temperature)[free], REDUCTION)
     return temperature.T.copy(), (matrix @ temperature - load).T

@@ -34,10 +34,14 @@ DAMPED_FROM = 0.25
 
 @dataclass(frozen=True)
 class Level:
-    """matrix: (n, n). prolongation: (n, c) from the next level. Smoothing: see _smoother; first, second: (n, 1)."""
+    """matrix: (n, n). prolongation: (n, c) from the next level, and carried: (n, c) its product with the matrix.
+
+    Smoothing: see _smoother; first, second: (n, 1).
+    """
 
     matrix: Rows
     prolongation: Rows
+    carried: Rows
     restriction: Rows
     first: np.ndarray
     second: np.ndarray
@@ -63,9 +67,10 @@ class Hierarchy:
             return self.coarsest.solve(loads)
         level = self.levels[depth]
         solution = level.smoothed(loads)
-        coarse = self.cycle(level.restriction @ level.matrix.left(loads, solution), depth + 1)
+        left = level.matrix.left(loads, solution)
+        coarse = self.cycle(level.restriction @ left, depth + 1)
         solution += level.prolongation @ coarse
-        solution += level.smoothed(level.matrix.left(loads, solution))
+        solution += level.smoothed(level.carried.left(left, coarse))  # fewer entries than the matrix itself has
         return solution
 
 
@@ -84,9 +89,9 @@ def hierarchy(matrix: csr_array, interpolation: csr_array | None) -> Hierarchy:
 def _coarsened(matrix: csr_array, prolongation: csr_array) -> tuple[Level, csr_array]:
     """A level, and the Galerkin matrix of the next."""
     restriction = csr_array(prolongation.T)
-    coarse = product(restriction, product(matrix, prolongation))
-    fine = Level(in_rows(matrix), in_rows(prolongation), in_rows(restriction), *_smoother(*_scaling(matrix)))
-    return fine, coarse
+    carried = product(matrix, prolongation)
+    operators = in_rows(matrix), in_rows(prolongation), in_rows(carried), in_rows(restriction)
+    return Level(*operators, *_smoother(*_scaling(matrix))), product(restriction, carried)
 
 
 def _smoother(inverse_diagonal: np.ndarray, largest: float) -> tuple[np.ndarray, np.ndarray, float]:

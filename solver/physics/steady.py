@@ -201,7 +201,7 @@ def solve(
 
     # What a nonlinear problem's solver was set up for is gone with its last iterate.
     linear = not system.nonlinear
-    linear_solver = kept.made("solver", (kept.digest("matrix"), nodes), new_solver) if linear else new_solver()
+    linear_solver = kept.made("solver", (*kept.inputs("matrix"), nodes), new_solver) if linear else new_solver()
     iterations_before = linear_solver.iterations
     reduction = NEWTON_REDUCTION if system.nonlinear else LINEAR_REDUCTION
 

@@ -40,5 +40,5 @@ def _moved(matrix: Rows, preconditioner: Hierarchy) -> float:
     """Bytes of one iteration: the entries of all matrices, and what its products read and write."""
     products = [matrix]
     for level in preconditioner.levels:
-        products += [level.matrix] * 4 + [level.prolongation, level.restriction]
+        products += [level.matrix] * 3 + [level.carried, level.prolongation, level.restriction]
     return float(sum(12 * b.nnz + 8 * b.shape[1] + 20 * b.shape[0] for rows in products for b in rows.blocks))

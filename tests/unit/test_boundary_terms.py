@@ -114,7 +114,7 @@ def test_film_matrix_is_the_consistent_one(turn: np.ndarray, order: int) -> None
 @everywhere
 def test_surface_jacobian_is_twice_the_area(turn: np.ndarray) -> None:
     """Of the parent triangle, whose area is one half."""
-    jacobian = surface_jacobian(FLAT[None] @ turn.T, np.full((1, 3), 1 / 3))
+    jacobian = surface_jacobian(FLAT @ turn.T, np.arange(3)[None])
     np.testing.assert_allclose(jacobian, 2.0 * AREA, rtol=1e-12)
 
 
