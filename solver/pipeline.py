@@ -18,11 +18,11 @@ from .fem.mesh import Mesh, joined, ordered, quadratic
 from .geometry.carrying import tag_areas
 from .geometry.closing import ON_THEIR_WORD, UNASKED, Limits
 from .geometry.inspection import Finding, bounds_solid, inspected
-from .geometry.mending import Mended, may_be_mended, mended
+from .geometry.mending import Mended, mended
 from .geometry.overlap import crossing_parts, touching_parts
 from .geometry.sizing import sizes_at
 from .geometry.surface import areas, diagonal, enclosed_volume, one_part, triangle_corners, united, weld
-from .geometry.tetrahedra import expected_nodes, fill
+from .geometry.tetrahedra import expected_nodes, fill, may_be_mended
 from .keeping import Kept
 from .physics import steady
 from .physics.film import film_law

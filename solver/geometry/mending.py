@@ -14,13 +14,13 @@ import numpy as np
 from ..case import Surface
 from ..errors import Trouble
 from ..fem.mesh import Mesh
-from .apart import Apart
 from .carrying import tag_areas
 from .closing import Limits, closed
 from .crossing import crossings
 from .edges import edges_of
 from .ladder import Rung, rungs
 from .surface import areas, centred, enclosed_volume, triangle_corners
+from .tetrahedra import may_be_mended
 from .tidying import tidied, without_doubled
 from .winding import wound_volume
 
@@ -68,12 +68,6 @@ def mended(
             warnings += _area_warnings(surface, there, tags)
             return Mended(there, mesh, tuple(dict.fromkeys(rung.said)), warnings)
     raise _beyond_mending(surface, whole, name, missing)
-
-
-def may_be_mended(trouble: Trouble) -> bool:
-    """Whether another surface may do where this is said of filling one: a geometry, or a mesher that did not end."""
-    cause = trouble.__cause__
-    return trouble.kind == "geometry" or (isinstance(cause, Apart) and cause.kind == "time")
 
 
 @dataclass(frozen=True)

@@ -42,22 +42,26 @@ FLATTEST = 1e-13  # of the cube of the longest edge: the least volume of a cell
 # is sought where none is so near.
 REACH, WIDER = 1e-6, 10.0
 # s: where a size is given, and where it is ours to choose, with so much more for each triangle.
-SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 120, 4e-4
+SECONDS, SECONDS_BY_DEFAULT, SECONDS_PER_FACE = 900, 45, 4e-4
 # Axes that no modelled edge follows.
 ASKEW = np.linalg.qr(np.array([[0.31, 0.77, 0.29], [-0.61, 0.43, 0.53], [0.71, -0.13, 0.59]]))[0]
 
 
 @dataclass(frozen=True)
 class Attempt:
-    """One way to ask the mesher. switches: added to the usual ones. turned: the part in axes that no edge follows."""
+    """One way to ask the mesher. switches: added to the usual ones. turned: the part in axes that no edge follows.
+
+    patience: the share of the time that it is given; what takes longer seldom ends.
+    """
 
     switches: str = ""
     turned: bool = False
+    patience: float = 1.0
 
 
 # What one way refuses another often takes: which predicates come out as zero depends on axes and tolerance. Measured.
 ATTEMPTS = (Attempt(), Attempt(turned=True), Attempt("T1e-12"))
-KEEPING_FACETS = (Attempt("Y"),)
+KEEPING_FACETS = (Attempt("Y", patience=0.4),)
 KEPT = 5.0  # of the size: the longest edge of a facet that is kept as it is
 
 
@@ -82,9 +86,10 @@ def fill(surface: Surface, name: str, part: int, accuracy: Accuracy, finest: np.
     try:
         filled = _filled(unit, (centre, scale), switches, ATTEMPTS, name, accuracy)
     except Trouble as trouble:
-        if trouble.kind != "geometry":
+        if not may_be_mended(trouble):
             raise
-        # Facets that the mesher cannot split it often takes as they are, unless they are far too large for the size.
+        # Facets that the mesher cannot split, or splits without end, it often takes as they are; they may only not be
+        # far too large for the size.
         unit = _split(unit, np.full(len(unit.triangles), KEPT * size), name, accuracy)
         try:
             filled = _filled(unit, (centre, scale), switches, KEEPING_FACETS, name, accuracy)
@@ -202,7 +207,7 @@ def _tetrahedralise(
             "markers": markers.astype(np.int32),
         }
         try:
-            found = run_apart("tetrahedra", surface, switches + attempt.switches, seconds)
+            found = run_apart("tetrahedra", surface, switches + attempt.switches, attempt.patience * seconds)
         except Apart as apart:
             refusals.append(apart)
             if apart.kind in ("missing", "time", "memory"):
@@ -215,6 +220,12 @@ def _tetrahedralise(
             found["points"][: len(unit.vertices)] = unit.vertices
         return found
     raise _refusal(name, refusals, seconds) from refusals[-1]
+
+
+def may_be_mended(trouble: Trouble) -> bool:
+    """Whether another surface may do where this is said of filling one: a geometry, or a mesher that did not end."""
+    cause = trouble.__cause__
+    return trouble.kind == "geometry" or (isinstance(cause, Apart) and cause.kind == "time")
 
 
 def _refusal(name: str, refusals: list[Apart], seconds: float) -> Trouble:
