@@ -10,6 +10,7 @@ import bpy
 
 from ..solver.errors import Trouble
 from . import study
+from .language import report
 from .units import area_text
 
 # A tag is told of when its area changed by this or more; scaling the whole part is no loss of a tag.
@@ -35,11 +36,16 @@ def changes(scene: bpy.types.Scene, before: Mapping[int, float], now: Mapping[in
         if not was:
             continue
         if not is_now:
-            told.append(f"'{tag.name}' has no faces any more; in the last run it had {area_text(scene, was)}.")
-        elif abs(math.log(is_now / (was * scaled))) >= math.log(FACTOR) - ROUNDING:
             told.append(
-                f"'{tag.name}' has {area_text(scene, is_now)} now; in the last run it had {area_text(scene, was)}."
+                report(
+                    "'{name}' has no faces any more; in the last run it had {area}.",
+                    name=tag.name,
+                    area=area_text(scene, was),
+                )
             )
+        elif abs(math.log(is_now / (was * scaled))) >= math.log(FACTOR) - ROUNDING:
+            areas = {"now": area_text(scene, is_now), "area": area_text(scene, was)}
+            told.append(report("'{name}' has {now} now; in the last run it had {area}.", name=tag.name, **areas))
     return told
 
 

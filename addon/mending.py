@@ -43,8 +43,6 @@ def start(context: bpy.types.Context, part: bpy.types.Object) -> Mending:
 
     Raises Trouble when it is no body or the solver is missing.
     """
-    if part.mode == "EDIT":
-        part.update_from_editmode()
     with in_sight(context, [part]) as depsgraph:
         upkeep.measure(part, depsgraph)
         case = build_shapes(context.scene, [part], depsgraph)

@@ -108,7 +108,9 @@ class Terms:
     diameter: FloatProperty(
         name="Diameter", description="0 = measured on the tag", min=0.0, unit="LENGTH", precision=4
     )  # fmt: skip
-    gap: FloatProperty(name="Gap between fins", min=0.0, unit="LENGTH", precision=4)
+    gap: FloatProperty(
+        name="Gap between fins", description="Clear distance from fin to fin", min=0.0, unit="LENGTH", precision=4
+    )
     speed: FloatProperty(name="Speed (m/s)", description="Speed of the flow away from the part", min=0.0, default=1.0)
     use_radiation: BoolProperty(name="Radiation", description="Heat these faces radiate to their surroundings")
     emissivity: FloatProperty(
@@ -153,14 +155,16 @@ class UntaggedTerms(Terms, bpy.types.PropertyGroup):
 
 
 class TablePoint(bpy.types.PropertyGroup):
-    temperature: FloatProperty(name="At", default=ROOM, min=0.0, unit="TEMPERATURE", step=1000)
-    value: FloatProperty(name="Value", default=1.0, precision=3)
+    temperature: FloatProperty(
+        name="At", description="Temperature that the row is for", default=ROOM, min=0.0, unit="TEMPERATURE", step=1000
+    )
+    value: FloatProperty(name="Value", description="At the temperature of the row", default=1.0, precision=3)
 
 
 class MaterialProperty(bpy.types.PropertyGroup):
     """One property: a number, or a table over temperature."""
 
-    value: FloatProperty(name="Value", precision=3)
+    value: FloatProperty(name="Value", description="At every temperature", precision=3)
     tabulated: BoolProperty(name="Over temperature", description="Give a table over temperature in place of one number")
     points: CollectionProperty(type=TablePoint)
     active_point: IntProperty()
@@ -194,7 +198,12 @@ class MaterialValues(bpy.types.PropertyGroup):
         name="Along the axes of", type=bpy.types.Object,
         description="The object whose local axes are the material's; none = the part's own",
     )  # fmt: skip
-    density: FloatProperty(name="Density (kg/m³)", min=0.0, precision=1)
+    density: FloatProperty(
+        name="Density (kg/m³)",
+        description="Gives the mass of the part; a steady temperature does not depend on it",
+        min=0.0,
+        precision=1,
+    )
     heat_capacity: PointerProperty(type=MaterialProperty)
 
 
@@ -246,6 +255,7 @@ class PartSettings(bpy.types.PropertyGroup):
     material: PointerProperty(type=MaterialValues)
     heat_kind: EnumProperty(
         name="Heat released in the volume",
+        description="Given for the whole part, or for each cubic metre",
         items=(("TOTAL", "Total (W)", "Watts over the whole part"), ("DENSITY", "Per volume (W/m³)", "")),
     )
     heat: FloatProperty(
@@ -290,14 +300,37 @@ def _is_mesh(_settings: bpy.types.PropertyGroup, candidate: bpy.types.Object) ->
 class ContactSettings(bpy.types.PropertyGroup):
     """Where faces of two parts lie against each other."""
 
-    first: PointerProperty(name="Part", type=bpy.types.Object, poll=_is_mesh)
-    second: PointerProperty(name="and", type=bpy.types.Object, poll=_is_mesh)
+    first: PointerProperty(
+        name="Part", description="One of the two parts that touch", type=bpy.types.Object, poll=_is_mesh
+    )
+    second: PointerProperty(name="and", description="The other of the two parts", type=bpy.types.Object, poll=_is_mesh)
     crossing: EnumProperty(name="Crossing", items=CROSSINGS, description="How heat crosses", default="FILLER")
     area: FloatProperty(description="m² over which the parts touch, found by the last search")
-    conductance: FloatProperty(name="Conductance (W/m²K)", default=5000.0, min=0.0, precision=1)
-    resistance: FloatProperty(name="Resistance (m²K/W)", default=2e-4, min=0.0, precision=6)
-    thickness: FloatProperty(name="Thickness", default=2e-4, min=0.0, unit="LENGTH", precision=4)
-    conductivity: FloatProperty(name="Conductivity (W/mK)", default=1.0, min=0.0, precision=3)
+    conductance: FloatProperty(
+        name="Conductance (W/m²K)",
+        description="Heat across the contact per area and degree",
+        default=5000.0,
+        min=0.0,
+        precision=1,
+    )
+    resistance: FloatProperty(
+        name="Resistance (m²K/W)",
+        description="Degrees across the contact per heat and area",
+        default=2e-4,
+        min=0.0,
+        precision=6,
+    )
+    thickness: FloatProperty(
+        name="Thickness",
+        description="Of the layer of paste, pad or glue",
+        default=2e-4,
+        min=0.0,
+        unit="LENGTH",
+        precision=4,
+    )
+    conductivity: FloatProperty(
+        name="Conductivity (W/mK)", description="Of the paste, pad or glue", default=1.0, min=0.0, precision=3
+    )
     gap: FloatProperty(
         name="Widest gap", description="Faces within this distance count as touching; 0 = chosen from the parts' size",
         min=0.0, unit="LENGTH", precision=4,
@@ -308,7 +341,9 @@ class StudySettings(bpy.types.PropertyGroup):
     """On the scene: its tags, which objects are the parts, and how finely to solve."""
 
     tags: CollectionProperty(type=TagDefinition)
-    active_tag: IntProperty(name="Face tag")
+    active_tag: IntProperty(
+        name="Face tag", description="The tag that is shown below the list and that faces are given to"
+    )
     untagged: PointerProperty(type=UntaggedTerms)
     show_tags: BoolProperty(
         name="Show on the Part", description="Draw the faces of each tag in its colour", default=True
@@ -330,7 +365,7 @@ class StudySettings(bpy.types.PropertyGroup):
         description="Direction for natural convection, in world axes",
     )  # fmt: skip
     order: EnumProperty(
-        name="Elements", default="2",
+        name="Elements", description="How the temperature runs within each element of the mesh", default="2",
         items=(("1", "Linear", "Quick and coarse"), ("2", "Quadratic", "More accurate for the same mesh")),
     )  # fmt: skip
     size: FloatProperty(

@@ -33,18 +33,18 @@ def carried(scene: bpy.types.Scene, tag: Tag) -> str:
     """The same of a tag of a case."""
     texts = []
     if tag.temperature is not None:
-        texts.append(f"held at {short_temperature_text(scene, tag.temperature)}")
+        texts.append(label("held at {temperature}", temperature=short_temperature_text(scene, tag.temperature)))
     if tag.heat:
         texts.append(power_text(tag.heat))
     if tag.heat_flux:
         texts.append(f"{tag.heat_flux:g} W/m²".replace("-", "−"))
     if tag.convection:
         to_one_room = tag.radiation and tag.radiation.ambient == tag.convection.ambient
-        ambient = f" to {short_temperature_text(scene, tag.convection.ambient)}"
-        texts.append(_film(tag.convection) + ("" if to_one_room else ambient))
+        film, ambient = _film(tag.convection), short_temperature_text(scene, tag.convection.ambient)
+        texts.append(film if to_one_room else label("{film} to {ambient}", film=film, ambient=ambient))
     if tag.radiation:
         surroundings = short_temperature_text(scene, tag.radiation.ambient)
-        texts.append(f"ε {tag.radiation.emissivity:g} to {surroundings}")
+        texts.append(label("ε {share:g} to {ambient}", share=tag.radiation.emissivity, ambient=surroundings))
     return ", ".join(texts)
 
 
@@ -52,7 +52,8 @@ def _film(convection: Convection) -> str:
     if convection.coefficient is not None:
         return f"{convection.coefficient:g} W/m²K"
     moving = convection.correlation in ("flat_plate_flow", "cylinder_crossflow")
-    return f"{'moving' if moving else 'still'} {convection.fluid or 'air'}"
+    fluid = label(convection.fluid or "air")
+    return label("moving {fluid}", fluid=fluid) if moving else label("still {fluid}", fluid=fluid)
 
 
 def clash(terms: Terms) -> str:
@@ -66,16 +67,20 @@ def clash(terms: Terms) -> str:
 def crossing(scene: bpy.types.Scene, contact: ContactSettings) -> str:
     """How heat crosses a contact, as in "0.2 mm of 3 W/mK"."""
     if contact.crossing == "BONDED":
-        return "bonded"
+        return label("bonded")
     if contact.crossing == "CONDUCTANCE":
         return f"{as_typed(contact.conductance):g} W/m²K"
     if contact.crossing == "RESISTANCE":
         return f"{as_typed(contact.resistance):g} m²K/W"
     thickness = 1e3 * as_typed(contact.thickness) * metres_per_unit(scene)
-    return f"{thickness:.3g} mm of {as_typed(contact.conductivity):g} W/mK"
+    return label(
+        "{thickness:.3g} mm of {conductivity:g} W/mK", thickness=thickness, conductivity=as_typed(contact.conductivity)
+    )
 
 
 def heat_through(watts: float) -> str:
     """As in "12 W in": heat into the part is positive, and a sign alone leaves the direction to be guessed."""
-    direction = "" if power_text(watts) == "0 W" else " in" if watts > 0 else " out"
-    return power_text(abs(watts)) + direction
+    power = power_text(abs(watts))
+    if power_text(watts) == "0 W":
+        return power
+    return label("{power} in", power=power) if watts > 0 else label("{power} out", power=power)

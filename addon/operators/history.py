@@ -9,6 +9,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import comparing, history, study
+from ..language import report
 from ..properties import KeptRun, Outcome
 from .seeing import members_with_result
 from .telling import TellsTrouble
@@ -40,7 +41,11 @@ class OpenRunFolder(_OfRun, bpy.types.Operator):
     def act(self, context: bpy.types.Context) -> None:
         _, run = chosen(context)
         if not Path(run.folder).is_dir():
-            raise Trouble("case", f"The folder {run.folder} is not there any more.", "Put it back, or run again.")
+            raise Trouble(
+                "case",
+                report("The folder {folder} is not there any more.", folder=run.folder),
+                "Put it back, or run again.",
+            )
         bpy.ops.wm.path_open(filepath=run.folder)
 
 
@@ -60,7 +65,11 @@ class ForgetRun(_OfRun, bpy.types.Operator):
         except FileNotFoundError:
             pass
         except OSError as error:
-            raise Trouble("case", f"The run cannot be deleted: {error.strerror}.", f"Look at {run.folder}.") from error
+            raise Trouble(
+                "case",
+                report("The run cannot be deleted: {reason}.", reason=error.strerror),
+                report("Look at {folder}.", folder=run.folder),
+            ) from error
         history.refresh(left, case)
         comparing.share_range(context.scene, left)
 

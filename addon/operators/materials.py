@@ -7,6 +7,7 @@ from bpy.props import FloatProperty, StringProperty
 
 from ...solver.errors import Trouble
 from .. import materials, study, tags
+from ..language import report
 from .telling import TellsTrouble
 
 
@@ -26,11 +27,13 @@ class ChooseMaterial(_OnPart, bpy.types.Operator):
     bl_label = "Choose Material"
     bl_description = "Make the part of this material"
 
-    name: StringProperty(name="Material")
+    name: StringProperty(name="Material", description="Of the library, or one of your own")
 
     def act(self, context: bpy.types.Context) -> None:
         if self.name not in materials.at_hand():
-            raise Trouble("case", f"There is no material '{self.name}'.", "Choose one of the library.")
+            raise Trouble(
+                "case", report("There is no material '{name}'.", name=self.name), "Choose one of the library."
+            )
         study.active_part(context).fluxface.material.name = self.name
 
 
@@ -71,9 +74,13 @@ class KeepMaterial(_OnPart, bpy.types.Operator):
     def act(self, context: bpy.types.Context) -> None:
         material = materials.material_of(study.active_part(context))
         if material.name in materials.library():
-            raise Trouble("case", f"'{material.name}' is a name of the built-in library.", "Give yours another name.")
+            raise Trouble(
+                "case",
+                report("'{name}' is a name of the built-in library.", name=material.name),
+                "Give yours another name.",
+            )
         materials.save_own(material)
-        self.report({"INFO"}, f"'{material.name}' is now among your own materials")
+        self.report({"INFO"}, report("'{name}' is now among your own materials", name=material.name))
 
 
 class UseEmissivity(TellsTrouble, bpy.types.Operator):
@@ -82,11 +89,14 @@ class UseEmissivity(TellsTrouble, bpy.types.Operator):
     bl_description = "Give the active tag this emissivity"
     bl_options = {"REGISTER", "UNDO"}
 
-    emissivity: FloatProperty(min=0.0, max=1.0)
+    emissivity: FloatProperty(name="Emissivity", description="Of the finish", min=0.0, max=1.0)
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
-        return tags.active(context.scene) is not None
+        if tags.active(context.scene) is None:
+            cls.poll_message_set("There is no tag yet")
+            return False
+        return True
 
     def act(self, context: bpy.types.Context) -> None:
         tags.active(context.scene).emissivity = self.emissivity

@@ -7,7 +7,7 @@ from pathlib import Path
 import bpy
 from bpy.props import StringProperty
 
-from .. import report, study, view
+from .. import language, report, study, view
 from ..report import PICTURE, REPORT
 from .seeing import members_with_result
 from .telling import TellsTrouble
@@ -42,12 +42,14 @@ class RenderPicture(_Publishes, bpy.types.Operator):
     bl_description = "Render the part in its temperatures with the legend, and save it as PNG"
     file_name = PICTURE
 
-    filepath: StringProperty(name="Picture", subtype="FILE_PATH")
+    filepath: StringProperty(
+        name="Picture", description="The PNG to write; empty = beside the result", subtype="FILE_PATH"
+    )
     filter_glob: StringProperty(default="*.png", options={"HIDDEN"})
 
     def act(self, context: bpy.types.Context) -> None:
         made = view.render_picture(context.scene, study.parts(context), self.path(context))
-        self.report({"INFO"}, f"Picture saved as {made}")
+        self.report({"INFO"}, language.report("Picture saved as {file}", file=made))
 
 
 class WriteReport(_Publishes, bpy.types.Operator):
@@ -56,12 +58,14 @@ class WriteReport(_Publishes, bpy.types.Operator):
     bl_description = "One page on what was solved and what came of it: a single HTML file that prints to one A4"
     file_name = REPORT
 
-    filepath: StringProperty(name="Report", subtype="FILE_PATH")
+    filepath: StringProperty(
+        name="Report", description="The HTML to write; empty = beside the result", subtype="FILE_PATH"
+    )
     filter_glob: StringProperty(default="*.html", options={"HIDDEN"})
 
     def act(self, context: bpy.types.Context) -> None:
         made = report.report_of(context.scene, study.parts(context), self.path(context))
-        self.report({"INFO"}, f"Report saved as {made}")
+        self.report({"INFO"}, language.report("Report saved as {file}", file=made))
         if not bpy.app.background:
             bpy.ops.wm.url_open(url=made.as_uri())
 

@@ -7,6 +7,7 @@ import json
 import bpy
 
 from .. import jobs, places, running, study
+from ..language import report
 from .telling import Finish, TellsTrouble, WorksBeside
 
 
@@ -51,7 +52,7 @@ class ShowPlace(TellsTrouble, bpy.types.Operator):
         left = study.outcome(context.scene, members)
         named = [part for part in members if f"'{part.name}'" in left.message] or members
         if not places.show(context, named[0], json.loads(left.faces or "[]"), json.loads(left.points or "[]")):
-            self.report({"INFO"}, places.ELSEWHERE)
+            self.report({"INFO"}, report(places.ELSEWHERE))
 
 
 register, unregister = bpy.utils.register_classes_factory((RunSolver, CancelRun, ShowPlace))

@@ -50,7 +50,11 @@ class TurnCut(_OfCut, bpy.types.Operator):
     bl_description = "Let the cutting plane look along an axis of the world; again: the other way"
     bl_options = {"REGISTER", "UNDO"}
 
-    axis: EnumProperty(name="Along", items=[(axis, axis, f"Take away what lies towards {axis}") for axis in "XYZ"])
+    axis: EnumProperty(
+        name="Along",
+        description="The axis of the world that the plane looks along",
+        items=[(axis, axis, f"Take away what lies towards {axis}") for axis in "XYZ"],
+    )
 
     def act(self, context: bpy.types.Context) -> None:
         cutting.turn(context.scene, study.parts(context), self.axis)

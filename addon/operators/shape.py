@@ -7,6 +7,7 @@ from bpy.props import IntProperty
 
 from ...solver.errors import Trouble
 from .. import inspection, jobs, ledger, mending, places, study, tags
+from ..language import report
 from .telling import Finish, TellsTrouble, WorksBeside
 
 
@@ -30,9 +31,13 @@ class ShowFinding(TellsTrouble, bpy.types.Operator):
         part = study.active_part(context)
         found = inspection.findings(part)
         if not 0 <= self.which < len(found):
-            raise Trouble("case", f"There is no finding of that number on '{part.name}'.", "Choose one in the sidebar.")
+            raise Trouble(
+                "case",
+                report("There is no finding of that number on '{name}'.", name=part.name),
+                "Choose one in the sidebar.",
+            )
         if not places.show(context, part, inspection.faces_of(part, self.which), found[self.which]["points"]):
-            self.report({"INFO"}, places.ELSEWHERE)
+            self.report({"INFO"}, report(places.ELSEWHERE))
 
 
 class MendMesh(WorksBeside, bpy.types.Operator):
@@ -92,7 +97,7 @@ class SelectUntagged(TellsTrouble, bpy.types.Operator):
         places.enter_edit_mode(context, part)
         free = tags.read(part.data) == 0
         if not free.any():
-            raise Trouble("case", f"Every face of '{part.name}' is in a tag.", "")
+            raise Trouble("case", report("Every face of '{name}' is in a tag.", name=part.name), "")
         tags.select(part.data, free)
 
 

@@ -57,7 +57,7 @@ class NewTag(_OnPart, bpy.types.Operator):
     bl_label = "New Tag"
     bl_description = "Make a tag and give it the selected faces"
 
-    name: StringProperty(name="Name", default="face tag")
+    name: StringProperty(name="Name", description="What the faces are", default="face tag")
 
     def act(self, context: bpy.types.Context) -> None:
         selections = tags.selections(_parts(context))
@@ -113,14 +113,20 @@ class MoveFaces(_OnTag, bpy.types.Operator):
     def act(self, context: bpy.types.Context) -> None:
         own, other = tags.active(context.scene), context.scene.fluxface.tags.get(self.to)
         if other is None or other == own:
-            raise Trouble("case", f"There is no other tag '{self.to}'.", "Choose one of the scene's tags.")
+            raise Trouble(
+                "case", report("There is no other tag '{name}'.", name=self.to), "Choose one of the scene's tags."
+            )
         moved = []
         for part in _parts(context):
             faces = tags.read(part.data) == own.uid
             moved.append((part, faces & tags.selected(part.data) if self.only_selected else faces))
         count = int(sum(faces.sum() for _, faces in moved))
         if not count:
-            raise Trouble("case", f"No such faces are in '{own.name}'.", "Make the tag that has them the active one.")
+            raise Trouble(
+                "case",
+                report("No such faces are in '{name}'.", name=own.name),
+                "Make the tag that has them the active one.",
+            )
         _give(context, moved, other.uid)
         self.report({"INFO"}, report("Faces moved to '{name}': {count}.", name=other.name, count=count))
 

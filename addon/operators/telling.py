@@ -8,6 +8,12 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import jobs, running
+from ..language import report
+
+
+def told(trouble: Trouble) -> str:
+    return " ".join(report(sentence) for sentence in (trouble.message, trouble.mend) if sentence)
+
 
 Finish = Callable[[jobs.Ending], Trouble | None]
 
@@ -22,7 +28,7 @@ class TellsTrouble:
         try:
             self.act(context)
         except Trouble as trouble:
-            self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
+            self.report({"ERROR"}, told(trouble))
             return {"CANCELLED"}
         return {"FINISHED"}
 
@@ -52,7 +58,7 @@ class WorksBeside(TellsTrouble):
         try:
             job, finish = self.start(context)
         except Trouble as trouble:
-            self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
+            self.report({"ERROR"}, told(trouble))
             return {"CANCELLED"}
         running.watch(job, finish, self.undo_step)
         return {"FINISHED"}

@@ -9,6 +9,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import history, study
+from ..language import label
 from ..units import power_text, signed_difference_text, span_text, temperature_text
 from .sidebar import Sidebar, pair, paragraph
 
@@ -44,7 +45,12 @@ class RunsPanel(Sidebar, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         layout, left = self.layout, study.outcome(context.scene, study.parts(context))
         if left.lost:
-            paragraph(context, layout, f"The folder of the last result is not where it was ({left.folder}).", "ERROR")
+            paragraph(
+                context,
+                layout,
+                label("The folder of the last result is not where it was ({folder}).", folder=left.folder),
+                "ERROR",
+            )
             paragraph(context, layout, "Put it back beside the file, or run again; the colours shown are still its.")
         row = layout.row()
         row.template_list("FLUXFACE_UL_runs", "", left, "runs", left, "active_run", rows=3)
@@ -55,7 +61,7 @@ class RunsPanel(Sidebar, bpy.types.Panel):
             _draw_comparison(context, layout, json.loads(left.comparison))
         else:
             layout.operator("fluxface.run_compare", icon="ARROW_LEFTRIGHT")
-        paragraph(context, layout, f"The latest {history.KEPT} are kept beside the file.")
+        paragraph(context, layout, label("The latest {count} are kept beside the file.", count=history.KEPT))
 
 
 def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, told: dict[str, Any]) -> None:
@@ -67,7 +73,9 @@ def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, tol
         pair(column, row["name"], f"{span_text(context.scene, row['then'], row['now'])}  ({change})")
     if told["known"] < 1 - ROUNDING:
         share = f"{100 * (1 - told['known']):.2g} %"
-        paragraph(context, box, f"{share} of the surface was not there then, and is shown grey.", "INFO")
+        paragraph(
+            context, box, label("{share} of the surface was not there then, and is shown grey.", share=share), "INFO"
+        )
     box.operator("fluxface.end_comparison", icon="X")
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import bpy
 
 from .. import cutting, view
+from ..language import label
 from .result import OfResult
 from .sidebar import fields, named, paragraph
 
@@ -64,11 +65,16 @@ def _draw_settings(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
         layout.label(text="From is not below To, so one kelvin is shown.", icon="ERROR")
     elif settings.range == "LOCKED" and (settings.coldest < settings.low or settings.hottest > settings.high):
         unit = view.scale_of(scene).unit
-        beyond = f"{unit.text(settings.coldest)} to {unit.text(settings.hottest)}"
-        layout.label(text=f"Some surfaces lie beyond the range: {beyond}.", icon="INFO")
+        beyond = label(
+            "Some surfaces lie beyond the range: {coldest} to {hottest}.",
+            coldest=unit.text(settings.coldest),
+            hottest=unit.text(settings.hottest),
+        )
+        layout.label(text=beyond, icon="INFO")
     if scene.view_settings.view_transform != view.TRUE_TRANSFORM:
         warning = layout.column(align=True)
-        warning.label(text=f"{scene.view_settings.view_transform} shifts the colours outside Solid.", icon="INFO")
+        shifted = label("{transform} shifts the colours outside Solid.", transform=scene.view_settings.view_transform)
+        warning.label(text=shifted, icon="INFO")
         warning.operator("fluxface.show_true_colours")
 
 

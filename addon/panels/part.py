@@ -6,6 +6,7 @@ import bpy
 
 from ...solver.materials import Material
 from .. import materials, study
+from ..language import label
 from ..properties import MaterialProperty
 from .sidebar import Sidebar, fields, named, pair, paragraph
 
@@ -24,12 +25,12 @@ class MaterialPanel(_OfPart, bpy.types.Panel):
         part = study.active_part(context)
         values = part.fluxface.material
         if context.scene.fluxface.collection is not None:
-            self.layout.label(text=f"of '{part.name}'")
+            self.layout.label(text=label("of '{name}'", name=part.name))
         row = self.layout.row(align=True)
         row.prop(values, "name", text="", icon="MATERIAL", placeholder="Search the library")
         row.menu("FLUXFACE_MT_materials", text="", icon="DOWNARROW_HLT")
         if not values.name:
-            paragraph(context, self.layout, f"Choose what '{part.name}' is made of.", "INFO")
+            paragraph(context, self.layout, label("Choose what '{name}' is made of.", name=part.name), "INFO")
             return
         _draw_conductivity(self.layout, values)
         if values.conductivity.value <= 0.0 and not values.conductivity.tabulated:
@@ -48,7 +49,8 @@ def _draw_conductivity(layout: bpy.types.UILayout, values: bpy.types.PropertyGro
 
 def _draw_number(column: bpy.types.UILayout, item: MaterialProperty, text: str) -> None:
     if item.tabulated:
-        span = f"{item.points[0].value:g} to {item.points[-1].value:g}" if item.points else "no rows yet"
+        first, last = (item.points[0].value, item.points[-1].value) if item.points else (0.0, 0.0)
+        span = label("{first:g} to {last:g}", first=first, last=last) if item.points else "no rows yet"
         pair(column, text, span)
     else:
         column.prop(item, "value", text=text)

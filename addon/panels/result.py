@@ -9,6 +9,7 @@ import bpy
 from ...solver.errors import Trouble
 from ...solver.result import Summary
 from .. import study, words
+from ..language import label
 from ..units import area_text, difference_text, power_text, span_text, temperature_text
 from .sidebar import Sidebar, pair, paragraph
 
@@ -85,7 +86,7 @@ class PartRowsPanel(_OfSeveral, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         for row in present(context)["parts"]:
             column = self.layout.box().column(align=True)
-            pair(column, row["name"], f"{power_text(row['heat'])} inside" if row["heat"] else "")
+            pair(column, row["name"], label("{power} inside", power=power_text(row["heat"])) if row["heat"] else "")
             _draw_temperatures(context, column, row)
 
 
@@ -97,7 +98,7 @@ class ContactRowsPanel(_OfSeveral, bpy.types.Panel):
         for row in present(context)["contacts"]:
             column = self.layout.box().column(align=True)
             first, second = row["parts"] if row["heat"] >= 0 else reversed(row["parts"])
-            pair(column, f"{first} to {second}", power_text(abs(row["heat"])))
+            pair(column, label("{first} to {second}", first=first, second=second), power_text(abs(row["heat"])))
             pair(column, "Drop", difference_text(context.scene, abs(row["drop"])))
             pair(column, "Area", area_text(context.scene, row["area"]))
 

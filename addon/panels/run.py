@@ -6,6 +6,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import study
+from ..language import label
 from ..properties import Outcome
 from .sidebar import Sidebar, paragraph
 
@@ -44,7 +45,7 @@ def standing(context: bpy.types.Context, left: Outcome) -> tuple[str, str]:
     if study.is_current(context.scene, study.parts(context)):
         return "CHECKMARK", "The result is current"
     changed = ", ".join(study.changes(context.scene, study.parts(context)))
-    return "FILE_REFRESH", f"Changed since the last run: {changed}"
+    return "FILE_REFRESH", label("Changed since the last run: {kinds}", kinds=changed)
 
 
 def _draw_trouble(context: bpy.types.Context, layout: bpy.types.UILayout, left: Outcome) -> None:

@@ -6,6 +6,8 @@ import textwrap
 
 import bpy
 
+from ..language import label
+
 # Pixels of a usual letter and of what stands beside the text, at the host's scale of one.
 LETTER, BESIDE = 6.2, 50.0
 NARROWEST = 20
@@ -23,12 +25,12 @@ def paragraph(context: bpy.types.Context, layout: bpy.types.UILayout, text: str,
     column.scale_y = 0.8
     icon_width = 0.0 if icon == "NONE" else 20.0
     width = context.region.width / context.preferences.system.ui_scale - BESIDE - icon_width
-    lines = textwrap.wrap(text, max(NARROWEST, int(width / LETTER)))
+    lines = textwrap.wrap(label(text), max(NARROWEST, int(width / LETTER)))
     for number, line in enumerate(lines):
         if icon == "NONE":
-            column.label(text=line)
+            column.label(text=line, translate=False)
         else:
-            column.label(text=line, icon=icon if number == 0 else "BLANK1")
+            column.label(text=line, icon=icon if number == 0 else "BLANK1", translate=False)
 
 
 def pair(layout: bpy.types.UILayout, name: str, value: str, icon: str = "NONE") -> None:

@@ -6,6 +6,7 @@ import bpy
 
 from ...solver.errors import Trouble
 from .. import study
+from ..language import label
 from .sidebar import Sidebar, fields, named, paragraph
 
 
@@ -22,10 +23,19 @@ class StudyPanel(Sidebar, bpy.types.Panel):
             paragraph(context, self.layout, f"{trouble.message} {trouble.mend}", "INFO")
             return
         names = ", ".join(part.name for part in members)
-        paragraph(context, self.layout, f"{len(members)} parts: {names}" if len(members) > 1 else f"Part: {names}")
+        paragraph(
+            context,
+            self.layout,
+            label("{count} parts: {names}", count=len(members), names=names)
+            if len(members) > 1
+            else label("Part: {names}", names=names),
+        )
         left_out = study.left_out(context.scene)
         if left_out:
-            told = f"Left out, as no meshes: {', '.join(left_out)}. Object > Convert > Mesh makes parts of them."
+            told = label(
+                "Left out, as no meshes: {names}. Object > Convert > Mesh makes parts of them.",
+                names=", ".join(left_out),
+            )
             paragraph(context, self.layout, told, "INFO")
 
 
