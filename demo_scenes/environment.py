@@ -16,7 +16,9 @@ from pathlib import Path
 ROOT = Path(__file__).resolve().parent.parent
 VERSIONS = ("3.11", "3.13")  # those that the 3D suite's module is released for
 # What the libraries to measure against ask of NumPy, the host cannot do with.
-EXTRAS = {"": "host,test", "bench": "test,bench"}
+EXTRAS = {"": "host,test", "bench": "test"}
+# Those that are installed if they can be, one by one.
+OPTIONAL = {"bench": "bench"}
 RUNNING = f"{sys.version_info.major}.{sys.version_info.minor}"
 STAMP = "fluxface-environment"
 SYSTEM_LIBRARIES = "libx11-6 libxi6 libxfixes3 libxrender1 libxkbcommon0 libsm6 libice6 libgl1"
@@ -92,7 +94,8 @@ def ready(version: str, interpreter: str, purpose: str = "") -> Path:
         else:
             print(f"Bringing {folder.name} up to date with pyproject.toml.", flush=True)
         (folder / STAMP).write_text("unfinished\n", "utf-8")
-        _install(python, interpreter, EXTRAS[purpose])
+        _install(python, interpreter, "--editable", f"{ROOT}[{EXTRAS[purpose]}]")
+        _install_some(python, interpreter, OPTIONAL.get(purpose))
     except (OSError, subprocess.CalledProcessError) as error:
         sys.exit(f"{folder.name} could not be made: {error}. Mend what the lines above say and run this again.")
     except KeyboardInterrupt:
@@ -139,9 +142,23 @@ def _create(folder: Path, version: str, interpreter: str) -> None:
     subprocess.run([interpreter, "-m", "venv", "--without-pip", str(folder)], check=True)
 
 
-def _install(python: Path, interpreter: str, extras: str) -> None:
+def _install(python: Path, interpreter: str, *what: str) -> None:
     pip = [interpreter, "-m", "pip", "--python", str(python), "--disable-pip-version-check", "-qq"]
-    subprocess.run([*pip, "install", "--editable", f"{ROOT}[{extras}]"], check=True, stdin=subprocess.DEVNULL)
+    subprocess.run([*pip, "install", *what], check=True, stdin=subprocess.DEVNULL)
+
+
+def _install_some(python: Path, interpreter: str, extra: str | None) -> None:
+    """What can be had of an extra; what cannot is told and left out."""
+    if extra is None:
+        return
+    import tomllib  # not in every Python that starts a command of ours
+
+    project = tomllib.loads((ROOT / "pyproject.toml").read_text("utf-8"))["project"]
+    for requirement in project["optional-dependencies"][extra]:
+        try:
+            _install(python, interpreter, requirement)
+        except subprocess.CalledProcessError:
+            print(f"Left out, as it could not be installed: {requirement}", flush=True)
 
 
 def host_trouble(python: str | Path) -> str | None:

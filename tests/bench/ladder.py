@@ -12,24 +12,30 @@ from fluxface.solver.parallel import side_by_side, slices
 from matplotlib.figure import Figure
 
 STAGES = ("mesh", "order", "assemble", "set up", "solve")
+BANDWIDTH = 0.5  # at least so much of it, as a goal
 TRIAD, IN_CACHE, REPEATS = 20_000_000, 20_000, 5
 
 
-def measured(rungs: dict[int, tuple[int, ...]], folder: Path, out: Path) -> None:
-    """Print and plot the ladder of both shapes; rungs: counts of cells for each order."""
-    triad = bandwidth()
+def measured(rungs: dict[int, tuple[int, ...]], folder: Path, out: Path) -> tuple[dict, dict]:
+    """Print and plot the ladder of both shapes; rungs: counts of cells for each order.
+
+    {name: {"ratio": .., "goal": .., "at_least": True}} of the bandwidth at the largest size, and {name: slope}.
+    """
+    triad, shares, slopes = bandwidth(), {}, {}
     figure = Figure((7, 5), layout="constrained")
     axes = figure.subplots()
     for shape in problems.SHAPES:
         for order, counts in rungs.items():
             rows = np.array([_rung(shape, order, cells, folder) for cells in counts])
             name = f"{shape}, {('linear', 'quadratic')[order - 1]}"
-            slope = np.polyfit(np.log(rows[:, 0]), np.log(rows[:, 3:7].sum(axis=1)), 1)[0]
+            slopes[name] = slope = np.polyfit(np.log(rows[:, 0]), np.log(rows[:, 3:7].sum(axis=1)), 1)[0].item()
             print(f"\n{name}: processor seconds grow as nodes to the {slope:.2f} after meshing")
             print(f"{'nodes':>12}" + "".join(f"{stage:>10}" for stage in (*STAGES, "steps", "bandwidth")))
             for nodes, mesh, iterations, *stages, moved in rows:
                 spent = "".join(f"{seconds:10.2f}" for seconds in (mesh, *stages))
                 print(f"{nodes:12,.0f}{spent}{iterations:10.0f}{moved / triad:10.2f}")
+            share = float(rows[-1, -1] / triad)
+            shares[f"{name}: bandwidth"] = {"ratio": share, "goal": BANDWIDTH, "at_least": True}
             axes.loglog(rows[:, 0], rows[:, 3:7].sum(axis=1), "o-", label=f"{name}: slope {slope:.2f}")
     axes.set(xlabel="nodes", ylabel="processor seconds after meshing")
     axes.grid(True, which="both", alpha=0.3)
@@ -37,6 +43,7 @@ def measured(rungs: dict[int, tuple[int, ...]], folder: Path, out: Path) -> None
     out.mkdir(exist_ok=True)
     figure.savefig(out / "cost.png", dpi=150)
     print(f"\nBandwidth is the solve's share of a triad's {triad / 2**30:.1f} GiB/s. The plot is {out / 'cost.png'}.")
+    return shares, slopes
 
 
 def _rung(shape: str, order: int, cells: int, folder: Path) -> list[float]:
