@@ -13,6 +13,7 @@ import numpy as np
 from ..case import Accuracy, Surface
 from ..errors import Trouble
 from ..fem.mesh import CELL_FACES, Mesh, face_keys
+from ..parallel import slices
 from .apart import Apart, run_apart
 from .boxes import boxes, boxes_of, meeting
 from .edges import edges_of, groups, neighbours
@@ -38,6 +39,7 @@ NODES_PER_CORNER = {1: 1.0, 2: 7.5}
 # face and the turn from one facet to the next of the finest curved surface.
 FLAT = 3e-4
 FLATTEST = 1e-13  # of the cube of the longest edge: the least volume of a cell
+CELLS_AT_ONCE = 8192  # so that what is computed on the way stays in the cache
 # Of the unit diagonal: how far a boundary triangle's middle usually lies from its modelled face, and how much wider one
 # is sought where none is so near.
 REACH, WIDER = 1e-6, 10.0
@@ -277,8 +279,11 @@ def _within(points: np.ndarray, cells: np.ndarray, regions: np.ndarray, corners:
 def outer_faces(cells: np.ndarray) -> np.ndarray:
     """(B, 3) the outward faces that belong to one cell alone; cells (M, 4) of positive volume."""
     faces = cells[:, CELL_FACES].reshape(-1, 3)
-    _, first, uses = np.unique(face_keys(faces, cells.max() + 1), return_index=True, return_counts=True)
-    return faces[first[uses == 1]]
+    keys = face_keys(faces, cells.max() + 1)
+    order = np.argsort(keys)
+    keys = keys.take(order)
+    changes = np.concatenate([[True], keys[1:] != keys[:-1], [True]])
+    return faces.take(order[changes[1:] & changes[:-1]], axis=0)
 
 
 def _markers_of(boundary: np.ndarray, faces: np.ndarray, markers: np.ndarray, nodes: int) -> np.ndarray:
@@ -315,17 +320,22 @@ def _used(points: np.ndarray, cells: np.ndarray, boundary: np.ndarray) -> tuple[
 
 def _check_cells(points: np.ndarray, cells: np.ndarray, name: str, centre: np.ndarray, scale: float) -> None:
     """Refuse a mesh with cells so flat that their gradients are rounding alone."""
-    corners = points[cells]
-    sides = corners[:, 1:] - corners[:, :1]
-    longest = np.linalg.norm(corners[:, [0, 0, 0, 1, 1, 2]] - corners[:, [1, 2, 3, 2, 3, 3]], axis=2).max(axis=1)
-    flat = np.linalg.det(sides) / 6 < FLATTEST * longest**3
+    flat = np.concatenate([_flat(points, cells[piece]) for piece in slices(len(cells), CELLS_AT_ONCE)])
     if flat.any():
         raise Trouble(
             "geometry",
             f"Tetrahedra of '{name}' come out flat, as its surface has needle-thin faces or tiny edges.",
             "Merge vertices or dissolve edges there and run again.",
-            points=(corners[flat].mean(axis=1) * scale + centre).tolist(),
+            points=(points[cells[flat]].mean(axis=1) * scale + centre).tolist(),
         )
+
+
+def _flat(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
+    """(M,) whether cells (M, 4) have next to no volume for their longest edge."""
+    corners = points.take(cells.T, axis=0).transpose(0, 2, 1)
+    a, b, c = sides = corners[1:] - corners[0]
+    longest = np.sqrt((np.concatenate([sides, sides - sides[[1, 2, 0]]]) ** 2).sum(axis=1).max(axis=0))
+    return (a * np.cross(b, c, axis=0)).sum(axis=0) / 6 < FLATTEST * longest**3
 
 
 def _check_faithful(

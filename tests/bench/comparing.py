@@ -16,8 +16,8 @@ from measuring import TRUE_RESIDUAL
 SCRIPT = Path(__file__).resolve().parent / "one_solve.py"
 # A library's method is given up after so many times our own time, or so many seconds if that is more.
 PATIENCE, LEAST_SECONDS = 8.0, 40.0
-# What each library is tried with; others of peers.py took half as long again or more on the linear sink. Direct: PARDISO by
-# way of pypardiso.
+# What each library is tried with; others of peers.py took half as long again or more on the linear sink.
+# Direct: PARDISO by way of pypardiso.
 METHODS = {
     "ngsolve": {1: ("bddc", "h1amg"), 2: ("bddc", "bddc, h1amg coarse")},
     "scikit_fem": dict.fromkeys((1, 2), ("smoothed aggregation", "pardiso")),
