@@ -12,7 +12,7 @@ from ..fem.mesh import Mesh
 from ..fem.reference import quadrature, shape_functions, shape_gradients
 from ..fem.volume import CELLS_AT_ONCE, conduction_matrix, geometry
 from ..materials import Material, Property, Table
-from ..parallel import slices
+from ..parallel import side_by_side, slices
 from .laws import STEP
 
 
@@ -68,9 +68,12 @@ class TabledConduction:
         """(N,) W and (N, N) W/K, exact but for the quadrature of the tables; temperature (N,) K."""
         size, nodes = len(temperature), self.cells.shape[1]
         residual, tangent = np.zeros((nodes, len(self.cells))), np.zeros((nodes, len(self.cells), nodes))
-        for piece in slices(len(self.cells), CELLS_AT_ONCE):
+
+        def of_piece(piece: slice) -> None:
             local = temperature.take(self.cells[piece]).T
             residual[:, piece], tangent[:, piece] = self._of_cells(local, self.volume[piece], self.along[..., piece])
+
+        side_by_side(of_piece, slices(len(self.cells), CELLS_AT_ONCE))
         return (
             np.bincount(self.cells.T.ravel(), residual.ravel(), size),
             summed_matrix(self.cells, lambda place, chosen: tangent[place].take(chosen, axis=0), size),
