@@ -89,14 +89,15 @@ def _as_it_is(mesh: bpy.types.Mesh) -> Iterator[bpy.types.Mesh]:
 
 def _facets(mesh: bpy.types.Mesh, matrix: np.ndarray) -> Facets:
     """matrix: (3, 3) from the mesh's axes to the world's."""
-    sides, count = np.empty(len(mesh.loops), np.int32), np.empty(len(mesh.polygons), np.int32)
-    start, hidden = np.empty(len(mesh.polygons), np.int32), np.empty(len(mesh.polygons), bool)
-    normals = np.empty((len(mesh.polygons), 3), np.float32)
-    mesh.loops.foreach_get("edge_index", sides)
-    mesh.polygons.foreach_get("loop_total", count)
-    mesh.polygons.foreach_get("loop_start", start)
-    mesh.polygons.foreach_get("hide", hidden)
-    mesh.polygons.foreach_get("normal", normals.ravel())
+    sides, start = np.empty(len(mesh.loops), np.int32), np.empty(len(mesh.polygons), np.int32)
+    normals, hidden = np.empty((len(start), 3), np.float32), np.zeros(len(start), bool)
+    if len(start):
+        mesh.attributes[".corner_edge"].data.foreach_get("value", sides)
+        mesh.polygons.foreach_get("loop_start", start)
+        mesh.polygon_normals.foreach_get("vector", normals.ravel())
+    if (hiding := mesh.attributes.get(".hide_poly")) is not None:
+        hiding.data.foreach_get("value", hidden)
+    count = np.diff(start, append=np.int32(len(sides)))
     turned = normals @ np.linalg.pinv(matrix)
     turned /= np.maximum(np.linalg.norm(turned, axis=1, keepdims=True), 1e-300)
     return Facets(turned.astype(np.float32), start, count, _beside(sides, count, len(mesh.edges), hidden))

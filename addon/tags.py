@@ -117,7 +117,7 @@ def read(mesh: bpy.types.Mesh) -> np.ndarray:
         if layer is None:
             return np.zeros(len(edited.faces), np.int32)
         # The host hands out edit-mode faces one by one only.
-        return np.fromiter((face[layer] for face in edited.faces), np.int32, len(edited.faces))
+        return np.array([face[layer] for face in edited.faces], np.int32)
     uids = np.zeros(len(mesh.polygons), np.int32)
     if (attribute := _attribute(mesh)) is not None:
         attribute.data.foreach_get("value", uids)
@@ -144,7 +144,7 @@ def selected(mesh: bpy.types.Mesh) -> np.ndarray:
     """(F,) bool, the faces that are selected; in object mode those that edit mode would show selected."""
     if mesh.is_editmode:
         edited = bmesh.from_edit_mesh(mesh)
-        return np.fromiter((face.select for face in edited.faces), bool, len(edited.faces))
+        return np.array([face.select for face in edited.faces], bool)
     chosen = np.zeros(len(mesh.polygons), bool)
     mesh.polygons.foreach_get("select", chosen)
     return chosen

@@ -172,3 +172,18 @@ def test_meant_insulation_leaves_every_other_term_out(scene):
     assert words.clash(lid) == ""
     lid.insulated = False
     assert as_tag(lid, "lid", 1.0).heat == lid.heat
+
+
+def test_an_opened_shell_of_single_triangles_is_seen_whole_but_for_its_hole(scene):
+    """Each triangle has corners of its own; the name holds what stands for a value in sentences."""
+    from fluxface.addon.glance import glance
+    from fluxface.addon.parts import Skin
+
+    part = rod()
+    upkeep.refresh()
+    surface = tag_colours.skins[part.name]
+    places = surface.vertices[surface.triangles[1:]].reshape(-1, 3)
+    apart = Skin(places, np.arange(len(places)).reshape(-1, 3), surface.uid[1:], surface.face[1:])
+    (finding,) = glance(apart, "a {rod}")
+    assert finding["message"] == "The surface of 'a {rod}' is open: 3 edges without a face on both sides."
+    assert len(finding["points"]) == 3
