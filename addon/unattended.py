@@ -44,6 +44,9 @@ def parser() -> argparse.ArgumentParser:
     made.add_argument("file", type=Path, metavar="FILE.blend", help="the file; its active object or chosen parts count")
     made.add_argument("--out", type=Path, metavar="DIR", help="folder for what is made (default: that of the run)")
     made.add_argument("--engine", choices=ENGINES, default="cycles", help="what renders (default: cycles)")
+    made.add_argument("--views", nargs="+", choices=view.VIEWS, default=[], metavar="SIDE",
+                      help=f"pictures from several sides as well: {', '.join(view.VIEWS)}")  # fmt: skip
+    made.add_argument("--turntable", type=int, default=0, metavar="N", help="N pictures from all around as well")
     made.add_argument("--report", action="store_true", help="write the one-page report as well")
     made.add_argument("--save", action="store_true", help="save the file with its result")
     return made
@@ -63,6 +66,9 @@ def rendered(options: argparse.Namespace) -> Iterator[Path]:
             raise trouble
     folder = options.out or study.run_folder(scene, members)
     yield view.render_picture(scene, members, folder / PICTURE, engine=options.engine.upper())
+    engine = options.engine.upper()
+    yield from view.render_views(scene, members, folder, options.views, engine=engine)
+    yield from view.render_turntable(scene, members, folder / "turntable", options.turntable, engine=engine)
     if options.report:
         yield report.report_of(scene, members, folder / REPORT)
     if options.save:

@@ -17,8 +17,24 @@ class LookPanel(OfResult, bpy.types.Panel):
     def draw(self, context: bpy.types.Context) -> None:
         _draw_settings(self.layout, context.scene)
         named(self.layout, "Render with").prop(view.settings_of(context.scene), "engine", text="")
+        self.layout.prop(view.settings_of(context.scene), "caution")
         self.layout.operator("fluxface.render_picture", icon="RENDER_STILL")
         self.layout.operator("fluxface.write_report", icon="DOCUMENTS")
+
+
+class SeveralPanel(OfResult, bpy.types.Panel):
+    bl_idname = "FLUXFACE_PT_several"
+    bl_parent_id = "FLUXFACE_PT_look"
+    bl_label = "Views and Turntable"
+    bl_options = {"DEFAULT_CLOSED"}
+
+    def draw(self, context: bpy.types.Context) -> None:
+        settings = view.settings_of(context.scene)
+        self.layout.grid_flow(columns=2, align=True).prop(settings, "view_names")
+        self.layout.operator("fluxface.render_views", icon="RENDER_STILL")
+        column = self.layout.column(align=True)
+        column.prop(settings, "turns")
+        column.operator("fluxface.render_turntable", icon="RENDER_ANIMATION")
 
 
 class LinesPanel(OfResult, bpy.types.Panel):
@@ -88,4 +104,4 @@ def _draw_lines(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
     step.prop(settings, "isotherm_step")
 
 
-register, unregister = bpy.utils.register_classes_factory((LookPanel, LinesPanel, InsidePanel))
+register, unregister = bpy.utils.register_classes_factory((LookPanel, LinesPanel, InsidePanel, SeveralPanel))

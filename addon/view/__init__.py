@@ -8,7 +8,8 @@ from pathlib import Path
 import bpy
 
 from . import drawn_in_view, legend_in_view, settings, showing
-from .picture import picture_frame, render_picture
+from .framing import VIEWS
+from .picture import picture_frame, render_picture, render_turntable, render_views
 from .result_object import (
     PLANE,
     build_results,
@@ -37,6 +38,7 @@ from .showing import apply_showing
 __all__ = [
     "PLANE",
     "TRUE_TRANSFORM",
+    "VIEWS",
     "apply_showing",
     "clear",
     "end_difference",
@@ -48,6 +50,8 @@ __all__ = [
     "refresh_cut",
     "register",
     "render_picture",
+    "render_turntable",
+    "render_views",
     "result_of",
     "scale_of",
     "settings_of",

@@ -9,6 +9,20 @@ import numpy as np
 # Far enough for calm perspective, near enough that it is still felt; in radii of what is seen.
 DISTANCE = 6.0
 
+# From the parts to the eye when the scene has no camera: before them, to the right and above.
+THREE_QUARTER = (0.62, -0.90, 0.55)
+
+# The sides a part is shown from, by the names the host has for them: from the parts to the eye.
+VIEWS = {
+    "front": (0.0, -1.0, 0.0),
+    "right": (1.0, 0.0, 0.0),
+    "back": (0.0, 1.0, 0.0),
+    "left": (-1.0, 0.0, 0.0),
+    "top": (0.0, 0.0, 1.0),
+    "bottom": (0.0, 0.0, -1.0),
+    "three-quarter": THREE_QUARTER,
+}
+
 
 @dataclass(frozen=True)
 class Frame:

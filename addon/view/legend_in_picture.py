@@ -5,7 +5,7 @@ from __future__ import annotations
 import bpy
 import numpy as np
 
-from .legend import CAUTION, Legend
+from .legend import Legend
 from .material import SHOWN, Colour
 from .result_object import write_kelvin
 from .studio import Studio
@@ -34,8 +34,10 @@ def window_for_parts(size: tuple[int, int]) -> tuple[float, float, float, float]
     return MARGIN * step, (MARGIN + 5.0) * step, width - (MARGIN + COLUMN + 2.0) * step, height - (MARGIN + 9.0) * step
 
 
-def write_legend(studio: Studio, title: str, legend: Legend, coloured: bpy.types.Material, ink: Colour) -> None:
-    """Title and heading, the bar with its ticks, the hottest and coldest surface, and the caution.
+def write_legend(
+    studio: Studio, title: str, legend: Legend, coloured: bpy.types.Material, ink: Colour, caution: str
+) -> None:
+    """Title and heading, the bar with its ticks, the hottest and coldest surface, and the caution if there is one.
 
     coloured: the material of the parts.
     """
@@ -51,7 +53,8 @@ def write_legend(studio: Studio, title: str, legend: Legend, coloured: bpy.types
     across = left - 2 * MARGIN
     write(title, MARGIN, height - MARGIN - TITLE * FIGURE, TITLE, dark, across)
     write(legend.heading, MARGIN, height - MARGIN - TITLE * FIGURE - 3.6, LABEL, grey, across)
-    write(CAUTION, MARGIN, MARGIN, SMALL, grey, width - 2 * MARGIN)
+    if caution:
+        write(caution, MARGIN, MARGIN, SMALL, grey, width - 2 * MARGIN)
 
     text = legend.scale.unit.text
     write(f"{legend.words.highest} {legend.words.of}", left, top + 7.6, LABEL, grey)

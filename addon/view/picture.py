@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 import bpy
@@ -16,8 +16,8 @@ import numpy as np
 
 from ...solver.errors import Trouble
 from .colours import linear_from_srgb
-from .framing import Frame, framed, looking
-from .legend import Legend
+from .framing import THREE_QUARTER, VIEWS, Frame, framed, looking
+from .legend import CAUTION, Legend
 from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
 from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
@@ -27,8 +27,8 @@ from .settings import levels_of, material_of, refresh, scale_of, settings_of, wo
 from .skin import Skin, hottest_in_view, skin_of
 from .studio import Studio, opened
 
-# From the parts to the eye when the scene has no camera: before them, to the right and above.
-THREE_QUARTER = (0.62, -0.90, 0.55)
+# Copies of the parts about the vertical that a turntable's frame holds, so that its pictures are of one size.
+COPIES = 36
 
 # Seen from lower than this (the sine of the angle) there is no ground to see.
 LOWEST = 0.1
@@ -52,16 +52,18 @@ def render_picture(
     *,
     engine: str | None = None,
     size: tuple[int, int] = (1600, 1000),
+    frame: Frame | None = None,
 ) -> Path:
     """Render the results of ``parts`` with their legend as a PNG of ``size`` pixels at ``path``, and return the path.
 
     engine: CYCLES, EEVEE or WORKBENCH; None = as the scene's settings have it.
-    The view is that of the scene's camera, or three-quarter where there is none, moved so that the parts fill it. The
-    picture is taken in a scene of its own, and nothing of the designer's is touched. Every engine of the host gives the
-    same colours. Cycles needs no window and no graphics library; Workbench is the quickest, and leaves out the shadow.
+    The view is ``frame``, or else that of the scene's camera, or three-quarter where there is none, moved so that the
+    parts fill it. The picture is taken in a scene of its own, and nothing of the designer's is touched. Every engine of
+    the host gives the same colours. Cycles needs no window and no graphics library; Workbench is the quickest, and
+    leaves out the shadow.
     Raises Trouble when there is no result to show or the picture cannot be rendered or written.
     """
-    frame = picture_frame(scene, parts, size)
+    frame = frame or picture_frame(scene, parts, size)
     refresh(scene)
     results, coloured, scale = _results(parts), material_of(scene), scale_of(scene)
     skin = skin_of(results)
@@ -79,7 +81,8 @@ def render_picture(
         if frame.axes[2, 2] > LOWEST and not studio.sees_vertices_alone:
             studio.cast_shadow(skin.places[:, 2].min(), BACKDROP, Path(folder))
         _draw_lines(studio, skin, scale, levels_of(scene), ringed)
-        write_legend(studio, ", ".join(part.name for part in parts), legend, coloured, INK)
+        title = ", ".join(part.name for part in parts)
+        write_legend(studio, title, legend, coloured, INK, CAUTION if settings_of(scene).caution else "")
         if ringed is not None:
             draw_ring(studio, ringed, INK)
         made = Path(folder) / "picture.png"
@@ -87,12 +90,70 @@ def render_picture(
         return _moved(made, Path(path))
 
 
-def picture_frame(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], size: tuple[int, int]) -> Frame:
-    """The frame that :func:`render_picture` takes: which pixel shows which place of the world."""
+def picture_frame(
+    scene: bpy.types.Scene,
+    parts: Sequence[bpy.types.Object],
+    size: tuple[int, int],
+    towards_eye: Sequence[float] | None = None,
+) -> Frame:
+    """The frame that :func:`render_picture` takes: which pixel shows which place of the world.
+
+    towards_eye: (3,) from the parts; None = as the scene's camera looks, or three-quarter.
+    """
     settle(scene)
     skin = skin_of(_results(parts))
-    towards_eye = scene.camera.matrix_world.col[2][:3] if scene.camera else THREE_QUARTER
+    if towards_eye is None:
+        towards_eye = scene.camera.matrix_world.col[2][:3] if scene.camera else THREE_QUARTER
     return framed(skin.places, looking(np.array(towards_eye)), size, window_for_parts(size))
+
+
+def render_views(
+    scene: bpy.types.Scene,
+    parts: Sequence[bpy.types.Object],
+    folder: Path,
+    names: Sequence[str],
+    *,
+    engine: str | None = None,
+    size: tuple[int, int] = (1600, 1000),
+) -> Iterator[Path]:
+    """Render the parts from each of the sides ``names`` of VIEWS, one picture a step, as ``view front.png`` and so on.
+
+    Raises Trouble as :func:`render_picture` does.
+    """
+    for name in names:
+        frame = picture_frame(scene, parts, size, VIEWS[name])
+        yield render_picture(scene, parts, folder / f"view {name}.png", engine=engine, size=size, frame=frame)
+
+
+def render_turntable(
+    scene: bpy.types.Scene,
+    parts: Sequence[bpy.types.Object],
+    folder: Path,
+    count: int,
+    *,
+    engine: str | None = None,
+    size: tuple[int, int] = (1600, 1000),
+) -> Iterator[Path]:
+    """Render the parts from ``count`` places around the vertical, one picture a step, as ``turn 001.png`` and so on.
+
+    Raises Trouble as :func:`render_picture` does.
+    """
+    settle(scene)
+    places = skin_of(_results(parts)).places
+    low, high = places.min(axis=0), places.max(axis=0)
+    middle = 0.5 * (low + high)
+    reach = np.linalg.norm(places[:, :2] - middle[:2], axis=1).max()
+    angles = 2 * np.pi * np.arange(COPIES) / COPIES
+    rim = middle[:2] + reach * np.stack([np.cos(angles), np.sin(angles)], axis=1)
+    held = np.concatenate([np.column_stack([rim, np.full(COPIES, height)]) for height in (low[2], high[2])])
+    for number in range(count):
+        turn = 2 * np.pi * number / count
+        across = np.hypot(*THREE_QUARTER[:2])
+        start = np.arctan2(THREE_QUARTER[1], THREE_QUARTER[0])
+        eye = (across * np.cos(start + turn), across * np.sin(start + turn), THREE_QUARTER[2])
+        frame = framed(held, looking(np.array(eye)), size, window_for_parts(size))
+        path = folder / f"turn {number + 1:03}.png"
+        yield render_picture(scene, parts, path, engine=engine, size=size, frame=frame)
 
 
 def _results(parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:

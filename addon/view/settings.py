@@ -7,11 +7,12 @@ from dataclasses import replace
 
 import bpy
 import numpy as np
-from bpy.props import BoolProperty, EnumProperty, FloatProperty, PointerProperty, StringProperty
+from bpy.props import BoolProperty, EnumProperty, FloatProperty, IntProperty, PointerProperty, StringProperty
 
 from ..host import redraw
 from ..units import TEMPERATURE_UNITS
 from .colours import DEFAULT_MAP, DIFFERENCE_MAP, colour_maps
+from .framing import VIEWS
 from .legend import OF_TEMPERATURE, Words, of_difference
 from .material import SHOWN, paint, set_range
 from .over_result import over_results
@@ -113,6 +114,23 @@ class ViewSettings(bpy.types.PropertyGroup):
             ("WORKBENCH", "Workbench", "The quickest; without a shadow"),
         ),
         default="CYCLES",
+    )
+    caution: BoolProperty(
+        name="Caution in pictures", default=True,
+        description="Write beneath a picture that it shows an estimate, and what decides where people may be hurt",
+    )  # fmt: skip
+    view_names: EnumProperty(
+        name="Sides", description="The sides that Render Views shows the parts from", options={"ENUM_FLAG"},
+        items=[(name, name.capitalize(), f"From the {name}" if name != "three-quarter" else "From before and above")
+               for name in VIEWS],
+        default={"front", "right", "top", "three-quarter"},
+    )  # fmt: skip
+    turns: IntProperty(
+        name="Pictures",
+        description="How many pictures a turntable takes, all the way around",
+        default=24,
+        min=2,
+        max=720,
     )
     coldest: FloatProperty(options={"HIDDEN"}, description="Coldest surface of all results, kelvin")
     hottest: FloatProperty(options={"HIDDEN"}, description="Hottest surface of all results, kelvin")

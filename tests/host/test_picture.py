@@ -222,3 +222,40 @@ def test_a_single_temperature_and_two_parts(scene, tmp_path: Path) -> None:
     shown = pixels_of(view.render_picture(scene, parts, tmp_path / "picture.png", size=SIZE))
     middle = srgb_from_linear(scale_of(scene).colours(np.array([300.0])))
     assert (np.linalg.norm(shown - middle, axis=2) < 0.02).mean() > 0.1
+
+
+def test_a_turntable_shows_the_part_in_one_size_from_all_around(scene, tmp_path: Path, monkeypatch) -> None:
+    part, frames = shown_part(tmp_path, warm_at_one_end), []
+
+    def taken(_scene, _parts, path, *, engine, size, frame):
+        frames.append(frame)
+        return path
+
+    monkeypatch.setattr(picture, "render_picture", taken)
+    made = list(view.render_turntable(scene, [part], tmp_path, 8, size=(400, 300)))
+    assert [path.name for path in made] == [f"turn {number:03}.png" for number in range(1, 9)]
+    places = skin_of([view.result_of(part)]).places
+    middle = 0.5 * (places.min(axis=0) + places.max(axis=0))[None]
+    around = [frame.axes[2] for frame in frames]
+    assert np.ptp([axis[2] for axis in around]) < 1e-12
+    turns = np.unwrap([np.arctan2(axis[1], axis[0]) for axis in around])
+    np.testing.assert_allclose(np.diff(turns), 2 * np.pi / 8)
+    # The eye keeps its distance and the part its place: the vertical through its middle does not move in the picture.
+    sizes = [frame.pixel_size(middle)[0] for frame in frames]
+    assert np.ptp(sizes) < 0.01 * np.mean(sizes)
+    assert np.ptp([frame.pixels(middle)[0] for frame in frames], axis=0).max() < 2.0
+    low, right, bottom, top = 0.0, 400.0, 0.0, 300.0
+    for frame in frames:
+        pixels = frame.pixels(places)
+        assert (pixels > (low, bottom)).all() and (pixels < (right, top)).all()
+
+
+def test_views_are_named_by_their_sides_and_the_caution_can_be_left_out(scene, tmp_path: Path) -> None:
+    part = shown_part(tmp_path, warm_at_one_end)
+    made = list(view.render_views(scene, [part], tmp_path, ["front", "top"], engine="WORKBENCH", size=(400, 300)))
+    assert [path.name for path in made] == ["view front.png", "view top.png"]
+    with_caution = pixels_of(made[0])
+    view.settings_of(scene).caution = False
+    (bare,) = view.render_views(scene, [part], tmp_path, ["front"], engine="WORKBENCH", size=(400, 300))
+    different = (np.abs(with_caution - pixels_of(bare)) > 0.02).any(axis=2)
+    assert different[:40].any() and not different[40:].any()  # at the foot of the picture, and nowhere else

@@ -35,7 +35,10 @@ def test_a_file_is_run_from_end_to_end(scene, tmp_path: Path) -> None:
     bpy.ops.wm.open_mainfile(filepath=str(file))
     assert json.loads(bpy.data.objects["lamp"].fluxface.outcome.summary)["balance"]["in"] == pytest.approx(12.0)
     # What is current is not solved again.
-    assert rendered(str(file), "--out", str(out)).returncode == 0
+    more = ("--engine", "workbench", "--views", "front", "top", "--turntable", "3")
+    assert rendered(str(file), "--out", str(out), *more).returncode == 0
+    assert {path.name for path in out.glob("view *.png")} == {"view front.png", "view top.png"}
+    assert len(list((out / "turntable").glob("turn 00[123].png"))) == 3
     assert len(list((tmp_path / "lamp.fluxface" / "lamp" / "runs").iterdir())) == 1
 
 
