@@ -119,7 +119,9 @@ class _RendersSeveral(_OfResult):
             self.report({"ERROR"}, f"{trouble.message} {trouble.mend}".strip())
             return self._end(context, {"CANCELLED"})
         self._made += 1
-        told = language.report("Picture {number} of {count} is made; Esc stops", number=self._made, count=self.count(context))
+        told = language.report(
+            "Picture {number} of {count} is made; Esc stops", number=self._made, count=self.count(context)
+        )
         context.workspace.status_text_set(told)
         return {"RUNNING_MODAL"}
 

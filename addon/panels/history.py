@@ -66,7 +66,7 @@ class RunsPanel(Sidebar, bpy.types.Panel):
 
 def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, told: dict[str, Any]) -> None:
     box = layout.box()
-    paragraph(context, box, f"Compared with {told['since']}" + (f", {told['note']}" if told["note"] else ""))
+    paragraph(context, box, label("Compared with {run}", run=", ".join(filter(None, (told["since"], told["note"])))))
     column = box.column(align=True)
     for row in told["rows"]:
         change = signed_difference_text(context.scene, row["now"] - row["then"])

@@ -19,6 +19,8 @@ WITHOUT_UNDO = {
     "fluxface.contacts_find": "makes its step when the job beside has ended",
     "fluxface.cancel": "changes no data",
     "fluxface.render_picture": "writes a file",
+    "fluxface.render_turntable": "writes pictures",
+    "fluxface.render_views": "writes pictures",
     "fluxface.write_report": "writes a file",
     "fluxface.material_keep": "writes to the user's own library",
     "fluxface.run_forget": "deletes a folder from the disk, which no undo brings back",
