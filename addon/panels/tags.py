@@ -184,8 +184,8 @@ class TagFacesMenu(bpy.types.Menu):
         layout.operator("fluxface.select_flat", icon="SNAP_FACE")
         layout.operator("fluxface.select_smooth", icon="SMOOTHCURVE")
         layout.separator()
-        layout.operator("fluxface.tag_select", icon="RESTRICT_SELECT_OFF")
-        layout.operator("fluxface.untagged_select")
+        layout.operator("fluxface.tag_select", text="Faces of the Active Tag", icon="RESTRICT_SELECT_OFF")
+        layout.operator("fluxface.untagged_select", text="Untagged Faces")
         layout.separator()
         layout.operator("fluxface.tag_move", icon="FORWARD")
 
