@@ -14,6 +14,7 @@ from . import (
     overlay,
     panels,
     preferences,
+    probe_labels,
     properties,
     tag_names,
     unattended,
@@ -22,8 +23,8 @@ from . import (
 )
 
 ROOMS = (
-    preferences, properties, view, operators, panels, overlay, tag_names, inspection, live, cutting, upkeep, auto_run,
-    unattended,
+    preferences, properties, view, operators, panels, overlay, tag_names, probe_labels, inspection, live, cutting,
+    upkeep, auto_run, unattended,
 )  # fmt: skip
 
 

@@ -17,7 +17,7 @@ import numpy as np
 from ..solver.case import read_case
 from ..solver.errors import Trouble
 from ..solver.result import Responses, read_field, read_responses, skin_nodes
-from . import comparing, cutting, host, jobs, study, view
+from . import comparing, cutting, host, jobs, probes, study, view
 from .properties import Outcome, load_followers
 from .units import as_typed
 
@@ -168,6 +168,7 @@ def _show(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], held: Hel
     comparing.end(scene, study.outcome(scene, members))
     view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
     cutting.recolour(scene, members, temperature)
+    probes.read(members)
     host.redraw()
 
 

@@ -13,7 +13,7 @@ import bpy
 from ..solver.case import write_case
 from ..solver.errors import Trouble
 from ..solver.result import read_summary
-from . import comparing, cutting, history, host, jobs, live, study, tags, upkeep, view
+from . import comparing, cutting, history, host, jobs, live, probes, study, tags, upkeep, view
 from .cases import build_case
 from .parts import in_sight
 from .properties import Outcome
@@ -147,6 +147,7 @@ def finish(run: Run, ending: jobs.Ending) -> Trouble | None:
     left.live = left.comparison = ""
     cutting.cutting.forget()
     cutting.follow(scene, members)
+    probes.read(members, anew=True)
     live.live.prepare(scene, members, run.result.parent, summary["mesh"]["nodes"])
     left.areas, left.lost = json.dumps(run.areas), False
     for part in members:

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from . import choosing, contacts, history, materials, publishing, running, seeing, shape, tagging
+from . import choosing, contacts, history, materials, probing, publishing, running, seeing, shape, tagging
 
-ROOMS = (tagging, choosing, shape, materials, contacts, running, seeing, publishing, history)
+ROOMS = (tagging, choosing, shape, materials, contacts, running, seeing, probing, publishing, history)
 
 
 def register() -> None:

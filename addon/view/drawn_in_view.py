@@ -112,7 +112,17 @@ def _place_in_view(context: bpy.types.Context, result: bpy.types.Object, mark: M
 def _draw_mark(
     context: bpy.types.Context, pixel: np.ndarray, text: str, colour: Sequence[float], taken: list[np.ndarray]
 ) -> None:
-    """A ring and a label beside it, below whatever of ``taken`` (each left, bottom, right, top) is in its way."""
+    """A ring and a label beside it."""
+    scale = context.preferences.system.ui_scale
+    fill_ring(pixel, RADIUS * scale, (RADIUS + RING + 1) * scale, GROUND)
+    fill_ring(pixel, RADIUS * scale, (RADIUS + RING) * scale, colour)
+    draw_label(context, pixel, text, colour, taken)
+
+
+def draw_label(
+    context: bpy.types.Context, pixel: np.ndarray, text: str, colour: Sequence[float], taken: list[np.ndarray]
+) -> None:
+    """A label beside a pixel (2,), below whatever of ``taken`` (each left, bottom, right, top) is in its way."""
     scale = context.preferences.system.ui_scale
     size = np.array((text_width(text, TEXT * scale) + 2 * INSET * scale, 2 * TEXT * scale))
     corner = pixel + np.array((RADIUS + GAP, -TEXT)) * scale
@@ -122,7 +132,5 @@ def _draw_mark(
         if (corner < box[2:]).all() and (corner + size > box[:2]).all():
             corner[1] = box[1] - size[1] - scale
     taken.append(np.concatenate([corner, corner + size]))
-    fill_ring(pixel, RADIUS * scale, (RADIUS + RING + 1) * scale, GROUND)
-    fill_ring(pixel, RADIUS * scale, (RADIUS + RING) * scale, colour)
     fill_box(corner, size, GROUND)
     write(text, corner + np.array((INSET, TEXT * 0.64)) * scale, TEXT * scale, colour)
