@@ -84,7 +84,8 @@ def draw_card(legend: Legend, corner: np.ndarray, pixel: float, remark: str) -> 
         _fill(corner + np.array(places, dtype=float) * pixel, colours)
 
     fill(_box(0, spare, CARD[0], CARD[1] - spare), [GROUND] * 4)
-    say(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL, FAINT)
+    fits = min(1.0, (CARD[0] - 2 * INSET) * pixel / max(text_width(legend.heading, LABEL * pixel), 1.0))
+    say(legend.heading, INSET, CARD[1] - INSET - LABEL, LABEL * fits, FAINT)
     words = legend.words
     for label, kelvin, height in ((words.highest, legend.hottest, bar_top + 24), (words.lowest, legend.coldest, 42)):
         say(label, INSET, height, LABEL, FAINT)
