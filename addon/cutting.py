@@ -12,7 +12,7 @@ from bpy.app.handlers import persistent
 from mathutils import Matrix, Vector
 
 from ..solver.errors import Trouble
-from ..solver.result import read_field
+from ..solver.result import Field, read_field
 from . import study, view
 from .view import cut_object
 from .view.section import Section, Solid, section, solid_of
@@ -25,10 +25,14 @@ AXES = {"X": (1.0, 0.0, 0.0), "Y": (0.0, 1.0, 0.0), "Z": (0.0, 0.0, 1.0)}
 
 @dataclass
 class Held:
-    """What a result is cut from, its temperature (N,) K as it is shown, and how it was cut last."""
+    """What a result is cut from, its temperature (N,) K as it is shown, and how it was cut last.
+
+    flux: (N, 3) as results hold it.
+    """
 
     solid: Solid
     temperature: np.ndarray
+    flux: np.ndarray
     cut: Section | None = None
 
 
@@ -49,9 +53,7 @@ class Cutting:
         """By the name of the result object. Raises Trouble when the result cannot be read any more."""
         if self._folder != folder or any(result.name not in self._held for result in results):
             field = read_field(Path(folder))
-            self._held = {
-                result.name: Held(solid_of(field, *view.placing(result)), field.temperature) for result in results
-            }
+            self._held = {result.name: _held(field, *view.placing(result)) for result in results}
             self._folder = folder
         return self._held
 
@@ -59,6 +61,10 @@ class Cutting:
         """Show other temperatures (N,) K at the nodes of what is held."""
         for held in self._held.values():
             held.temperature = temperature
+
+
+def _held(field: Field, part: int, matrix: np.ndarray) -> Held:
+    return Held(solid_of(field, part, matrix), field.temperature, field.heat_flux @ matrix[:3, :3].T)
 
 
 # One for the session: what it holds is as large as the result that is worked on.
@@ -143,8 +149,8 @@ def follow(scene: bpy.types.Scene, members: Sequence[bpy.types.Object]) -> None:
         normal = world[:3, :3].T @ at[:3, 2]
         origin = np.linalg.solve(world[:3, :3], at[:3, 3] - world[:3, 3])
         mine.cut = section(mine.solid, origin, normal / np.linalg.norm(normal))
-        temperature = mine.cut.at(mine.temperature)
-        cut_object.show(scene, part, mine.cut.places, mine.cut.triangles, temperature)
+        temperature, flux = mine.cut.at(mine.temperature), mine.cut.at(mine.flux)
+        cut_object.show(scene, part, mine.cut.places, mine.cut.triangles, temperature, flux)
     view.refresh_cut(scene)
     if not were_cut:
         view.apply_showing(scene)
@@ -166,6 +172,7 @@ def close(scene: bpy.types.Scene) -> None:
         bpy.data.objects.remove(plane)
     if cut_object.remove_all(scene):
         view.apply_showing(scene)
+        view.refresh_cut(scene)
     layer = bpy.context.view_layer
     if part is not None and layer.objects.active is None and part.name in layer.objects:
         layer.objects.active = view.shown_of(part) or part

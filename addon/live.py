@@ -166,6 +166,7 @@ def _back(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], left: Out
 
 def _show(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], held: Held, temperature: np.ndarray) -> None:
     comparing.end(scene, study.outcome(scene, members))
+    view.settings_of(scene).live = bool(study.outcome(scene, members).live)
     view.recolour(scene, members, [temperature[nodes] for nodes in held.nodes])
     cutting.recolour(scene, members, temperature)
     probes.read(members)

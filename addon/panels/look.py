@@ -102,6 +102,12 @@ def _draw_lines(layout: bpy.types.UILayout, scene: bpy.types.Scene) -> None:
     step = layout.row()
     step.active = settings.isotherms
     step.prop(settings, "isotherm_step")
+    layout.prop(settings, "arrows")
+    count = layout.row()
+    count.active = settings.arrows
+    count.prop(settings, "arrow_count")
+    if settings.arrows and (settings.live or settings.compared):
+        layout.label(text="Arrows show the flux of a run alone.", icon="INFO")
 
 
 register, unregister = bpy.utils.register_classes_factory((LookPanel, LinesPanel, InsidePanel, SeveralPanel))

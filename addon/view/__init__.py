@@ -12,6 +12,7 @@ from .framing import VIEWS
 from .picture import picture_frame, render_picture, render_turntable, render_views
 from .result_object import (
     PLANE,
+    arrows_of,
     build_results,
     part_of,
     placing,
@@ -40,6 +41,7 @@ __all__ = [
     "TRUE_TRANSFORM",
     "VIEWS",
     "apply_showing",
+    "arrows_of",
     "clear",
     "end_difference",
     "has_result",
@@ -72,7 +74,7 @@ def show(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], result_folde
     Raises Trouble when the result cannot be read or does not fit the parts; what was shown is still shown then.
     """
     results = build_results(scene, parts, result_folder, material_of(scene))
-    settings_of(scene).compared = ""
+    settings_of(scene).compared, settings_of(scene).live = "", False
     refresh(scene)
     settings_of(scene).showing = "RESULT" if all(part.mode == "OBJECT" for part in parts) else "PART"
     return results
@@ -88,7 +90,7 @@ def clear(part: bpy.types.Object) -> None:
     if result is None:
         return
     scenes = part.users_scene
-    for shown in {result, shown_of(part)}:
+    for shown in {result, shown_of(part), arrows_of(part)} - {None}:
         remove_result(shown)
     for scene in scenes:
         showing.reveal(scene, part)

@@ -6,7 +6,18 @@ import bpy
 import numpy as np
 
 from .material import SHOWN
-from .result_object import CUT, TEMPERATURE, add_geometry, cut_of, mesh_of, new_child, remove_result, write_kelvin
+from .result_object import (
+    CUT,
+    FLUX,
+    TEMPERATURE,
+    add_geometry,
+    cut_of,
+    mesh_of,
+    new_child,
+    remove_result,
+    write_kelvin,
+    write_vectors,
+)  # fmt: skip
 
 
 def show(
@@ -15,8 +26,10 @@ def show(
     places: np.ndarray,
     triangles: np.ndarray,
     temperature: np.ndarray,
+    flux: np.ndarray,
 ) -> bpy.types.Object:
-    """Give the part's cut object ``places`` (P, 3) in the part's axes, ``triangles`` (T, 3), temperature (P,) K.
+    """Give the part's cut object ``places`` (P, 3) in the part's axes, ``triangles`` (T, 3), temperature (P,) K,
+    heat flux (P, 3) as results hold it.
 
     The mesh stays the same one, so that the host need not sort out anew what depends on what while a plane is moved.
     """
@@ -29,6 +42,7 @@ def show(
     add_geometry(mesh, places, triangles)
     for name in (TEMPERATURE, SHOWN):
         write_kelvin(mesh, name, temperature)
+    write_vectors(mesh, FLUX, flux)
     return cut
 
 

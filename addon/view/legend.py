@@ -35,6 +35,7 @@ class Legend:
     """scale: what the bar shows. ticks: along it. coldest, hottest: surfaces, kelvin.
 
     in_view: the hottest surface in the picture, kelvin; None where none is marked. words: what is shown.
+    arrows: what the longest of them stands for.
     """
 
     scale: Scale
@@ -43,6 +44,7 @@ class Legend:
     hottest: float
     in_view: float | None = None
     words: Words = OF_TEMPERATURE
+    arrows: str = ""
 
     @property
     def heading(self) -> str:

@@ -68,6 +68,7 @@ def write_legend(
         label = f"{legend.words.highest.lower()} in view" if same else f"{text(legend.in_view)} in view"
         write(label, left + 2 * RING + 1.6, bottom - 13.3, LABEL, grey, COLUMN - 2 * RING - 1.6)
 
+    write(legend.arrows, left, bottom - 16.4, LABEL, grey)
     _draw_bar(studio, legend, np.array((left, left + BAR_WIDTH)) * step, np.array((bottom, top)) * step, coloured)
     beside = left + BAR_WIDTH
     heights = [bottom + tick.fraction * (top - bottom) for tick in legend.ticks]

@@ -8,6 +8,7 @@ from typing import Any
 import bpy
 import numpy as np
 
+from .arrows import legend_line
 from .colours import colours_at, srgb_from_linear
 from .legend import Legend
 from .result_object import shown_in
@@ -56,7 +57,7 @@ def _draw() -> None:
     if right < CARD[0] * pixel or context.region.height < (CARD[1] + 2 * FROM_EDGE) * pixel:
         return
     corner = np.array((right - (CARD[0] + FROM_EDGE) * pixel, FROM_EDGE * pixel))
-    draw_card(legend, corner, pixel, _remark(context))
+    draw_card(legend, corner, pixel, _remark(context) or legend_line(scene))
 
 
 def _remark(context: bpy.types.Context) -> str:

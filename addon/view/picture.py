@@ -15,13 +15,14 @@ import bpy
 import numpy as np
 
 from ...solver.errors import Trouble
+from .arrows import COLOUR, legend_line
 from .colours import linear_from_srgb
 from .framing import THREE_QUARTER, VIEWS, Frame, framed, looking
 from .legend import CAUTION, Legend
 from .legend_in_picture import RING, draw_ring, window_for_parts, write_legend
 from .lines import drawn_edges, isotherms, outside, ribbons
 from .material import SHOWN, Colour, paint
-from .result_object import read_kelvin, result_of, settle, shown_of, write_kelvin
+from .result_object import arrows_of, places_and_triangles, read_kelvin, result_of, settle, shown_of, write_kelvin
 from .scale import Scale, inked
 from .settings import levels_of, material_of, refresh, scale_of, settings_of, words_of
 from .skin import Skin, hottest_in_view, skin_of
@@ -70,7 +71,7 @@ def render_picture(
     marked = hottest_in_view(skin, frame)
     in_view, ringed = (None, None) if marked is None else (skin.temperature[marked], frame.pixels(skin.places[marked]))
     ends = (np.nanmin(skin.temperature), np.nanmax(skin.temperature))
-    legend = Legend(scale, scale.ticks(), *ends, in_view, words_of(scene))
+    legend = Legend(scale, scale.ticks(), *ends, in_view, words_of(scene), legend_line(scene))
     with (
         tempfile.TemporaryDirectory() as folder,
         opened(frame, engine or settings_of(scene).engine, BACKDROP) as studio,
@@ -81,6 +82,8 @@ def render_picture(
         if frame.axes[2, 2] > LOWEST and not studio.sees_vertices_alone:
             studio.cast_shadow(skin.places[:, 2].min(), BACKDROP, Path(folder))
         _draw_lines(studio, skin, scale, levels_of(scene), ringed)
+        for flow in filter(None, map(arrows_of, parts)):
+            studio.draw(*places_and_triangles(flow), studio.scaled, studio.ink(COLOUR))
         title = ", ".join(part.name for part in parts)
         write_legend(studio, title, legend, coloured, INK, CAUTION if settings_of(scene).caution else "")
         if ringed is not None:
@@ -101,10 +104,9 @@ def picture_frame(
     towards_eye: (3,) from the parts; None = as the scene's camera looks, or three-quarter.
     """
     settle(scene)
-    skin = skin_of(_results(parts))
     if towards_eye is None:
         towards_eye = scene.camera.matrix_world.col[2][:3] if scene.camera else THREE_QUARTER
-    return framed(skin.places, looking(np.array(towards_eye)), size, window_for_parts(size))
+    return framed(_places(parts), looking(np.array(towards_eye)), size, window_for_parts(size))
 
 
 def render_views(
@@ -139,7 +141,7 @@ def render_turntable(
     Raises Trouble as :func:`render_picture` does.
     """
     settle(scene)
-    places = skin_of(_results(parts)).places
+    places = _places(parts)
     low, high = places.min(axis=0), places.max(axis=0)
     middle = 0.5 * (low + high)
     reach = np.linalg.norm(places[:, :2] - middle[:2], axis=1).max()
@@ -154,6 +156,12 @@ def render_turntable(
         frame = framed(held, looking(np.array(eye)), size, window_for_parts(size))
         path = folder / f"turn {number + 1:03}.png"
         yield render_picture(scene, parts, path, engine=engine, size=size, frame=frame)
+
+
+def _places(parts: Sequence[bpy.types.Object]) -> np.ndarray:
+    """(P, 3) in the world, of all that has to be in the picture."""
+    flows = [places_and_triangles(flow)[0] for flow in filter(None, map(arrows_of, parts))]
+    return np.concatenate([skin_of(_results(parts)).places, *flows])
 
 
 def _results(parts: Sequence[bpy.types.Object]) -> list[bpy.types.Object]:

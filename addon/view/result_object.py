@@ -9,18 +9,20 @@ import bpy
 import numpy as np
 
 from ...solver.errors import Trouble
-from ...solver.result import Field, HotSkin, hot_skin, read_field
+from ...solver.result import Field, HotSkin, hot_skin, read_field, skin_nodes
 from ..units import metres_per_unit
 from .lines import CREASE
 from .material import KNOWN, SHOWN, UNKNOWN
 from .scale import Scale
 
-# What is a result, what is left of it by a cut, and the empty that cuts it: each is a child of its part.
-MARK, CUT, PLANE = "fluxface_result", "fluxface_cut", "fluxface_plane"
+# What is a result, what is left of it by a cut, the empty that cuts it, and arrows on it: each is a child of its part.
+MARK, CUT, PLANE, ARROWS = "fluxface_result", "fluxface_cut", "fluxface_plane", "fluxface_arrows"
 # Kept with a result: its part's number in the case, and the (4, 4) matrix from the world in metres to its own axes.
 NUMBER, PLACED = "fluxface_part", "fluxface_placed"
 TEMPERATURE = "temperature"
 COLOUR = "temperature_colour"
+# W/m2, in the axes of the result as an arrow of so many metres would be.
+FLUX = "heat_flux"
 
 
 def result_of(part: bpy.types.Object) -> bpy.types.Object | None:
@@ -33,14 +35,19 @@ def cut_of(part: bpy.types.Object) -> bpy.types.Object | None:
     return next((child for child in part.children if child.get(CUT)), None)
 
 
+def arrows_of(part: bpy.types.Object) -> bpy.types.Object | None:
+    """The part's arrows along the heat flux, or None."""
+    return next((child for child in part.children if child.get(ARROWS)), None)
+
+
 def shown_of(part: bpy.types.Object) -> bpy.types.Object | None:
     """What shows the part's temperatures: its result, or what a cut leaves of it; None where there is none."""
     return cut_of(part) or result_of(part)
 
 
 def part_of(object_: bpy.types.Object) -> bpy.types.Object:
-    """The part whose result, cut or cutting plane ``object_`` is, or ``object_`` itself if it is none."""
-    is_ours = any(object_.get(mark) for mark in (MARK, CUT, PLANE))
+    """The part whose result, cut, cutting plane or arrows ``object_`` is, or ``object_`` itself if it is none."""
+    is_ours = any(object_.get(mark) for mark in (MARK, CUT, PLANE, ARROWS))
     return object_.parent if is_ours and object_.parent else object_
 
 
@@ -79,8 +86,10 @@ def build_results(
     field = read_field(folder)
     _check(field, len(parts))
     settle(scene)
-    skin = hot_skin(field)
-    return [_build_result(scene, part, index, *_surface_of(skin, index), material) for index, part in enumerate(parts)]
+    skin, flux = hot_skin(field), field.heat_flux[skin_nodes(field)[0]]
+    return [
+        _build_result(scene, part, index, *_surface_of(skin, flux, index), material) for index, part in enumerate(parts)
+    ]
 
 
 def _check(field: Field, parts: int) -> None:
@@ -93,10 +102,10 @@ def _check(field: Field, parts: int) -> None:
         raise Trouble("case", "The result holds temperatures or places that are not numbers.", "Run again.")
 
 
-def _surface_of(skin: HotSkin, part: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """The part's own boundary: places (P, 3) m, triangles (T, 3), temperature (P,) K."""
+def _surface_of(skin: HotSkin, flux: np.ndarray, part: int) -> tuple[np.ndarray, ...]:
+    """The part's own boundary: places (P, 3) m, triangles (T, 3), temperature (P,) K, heat flux (P, 3) W/m2."""
     used, triangles = np.unique(skin.triangles[skin.part == part], return_inverse=True)
-    return skin.places[used], triangles.reshape(-1, 3), skin.temperature[used]
+    return skin.places[used], triangles.reshape(-1, 3), skin.temperature[used], flux[used]
 
 
 def _build_result(
@@ -106,6 +115,7 @@ def _build_result(
     places: np.ndarray,
     triangles: np.ndarray,
     temperature: np.ndarray,
+    flux: np.ndarray,
     material: bpy.types.Material,
 ) -> bpy.types.Object:
     matrix = np.array(part.matrix_world)
@@ -116,6 +126,7 @@ def _build_result(
     mesh = mesh_of(f"{part.name} temperature", local, triangles)
     for name in (TEMPERATURE, SHOWN):
         write_kelvin(mesh, name, temperature)
+    write_vectors(mesh, FLUX, flux @ placed[:3, :3].T)
     mesh.set_sharp_from_angle(angle=CREASE)
     mesh.materials.append(material)
     result = result_of(part) or new_child(part, mesh, MARK)
@@ -146,6 +157,18 @@ def add_geometry(mesh: bpy.types.Mesh, places: np.ndarray, triangles: np.ndarray
 def write_kelvin(mesh: bpy.types.Mesh, name: str, temperature: np.ndarray) -> None:
     """Give the mesh's vertices temperatures (P,) in kelvin, as the attribute ``name``."""
     mesh.attributes.new(name, "FLOAT", "POINT").data.foreach_set("value", temperature.astype(np.float32))
+
+
+def write_vectors(mesh: bpy.types.Mesh, name: str, vectors: np.ndarray) -> None:
+    """Give the mesh's vertices vectors (P, 3), as the attribute ``name``."""
+    mesh.attributes.new(name, "FLOAT_VECTOR", "POINT").data.foreach_set("vector", vectors.astype(np.float32).ravel())
+
+
+def read_vectors(mesh: bpy.types.Mesh, name: str) -> np.ndarray:
+    """(P, 3) at the vertices, from the attribute ``name``."""
+    vectors = np.empty(3 * len(mesh.vertices), dtype=np.float32)
+    mesh.attributes[name].data.foreach_get("vector", vectors)
+    return vectors.reshape(-1, 3)
 
 
 def new_child(part: bpy.types.Object, mesh: bpy.types.Mesh, mark: str) -> bpy.types.Object:

@@ -46,8 +46,9 @@ class Section:
     share: np.ndarray
 
     def at(self, nodal: np.ndarray) -> np.ndarray:
-        """What nodal values (N,) come to at the places (P,)."""
-        return nodal[self.first] + self.share * (nodal[self.second] - nodal[self.first])
+        """What nodal values (N,) or (N, 3) come to at the places (P,) or (P, 3)."""
+        share = self.share.reshape(-1, *[1] * (nodal.ndim - 1))
+        return nodal[self.first] + share * (nodal[self.second] - nodal[self.first])
 
 
 def solid_of(field: Field, part: int, matrix: np.ndarray) -> Solid:

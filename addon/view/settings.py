@@ -11,6 +11,7 @@ from bpy.props import BoolProperty, EnumProperty, FloatProperty, IntProperty, Po
 
 from ..host import redraw
 from ..units import TEMPERATURE_UNITS
+from . import arrows
 from .colours import DEFAULT_MAP, DIFFERENCE_MAP, colour_maps
 from .framing import VIEWS
 from .legend import OF_TEMPERATURE, Words, of_difference
@@ -44,6 +45,11 @@ def _refreshed(settings: ViewSettings, _context: bpy.types.Context) -> None:
 
 def _lines_changed(_settings: ViewSettings, _context: bpy.types.Context) -> None:
     over_results.forget()
+    redraw()
+
+
+def _arrows_changed(settings: ViewSettings, _context: bpy.types.Context) -> None:
+    arrows.refresh(settings.id_data)
     redraw()
 
 
@@ -105,6 +111,16 @@ class ViewSettings(bpy.types.PropertyGroup):
         name="Degrees between", description="From one isotherm to the next, in the scene's degrees; 0 = as the legend",
         min=0.0, default=0.0, precision=2, update=_lines_changed,
     )  # fmt: skip
+    arrows: BoolProperty(
+        name="Heat flow", description="Arrows along the heat flux, in the 3D view and in pictures; longer is more flux",
+        default=False, update=_arrows_changed,
+    )  # fmt: skip
+    arrow_count: IntProperty(
+        name="Arrows", description="About how many arrows there are on all that is shown",
+        min=10, max=5000, default=200, update=_arrows_changed,
+    )  # fmt: skip
+    live: BoolProperty(options={"HIDDEN"}, description="Whether loads other than those of the run are shown")
+    arrow_longest: FloatProperty(options={"HIDDEN"}, description="What the longest arrow stands for, W/m2; 0 = none")
     engine: EnumProperty(
         name="Render with",
         description="What renders pictures; their colours are the same with each",
@@ -188,6 +204,7 @@ def refresh(scene: bpy.types.Scene) -> None:
     paint(material_of(scene), scale)
     for result in {*results_in(scene), *shown_in(scene)}:
         colour(result, scale)
+    arrows.refresh(scene)
     over_results.forget()
     redraw()
 
@@ -210,6 +227,7 @@ def recolour(scene: bpy.types.Scene, parts: Sequence[bpy.types.Object], temperat
     set_range(material_of(scene), scale)
     for result in results_in(scene):
         colour(result, scale)
+    arrows.refresh(scene)
     over_results.forget()
     redraw()
 
@@ -262,6 +280,7 @@ def refresh_cut(scene: bpy.types.Scene) -> None:
     set_range(material_of(scene), scale)
     for shown in shown_in(scene):
         colour(shown, scale)
+    arrows.refresh(scene)
     over_results.forget()
     redraw()
 

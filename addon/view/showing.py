@@ -8,7 +8,7 @@ from typing import Any
 
 import bpy
 
-from .result_object import part_of, results_in, settle, shown_of
+from .result_object import arrows_of, part_of, results_in, settle, shown_of
 
 # Solid shading in the results' own colours: no light on them, and form from the drawn ridges and valleys.
 TRUE_SOLID = {"color_type": "VERTEX", "light": "FLAT", "show_cavity": True, "cavity_type": "SCREEN"}
@@ -23,6 +23,8 @@ def apply_showing(scene: bpy.types.Scene) -> None:
         part = part_of(result)
         for object_ in {result, shown_of(part)}:
             _hide(scene, object_, not shown or object_ != shown_of(part))
+        if arrows_of(part):
+            _hide(scene, arrows_of(part), not shown)
         _hide(scene, part, shown)
     if results and shown:
         _colour_solid_views(settings)

@@ -118,5 +118,37 @@ def test_live_loads_show_on_the_cut(scene):
     bpy.ops.fluxface.run()
     bpy.ops.fluxface.cut_open()
     ready()
+    view.settings_of(scene).arrows = True
+    assert view.arrows_of(part)
     scene.fluxface.tags[0].temperature = HOT + 50
     assert temperatures(view.shown_of(part)).max() == pytest.approx(HOT + 50, abs=1e-2)
+    assert view.arrows_of(part) is None  # what the flux is now is known after a run
+    scene.fluxface.tags[0].temperature = HOT
+    assert view.arrows_of(part)
+
+
+def test_arrows_of_an_even_flux_are_equal_and_parallel_and_go_without_a_trace(scene, wall):
+    before = set(bpy.data.objects)
+    settings = view.settings_of(scene)
+    settings.arrows = True
+    rings = local_arrows(scene, wall)
+    along = rings[:, -1, 0] - rings[:, 0, 0]
+    assert 100 < len(along) < 300
+    down = -np.array(wall.matrix_world)[:3, 2] / wall.scale.z  # heat goes from +z to -z
+    length = np.linalg.norm(along, axis=1)
+    np.testing.assert_allclose(along / length[:, None], np.tile(down, (len(along), 1)), atol=1e-3)
+    np.testing.assert_allclose(length, length.max(), rtol=1e-3)
+    conductivity = 167.0
+    assert settings.arrow_longest == pytest.approx(conductivity * (HOT - COLD) / wall.dimensions.z, rel=1e-3)
+    bpy.ops.fluxface.cut_open()  # also on the section
+    at = np.array(cutting.plane_of(scene).matrix_world)
+    assert ((local_arrows(scene, wall)[:, 0, 0] - at[:3, 3]) @ at[:3, 2]).max() > -1e-3
+    bpy.ops.fluxface.close_cut()
+    settings.arrows = False
+    assert set(bpy.data.objects) == before and settings.arrow_longest == 0.0
+
+
+def local_arrows(scene, part: bpy.types.Object) -> np.ndarray:
+    """(A, 5, 8, 3) the rings of each arrow, in the world."""
+    places, _ = places_and_triangles(view.arrows_of(part))
+    return places.reshape(-1, 5, 8, 3)
