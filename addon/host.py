@@ -41,6 +41,13 @@ def redraw() -> None:
                 area.tag_redraw()
 
 
+def tell_status(text: str | None) -> None:
+    """Show ``text`` in every status bar; None brings back what the host shows there."""
+    for window in bpy.context.window_manager.windows:
+        with bpy.context.temp_override(window=window):
+            window.workspace.status_text_set(text)
+
+
 def bring_in_view(places: np.ndarray, around: float) -> None:
     """Let every 3D view look at the middle of world places (P, 3), and at ``around`` of them at least."""
     middle = 0.5 * (places.min(axis=0) + places.max(axis=0))

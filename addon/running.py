@@ -15,6 +15,7 @@ from ..solver.errors import Trouble
 from ..solver.result import read_summary
 from . import comparing, cutting, history, host, jobs, live, probes, study, tags, upkeep, view
 from .cases import build_case
+from .language import report
 from .parts import in_sight
 from .properties import Outcome
 from .recovery import memory
@@ -107,8 +108,10 @@ def look_until_over(job: jobs.Job, finish: Callable[[jobs.Ending], object], step
         state.text, state.fraction = told(job.progress)
         host.redraw()
         if ending is None:
+            host.tell_status(report("{step}: {text} ({share:.0%})", step=step, text=state.text, share=state.fraction))
             return SECONDS_BETWEEN_LOOKS
         state.running = False
+        host.tell_status(None)
         finish(ending)
         host.push_undo(step)
         return None

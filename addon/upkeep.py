@@ -123,6 +123,7 @@ def before_load(_file: str) -> None:
     """A run belongs to the file that is being left, and so do the tags that are drawn."""
     jobs.stop_all()
     bpy.context.window_manager.fluxface.running = False
+    host.tell_status(None)
     tag_colours.forget()
     memory.forget()
     definitions.forget()

@@ -180,8 +180,9 @@ def look_to_the_end(look) -> None:
         time.sleep(min(wait, 0.05))
 
 
-def test_looking_from_time_to_time_never_waits_and_ends_with_the_result(scene):
-    part = lamp(scene)
+def test_looking_from_time_to_time_never_waits_and_ends_with_the_result(scene, monkeypatch):
+    part, told = lamp(scene), []
+    monkeypatch.setattr(running.host, "tell_status", told.append)
     state = bpy.context.window_manager.fluxface
     run = running.start(bpy.context)
     state.running = True
@@ -189,9 +190,9 @@ def test_looking_from_time_to_time_never_waits_and_ends_with_the_result(scene):
     began = time.monotonic()
     look()
     assert time.monotonic() - began < 0.1
-    assert state.running
+    assert state.running and told[0].startswith("Temperatures: ")
     look_to_the_end(look)
-    assert not state.running
+    assert not state.running and told[-1] is None and told.count(None) == 1
     assert view.has_result(part)
 
 
