@@ -17,6 +17,10 @@ EIGHTHS = np.array(
 )
 
 
+# Of the part's extent: nodes nearer to the plane are on it.
+ON_PLANE = 1e-6
+
+
 @dataclass(frozen=True)
 class Solid:
     """What fills a part. nodes: (N, 3) in the part's own axes. cells: (M, 4 or 10). skin: (T, 3) nodes, outward there.
@@ -68,11 +72,13 @@ def solid_of(field: Field, part: int, matrix: np.ndarray) -> Solid:
 def section(solid: Solid, origin: np.ndarray, normal: np.ndarray) -> Section:
     """The part without what lies beyond the plane through ``origin`` (3,), where unit ``normal`` (3,) points."""
     height = (solid.nodes - origin) @ normal
+    # The plane goes through nodes that are as good as on it: slivers beside them would be drawn as edges.
+    height[np.abs(height) < ON_PLANE * np.ptp(solid.nodes, axis=0).max()] = 0.0
     kept, rim = _clipped(solid.skin, height)
     near = np.abs((solid.centre - origin) @ normal) <= solid.radius * (1 + 1e-6)
     cells = solid.cells[near]
     cells = cells[:, EIGHTHS].reshape(-1, 4) if cells.shape[1] == 10 else cells
-    cap = _cut_through(cells, height)
+    rim, cap = _through_nodes(rim, height), _through_nodes(_cut_through(cells, height), height)
     corners = np.concatenate([rim, cap])
 
     # Nodes that stay, and then the points between nodes, each once.
@@ -90,6 +96,15 @@ def section(solid: Solid, origin: np.ndarray, normal: np.ndarray) -> Section:
     triangles = np.concatenate([number[kept], corner.reshape(-1, 3)])
     places = solid.nodes[first] + share[:, None] * (solid.nodes[second] - solid.nodes[first])
     return Section(places, _facing(places, triangles, len(cap), normal), len(cap), first, second, share)
+
+
+def _through_nodes(corners: np.ndarray, height: np.ndarray) -> np.ndarray:
+    """Triangles (C, 3, 2) of pairs of nodes, with those that lie on the plane alone, less the triangles that fold up."""
+    on_plane = height[corners] == 0
+    node = np.where(on_plane[..., :1], corners[..., :1], corners[..., 1:])
+    corners = np.where(on_plane.any(axis=2, keepdims=True), node, corners)
+    same = [(corners[:, i] == corners[:, j]).all(axis=1) for i, j in ((0, 1), (1, 2), (2, 0))]
+    return corners[~np.any(same, axis=0)]
 
 
 def _clipped(skin: np.ndarray, height: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
