@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 from ..solver.case import CASE_FILE, SURFACE_FILE
 from ..solver.errors import Trouble
 from ..solver.result import SUMMARY_FILE, Summary, hot_skin, read_field, read_summary, write_skin
+from . import run_log
 
 if TYPE_CHECKING:
     from .properties import KeptRun, Outcome
@@ -34,6 +35,7 @@ def keep(case: Path) -> Path:
         for file in (case / CASE_FILE, case / SURFACE_FILE, result / SUMMARY_FILE):
             shutil.copyfile(file, beside / file.name)
         write_skin(skin, beside)
+        (beside / run_log.LOG_FILE).write_text(run_log.text(read_summary(result)), "utf-8")
         beside.rename(run)
     except OSError as error:
         shutil.rmtree(beside, ignore_errors=True)

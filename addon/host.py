@@ -48,6 +48,18 @@ def tell_status(text: str | None) -> None:
             window.workspace.status_text_set(text)
 
 
+def show_text(text: bpy.types.Text) -> None:
+    """Show a text in a window of its own; without windows it stays among the file's texts."""
+    if bpy.app.background or not bpy.context.window_manager.windows:
+        return
+    known = set(bpy.context.window_manager.windows)
+    bpy.ops.wm.window_new()
+    for window in set(bpy.context.window_manager.windows) - known:
+        area = window.screen.areas[0]
+        area.type = "TEXT_EDITOR"
+        area.spaces.active.text = text
+
+
 def bring_in_view(places: np.ndarray, around: float) -> None:
     """Let every 3D view look at the middle of world places (P, 3), and at ``around`` of them at least."""
     middle = 0.5 * (places.min(axis=0) + places.max(axis=0))

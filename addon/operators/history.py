@@ -8,9 +8,10 @@ from pathlib import Path
 import bpy
 
 from ...solver.errors import Trouble
-from .. import comparing, history, study
+from .. import comparing, history, host, study
 from ..language import report
 from ..properties import KeptRun, Outcome
+from ..run_log import LOG_FILE
 from .seeing import members_with_result
 from .telling import TellsTrouble
 
@@ -47,6 +48,22 @@ class OpenRunFolder(_OfRun, bpy.types.Operator):
                 "Put it back, or run again.",
             )
         bpy.ops.wm.path_open(filepath=run.folder)
+
+
+class ShowRunLog(_OfRun, bpy.types.Operator):
+    bl_idname = "fluxface.run_log"
+    bl_label = "Show Its Log"
+    bl_description = "Open what the solver did and said in the chosen run: sizes, seconds, mending and warnings"
+
+    def act(self, context: bpy.types.Context) -> None:
+        _, run = chosen(context)
+        file = Path(run.folder) / LOG_FILE
+        if not file.is_file():
+            raise Trouble("case", f"There is no log in {run.folder}.", "Put the folder back, or run again.")
+        log = bpy.data.texts.new(f"Log of {history.when(run)}")
+        log.write(file.read_text("utf-8"))
+        log.cursor_set(0)
+        host.show_text(log)
 
 
 class ForgetRun(_OfRun, bpy.types.Operator):
@@ -106,4 +123,6 @@ class EndComparison(TellsTrouble, bpy.types.Operator):
         comparing.end(context.scene, chosen(context)[0])
 
 
-register, unregister = bpy.utils.register_classes_factory((OpenRunFolder, ForgetRun, CompareRun, EndComparison))
+register, unregister = bpy.utils.register_classes_factory(
+    (OpenRunFolder, ShowRunLog, ForgetRun, CompareRun, EndComparison)
+)

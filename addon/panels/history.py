@@ -56,6 +56,7 @@ class RunsPanel(Sidebar, bpy.types.Panel):
         row.template_list("FLUXFACE_UL_runs", "", left, "runs", left, "active_run", rows=3)
         buttons = row.column(align=True)
         buttons.operator("fluxface.run_folder", text="", icon="FILE_FOLDER")
+        buttons.operator("fluxface.run_log", text="", icon="TEXT")
         buttons.operator("fluxface.run_forget", text="", icon="TRASH")
         if left.comparison:
             _draw_comparison(context, layout, json.loads(left.comparison))

@@ -99,7 +99,7 @@ def section(solid: Solid, origin: np.ndarray, normal: np.ndarray) -> Section:
 
 
 def _through_nodes(corners: np.ndarray, height: np.ndarray) -> np.ndarray:
-    """Triangles (C, 3, 2) of pairs of nodes, with those that lie on the plane alone, less the triangles that fold up."""
+    """Triangles (C, 3, 2) of pairs of nodes, a node on the plane in place of its pair, less those that fold up."""
     on_plane = height[corners] == 0
     node = np.where(on_plane[..., :1], corners[..., :1], corners[..., 1:])
     corners = np.where(on_plane.any(axis=2, keepdims=True), node, corners)

@@ -25,6 +25,7 @@ WITHOUT_UNDO = {
     "fluxface.material_keep": "writes to the user's own library",
     "fluxface.run_forget": "deletes a folder from the disk, which no undo brings back",
     "fluxface.run_folder": "opens a folder",
+    "fluxface.run_log": "opens a text",
 }
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import shutil
 from pathlib import Path
 
@@ -119,3 +120,13 @@ def test_a_deleted_run_leaves_the_list(saved: Path) -> None:
     assert not folder.exists()
     assert len(outcome().runs) == 0
     assert not bpy.ops.fluxface.run_forget.poll()
+
+
+def test_a_runs_log_tells_what_was_done_and_opens_as_a_text(scene):
+    part = lamp(scene)
+    bpy.ops.fluxface.run()
+    assert bpy.ops.fluxface.run_log() == {"FINISHED"}
+    (log,) = bpy.data.texts
+    told, summary = log.as_string(), json.loads(study.outcome(scene, [part]).summary)
+    assert f"{summary['mesh']['nodes']:,} nodes" in told and f"mesh: {summary['seconds']['mesh']:.2f} s" in told
+    assert "heat in 12 W, out 12 W" in told and "Where the heat goes" in told
