@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from . import contacts, history, look, part, probes, result, run, shape, study, tags
+from . import contacts, history, look, menu, part, probes, result, run, shape, study, tags
 
 # In the order of the work.
-ROOMS = (study, shape, part, tags, contacts, run, look, result, probes, history)
+ROOMS = (menu, study, shape, part, tags, contacts, run, look, result, probes, history)
 
 
 def register() -> None:

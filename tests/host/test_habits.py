@@ -10,6 +10,7 @@ bpy = pytest.importorskip("bpy")
 
 from drawn_panels import drawn  # noqa: E402
 from fluxface.addon import language, words  # noqa: E402
+from fluxface.addon.panels import menu  # noqa: E402
 from modelled import block, lamp, select, side, tag  # noqa: E402
 
 # What needs no undo step of its own, and why.
@@ -61,6 +62,21 @@ def test_panels_and_menus_have_names_and_their_place(scene):
         assert panel.bl_label
         assert panel.bl_category == "Fluxface"
     assert all(menu.bl_label for menu in ours(bpy.types.Menu))
+
+
+# What acts on one row of a list or one value, and stands beside it alone.
+OF_A_ROW = {
+    "areas_accept", "contact_remove", "emissivity_use", "finding_show", "material_choose", "notes_dismiss",
+    "preset_use", "probe_remove", "run_forget", "show_place", "table_row_add", "table_row_remove", "turn_cut",
+}  # fmt: skip
+
+
+def test_every_command_stands_in_the_menu_that_the_hosts_search_reads(scene):
+    listed = [name for group in menu.COMMANDS for name in group]
+    assert len(listed) == len(set(listed))
+    assert {f"fluxface.{name}" for name in {*listed, *OF_A_ROW}} == set(operators())
+    for host_menu in (bpy.types.VIEW3D_MT_object, bpy.types.VIEW3D_MT_edit_mesh):
+        assert menu.offer in host_menu.draw._draw_funcs
 
 
 def groups_below(group: bpy.types.Struct) -> dict[str, bpy.types.Struct]:

@@ -1,5 +1,7 @@
 """Runs inside the window: installs the extension, tags in edit mode, runs, cancels, edits, runs again.
 
+What a designer presses is pressed: keys and the mouse, as events of the window, commands by way of the host's search.
+
 Called by test_window.py as ``blender --python in_window.py -- ARCHIVE FOLDER``; leaves pictures of the screen and
 ``seen.json`` in FOLDER. The steps are taken from a timer, so that the window lives and draws between them.
 """
@@ -36,6 +38,33 @@ def press(operator, **settings):
         return operator("INVOKE_DEFAULT", **settings)
 
 
+def over_part():
+    """A pixel of the window over the part, clear of the sidebar and the toolbar."""
+    _, _, region = view()
+    return {"x": region.x + region.width // 3, "y": region.y + region.height // 2}
+
+
+def hit(kind, unicode=""):
+    """A key or a button of the mouse, pressed and let go with the pointer over the part."""
+    window = bpy.context.window_manager.windows[0]
+    window.event_simulate(type="MOUSEMOVE", value="NOTHING", **over_part())
+    window.event_simulate(type=kind, value="PRESS", unicode=unicode, **over_part())
+    window.event_simulate(type=kind, value="RELEASE", **over_part())
+
+
+def command(words):
+    """Look a command up with the host's search, and take the first that it offers."""
+    hit("F3")
+    yield 0.6
+    for letter in words:
+        hit("SPACE" if letter == " " else letter.upper(), unicode=letter)
+        yield 0.05
+    yield 0.4
+    look(f"search for {words}")
+    hit("RET")
+    yield 0.4
+
+
 def run_ends():
     """Wait, without freezing the window, until the run in the background has ended."""
     begun, draws = time.time(), 0
@@ -43,12 +72,6 @@ def run_ends():
         draws += 1
         yield 0.1
     seen["looks while running"] = max(draws, seen.get("looks while running", 0))
-
-
-def select(part, facing_up):
-    bpy.context.tool_settings.mesh_select_mode = (False, False, True)
-    for polygon in part.data.polygons:
-        polygon.select = (polygon.normal.z > 0.9) == facing_up
 
 
 def story():
@@ -64,17 +87,25 @@ def story():
     next(region for region in area.regions if region.type == "UI").active_panel_category = "Fluxface"
     press(bpy.ops.view3d.view_selected)
     settings = bpy.context.scene.fluxface
-    for name, up in (("pad", True), ("skin", False)):
-        select(part, up)
-        press(bpy.ops.object.mode_set, mode="EDIT")
-        press(bpy.ops.fluxface.tag_new, name=name)
-        yield 0.5
-        look(f"tagged {name}")
-        press(bpy.ops.object.mode_set, mode="OBJECT")
-    settings.tags[0].use_heat, settings.tags[0].heat = True, 5.0
-    settings.tags[1].use_convection, settings.tags[1].coefficient = True, 12.0
+    yield 0.5
+    hit("TAB")
+    yield 0.5
+    seen["mode"] = bpy.context.mode
+    hit("THREE")
+    for what, key in (("skin", "A"), ("pad", "LEFTMOUSE")):
+        hit(key)
+        yield 0.3
+        yield from command("new tag")
+        settings.tags[settings.active_tag].name = what
+        yield 0.3
+        look(f"tagged {what}")
+    hit("TAB")
+    yield 0.5
+    settings.tags[1].use_heat, settings.tags[1].heat = True, 5.0
+    settings.tags[0].use_convection, settings.tags[0].coefficient = True, 12.0
+    seen["faces"] = {row["name"]: row["faces"] for row in tagged(part)}
     part.fluxface.material.name = "aluminium 6061-T6"
-    press(bpy.ops.fluxface.run)
+    yield from command("fluxface run")
     yield from run_ends()
     yield 1.0
     look("result")
@@ -97,6 +128,13 @@ def story():
     seen["left behind"] = [name for name in dir(bpy.types) if name.lower().startswith("fluxface")]
     bpy.ops.preferences.addon_enable(module=MODULE)
     seen["enabled again"] = hasattr(bpy.context.scene, "fluxface")
+
+
+def tagged(part):
+    """How many faces each tag has."""
+    uids = [0] * len(part.data.polygons)
+    part.data.attributes["fluxface_tag"].data.foreach_get("value", uids)
+    return [{"name": tag.name, "faces": uids.count(tag.uid)} for tag in bpy.context.scene.fluxface.tags]
 
 
 def told(part):

@@ -52,8 +52,8 @@ def _in_window(host: str, root: Path, folder: Path, archive: str) -> None:
     suite = "blender" if root != Path("/") else host
     command = [
         "timeout", str(SECONDS), "xvfb-run", "--auto-servernum", f"--server-args=-screen 0 {SCREEN}x24",
-        suite, "--window-geometry", "0", "0", *SCREEN.split("x"), "--python", str(inside / "in_window.py"),
-        "--", str(inside / archive), str(inside),
+        suite, "--enable-event-simulate", "--window-geometry", "0", "0", *SCREEN.split("x"),
+        "--python", str(inside / "in_window.py"), "--", str(inside / archive), str(inside),
     ]  # fmt: skip
     enter = ["chroot", str(root)] if root != Path("/") else []
     environment = {
@@ -68,6 +68,11 @@ def test_the_story_is_told_to_its_end(seen: dict[str, Any]) -> None:
     assert "error" not in seen
     assert seen["told to the end"]
     assert seen["enabled"]
+
+
+def test_faces_are_tagged_by_keys_and_clicks(seen: dict[str, Any]) -> None:
+    assert seen["mode"] == "EDIT_MESH"
+    assert seen["faces"] == {"skin": 5, "pad": 1}
 
 
 def test_the_window_lives_while_the_solver_runs(seen: dict[str, Any]) -> None:
