@@ -21,15 +21,20 @@ from .view.result_object import local_surface, temperatures
 FAR = 0.02
 
 
-def compare(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], run: KeptRun) -> None:
-    """Show on the parts how much hotter each place is than in the kept ``run``; a cut is closed for it.
+def compare(
+    scene: bpy.types.Scene, members: Sequence[bpy.types.Object], run: KeptRun, later: KeptRun | None = None
+) -> None:
+    """Show on the parts how much hotter each place is in the ``later`` run, or now, than in ``run``; a cut is closed.
 
-    Raises Trouble when the run cannot be read, or when no place of the parts lies on its surface.
+    Raises Trouble when a run cannot be read, or when no place of the parts lies on its surface.
     """
     left = study.outcome(scene, members)
-    before, skin = read_summary(Path(run.folder)), read_skin(Path(run.folder))
-    names = [row["name"] for row in before["parts"]]
-    change = [_change(part, skin, names.index(part.name) if part.name in names else -1) for part in members]
+    before = _read(run)
+    after = _read(later) if later else None
+    change = [
+        (_carried(part, *after) if after else temperatures(view.result_of(part))) - _carried(part, *before)
+        for part in members
+    ]
     known = float(np.mean(np.isfinite(np.concatenate(change))))
     if not known:
         raise Trouble(
@@ -39,10 +44,13 @@ def compare(scene: bpy.types.Scene, members: Sequence[bpy.types.Object], run: Ke
         )
     cutting.close(scene)
     since = history.when(run)
-    view.show_difference(scene, members, change, since)
-    left.comparison = json.dumps(
-        {"since": since, "note": run.note, "known": known, "rows": _rows(before, study.summary(left))}
-    )
+    view.show_difference(scene, members, change, f"{since} until {history.when(later)}" if later else since)
+    told = {"since": since, "until": history.when(later) if later else "", "note": run.note, "known": known}
+    left.comparison = json.dumps(told | {"rows": _rows(before[0], after[0] if after else study.summary(left))})
+
+
+def _read(run: KeptRun) -> tuple[Summary, HotSkin]:
+    return read_summary(Path(run.folder)), read_skin(Path(run.folder))
 
 
 def end(scene: bpy.types.Scene, left: Outcome) -> None:
@@ -51,18 +59,18 @@ def end(scene: bpy.types.Scene, left: Outcome) -> None:
     view.end_difference(scene)
 
 
-def _change(part: bpy.types.Object, skin: HotSkin, number: int) -> np.ndarray:
-    """(P,) K at the vertices of the part's result; NaN where the earlier surface of part ``number`` is far."""
+def _carried(part: bpy.types.Object, summary: Summary, skin: HotSkin) -> np.ndarray:
+    """(P,) K of a run at the vertices of the part's result; NaN where the surface of that run is far."""
     result = view.result_of(part)
     places, _ = local_surface(result.data)
     placed = np.linalg.inv(view.placing(result)[1])
     places = places @ placed[:3, :3].T + placed[:3, 3]
-    mine = skin.triangles[skin.part == number]
+    names = [row["name"] for row in summary["parts"]]
+    mine = skin.triangles[skin.part == names.index(part.name)] if part.name in names else skin.triangles[:0]
     if not len(mine):
         return np.full(len(places), np.nan)
     then, apart = nearest_values(skin.places, mine, skin.temperature, places)
-    near = apart <= FAR * np.ptp(places, axis=0).max()
-    return np.where(near, temperatures(result) - then, np.nan)
+    return np.where(apart <= FAR * np.ptp(places, axis=0).max(), then, np.nan)
 
 
 def _rows(before: Summary, after: Summary) -> list[dict[str, Any]]:

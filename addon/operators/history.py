@@ -6,6 +6,7 @@ import shutil
 from pathlib import Path
 
 import bpy
+from bpy.props import StringProperty
 
 from ...solver.errors import Trouble
 from .. import comparing, history, host, study
@@ -91,18 +92,30 @@ class ForgetRun(_OfRun, bpy.types.Operator):
         comparing.share_range(context.scene, left)
 
 
+NOW = "NOW"
+
+
 class CompareRun(_OfRun, bpy.types.Operator):
     bl_idname = "fluxface.run_compare"
     bl_label = "Compare with This Run"
-    bl_description = "Show how much hotter or colder each place is now than in the chosen run"
+    bl_description = "Show how much hotter or colder each place is than in the chosen run"
     bl_options = {"REGISTER", "UNDO"}
+
+    later: StringProperty(
+        name="Later run", description="The folder of the run that is compared with the chosen one; NOW = what is shown",
+        default=NOW, options={"SKIP_SAVE"},
+    )  # fmt: skip
 
     @classmethod
     def poll(cls, context: bpy.types.Context) -> bool:
         return super().poll(context) and members_with_result(cls, context)
 
     def act(self, context: bpy.types.Context) -> None:
-        comparing.compare(context.scene, study.parts(context), chosen(context)[1])
+        left, run = chosen(context)
+        later = None if self.later == NOW else left.runs.get(self.later)
+        if later is None and self.later != NOW:
+            raise Trouble("case", report("There is no run '{name}'.", name=self.later), "Choose one of the list.")
+        comparing.compare(context.scene, study.parts(context), run, later)
 
 
 class EndComparison(TellsTrouble, bpy.types.Operator):

@@ -29,6 +29,17 @@ class RunList(bpy.types.UIList):
         lines.prop(run, "note", text="", emboss=False, placeholder="What was changed?")
 
 
+class CompareMenu(bpy.types.Menu):
+    bl_idname = "FLUXFACE_MT_compare"
+    bl_label = "Compare This Run With"
+
+    def draw(self, context: bpy.types.Context) -> None:
+        left = study.outcome(context.scene, study.parts(context))
+        self.layout.operator("fluxface.run_compare", text="What Is Shown Now")
+        for run in list(left.runs)[: left.active_run]:
+            self.layout.operator("fluxface.run_compare", text=history.when(run), translate=False).later = run.name
+
+
 class RunsPanel(Sidebar, bpy.types.Panel):
     bl_idname = "FLUXFACE_PT_runs"
     bl_label = "Earlier Runs"
@@ -61,13 +72,13 @@ class RunsPanel(Sidebar, bpy.types.Panel):
         if left.comparison:
             _draw_comparison(context, layout, json.loads(left.comparison))
         else:
-            layout.operator("fluxface.run_compare", icon="ARROW_LEFTRIGHT")
+            layout.menu(CompareMenu.bl_idname, icon="ARROW_LEFTRIGHT")
         paragraph(context, layout, label("The latest {count} are kept beside the file.", count=history.KEPT))
 
 
 def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, told: dict[str, Any]) -> None:
     box = layout.box()
-    paragraph(context, box, label("Compared with {run}", run=", ".join(filter(None, (told["since"], told["note"])))))
+    paragraph(context, box, _compared(told))
     column = box.column(align=True)
     for row in told["rows"]:
         change = signed_difference_text(context.scene, row["now"] - row["then"])
@@ -80,4 +91,13 @@ def _draw_comparison(context: bpy.types.Context, layout: bpy.types.UILayout, tol
     box.operator("fluxface.end_comparison", icon="X")
 
 
-register, unregister = bpy.utils.register_classes_factory((RunList, RunsPanel))
+def _compared(told: dict[str, Any]) -> str:
+    run = ", ".join(filter(None, (told["since"], told["note"])))
+    return (
+        label("From {run} to {until}", run=run, until=told["until"])
+        if told["until"]
+        else label("Compared with {run}", run=run)
+    )
+
+
+register, unregister = bpy.utils.register_classes_factory((RunList, CompareMenu, RunsPanel))

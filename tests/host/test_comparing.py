@@ -93,6 +93,19 @@ def test_what_was_not_there_is_grey_and_its_share_is_told(scene):
     assert not study.outcome(scene, [part]).comparison and not np.isnan(shown_values(view.result_of(part))).any()
 
 
+def test_any_two_runs_are_compared_on_what_is_shown(scene):
+    part = wall(scene)
+    for kelvin in (HOT + 10.0, HOT + 40.0):
+        scene.fluxface.tags[0].temperature = kelvin
+        bpy.ops.fluxface.run()
+    left = study.outcome(scene, [part])
+    left.active_run = 2
+    assert bpy.ops.fluxface.run_compare(later=left.runs[1].name) == {"FINISHED"}
+    assert np.nanmax(shown_values(view.result_of(part))) == pytest.approx(10.0, abs=2e-2)
+    told = json.loads(left.comparison)
+    assert told["until"] and told["rows"][0]["now"] == pytest.approx(HOT + 10.0, abs=1e-2)
+
+
 def test_a_dragged_load_ends_the_comparison(scene):
     part = wall(scene)
     bpy.ops.fluxface.run()
