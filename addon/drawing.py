@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from typing import Any
+
+import bpy
 import gpu
 from mathutils import Matrix
 
@@ -41,3 +45,26 @@ def hatching() -> gpu.types.GPUShader:
         " }"
     )
     return gpu.shader.create_from_info(told)
+
+
+class Drawings:
+    """What a room draws over every 3D view, by the moment at which it does; nothing where there is no window."""
+
+    def __init__(self, **draws: Callable[[], None]) -> None:
+        self._draws = draws
+        # What the host gives for each drawing that is added, to take it off again.
+        self._handles: list[Any] = []
+
+    @property
+    def drawn(self) -> int:
+        """How many of them the host has."""
+        return len(self._handles)
+
+    def start(self) -> None:
+        if not bpy.app.background:
+            for moment, draw in self._draws.items():
+                self._handles.append(bpy.types.SpaceView3D.draw_handler_add(draw, (), "WINDOW", moment))
+
+    def stop(self) -> None:
+        while self._handles:
+            bpy.types.SpaceView3D.draw_handler_remove(self._handles.pop(), "WINDOW")

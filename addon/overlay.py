@@ -13,7 +13,7 @@ import bpy
 import gpu
 import numpy as np
 
-from .drawing import hatching, lifted
+from .drawing import Drawings, hatching, lifted
 from .parts import Skin
 from .properties import StudySettings, Terms, carries_heat
 from .view.colours import linear_from_srgb
@@ -61,7 +61,7 @@ class TagColours:
     def __init__(self) -> None:
         self._skins: dict[str, Skin] = {}
         self._batches: dict[str, dict[int, Any]] = {}
-        self._handle: Any = None
+        self._drawings = Drawings(POST_VIEW=self._draw)
         self._shader: Any = None
 
     def knows(self, part: bpy.types.Object) -> bool:
@@ -82,13 +82,10 @@ class TagColours:
         self._skins.pop(part.name, None)
 
     def start(self) -> None:
-        if not bpy.app.background:
-            self._handle = bpy.types.SpaceView3D.draw_handler_add(self._draw, (), "WINDOW", "POST_VIEW")
+        self._drawings.start()
 
     def stop(self) -> None:
-        if self._handle is not None:
-            bpy.types.SpaceView3D.draw_handler_remove(self._handle, "WINDOW")
-        self._handle = None
+        self._drawings.stop()
         self.forget()
 
     def forget(self) -> None:

@@ -2,28 +2,13 @@
 
 from __future__ import annotations
 
-from typing import Any
-
 import bpy
 import numpy as np
 from bpy_extras.view3d_utils import location_3d_to_region_2d
 
 from . import probes
+from .drawing import Drawings
 from .units import temperature_text
-
-# What the host gave for the drawing that was added, to take it off again.
-_drawings: list[Any] = []
-
-
-def register() -> None:
-    if not bpy.app.background:
-        _drawings.append(bpy.types.SpaceView3D.draw_handler_add(_draw, (), "WINDOW", "POST_PIXEL"))
-
-
-def unregister() -> None:
-    while _drawings:
-        bpy.types.SpaceView3D.draw_handler_remove(_drawings.pop(), "WINDOW")
-    probes.surfaces.forget()
 
 
 def _draw() -> None:
@@ -42,3 +27,15 @@ def _draw() -> None:
             draw_label(
                 context, np.array(pixel), f"{probe.name} {temperature_text(context.scene, kelvin)}", BRIGHT, taken
             )
+
+
+drawings = Drawings(POST_PIXEL=_draw)
+
+
+def register() -> None:
+    drawings.start()
+
+
+def unregister() -> None:
+    drawings.stop()
+    probes.surfaces.forget()

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-from typing import Any
-
 import bpy
 import numpy as np
 from bpy_extras.view3d_utils import location_3d_to_region_2d, region_2d_to_origin_3d
 from mathutils import Vector
 
+from .drawing import Drawings
 from .overlay import tag_colours
 from .parts import Skin
 
@@ -18,9 +17,6 @@ GROUND, BRIGHT = (0.10, 0.105, 0.115, 0.82), (0.94, 0.94, 0.93, 1.0)
 
 # A place and the normal there, in the part's own axes.
 Place = tuple[Vector, Vector]
-
-# What the host gave for the drawing that was added, to take it off again.
-_drawings: list[Any] = []
 
 
 class Places:
@@ -58,17 +54,6 @@ def middles(surface: Skin) -> dict[int, list[Place]]:
         nearest = mine[np.linalg.norm(centres[mine] - middle, axis=1).argmin()]
         found.setdefault(uid, []).append((Vector(centres[nearest]), Vector(vectors[nearest] / area[nearest])))
     return found
-
-
-def register() -> None:
-    if not bpy.app.background:
-        _drawings.append(bpy.types.SpaceView3D.draw_handler_add(_draw, (), "WINDOW", "POST_PIXEL"))
-
-
-def unregister() -> None:
-    while _drawings:
-        bpy.types.SpaceView3D.draw_handler_remove(_drawings.pop(), "WINDOW")
-    places.forget()
 
 
 def _draw() -> None:
@@ -111,3 +96,15 @@ def _draw_name(
     fill_box(left, size, GROUND)
     fill_box(left + np.array((INSET, SIZE - CHIP / 2)) * scale, np.array((CHIP, CHIP)) * scale, (*tag.colour, 1.0))
     write(tag.name, left + np.array((INSET + CHIP + GAP, SIZE - 0.36 * SIZE)) * scale, SIZE * scale, BRIGHT)
+
+
+drawings = Drawings(POST_PIXEL=_draw)
+
+
+def register() -> None:
+    drawings.start()
+
+
+def unregister() -> None:
+    drawings.stop()
+    places.forget()

@@ -72,6 +72,18 @@ def select(part: bpy.types.Object, faces: np.ndarray) -> None:
     tags.select(part.data, faces)
 
 
+HOT, COLD = 350.0, 300.0
+
+
+def wall(along: str, at: Sequence[float] = (0.0, 0.0, 0.0)) -> bpy.types.Object:
+    """A block held at COLD and HOT at its two ends along an axis, between which the temperature runs straight."""
+    part = block("wall", at=at)
+    for way, kelvin in (("+" + along, HOT), ("-" + along, COLD)):
+        end = tag(bpy.context.scene, part, way, side(part, way))
+        end.use_temperature, end.temperature = True, kelvin
+    return part
+
+
 def ready() -> None:
     """What the clock of a window would see to."""
     for _ in range(1000):

@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
 
 import bpy
 import numpy as np
 from bpy_extras.view3d_utils import location_3d_to_region_2d, region_2d_to_origin_3d
 from mathutils import Vector
 
-from ..drawing import lifted
+from ..drawing import Drawings, lifted
 from .colours import srgb_from_linear
 from .legend_in_view import BRIGHT, FAINT, GROUND, fill_box, fill_ring, text_width, write
 from .over_result import Mark, over_results
@@ -21,21 +20,6 @@ from .settings import levels_of, scale_of, settings_of, words_of
 # In the host's interface pixels, before its resolution scale.
 LINE, RADIUS, RING, INSET, GAP = 1.2, 6, 2, 6, 7
 TEXT = 11
-
-# What the host gave for the drawings that were added, to take them off again.
-_drawings: list[Any] = []
-
-
-def register() -> None:
-    if not bpy.app.background:
-        for draw, moment in ((_draw_isotherms, "POST_VIEW"), (_draw_marks, "POST_PIXEL")):
-            _drawings.append(bpy.types.SpaceView3D.draw_handler_add(draw, (), "WINDOW", moment))
-
-
-def unregister() -> None:
-    while _drawings:
-        bpy.types.SpaceView3D.draw_handler_remove(_drawings.pop(), "WINDOW")
-    over_results.forget()
 
 
 def _seen(context: bpy.types.Context) -> list[bpy.types.Object]:
@@ -134,3 +118,15 @@ def draw_label(
     taken.append(np.concatenate([corner, corner + size]))
     fill_box(corner, size, GROUND)
     write(text, corner + np.array((INSET, TEXT * 0.64)) * scale, TEXT * scale, colour)
+
+
+drawings = Drawings(POST_VIEW=_draw_isotherms, POST_PIXEL=_draw_marks)
+
+
+def register() -> None:
+    drawings.start()
+
+
+def unregister() -> None:
+    drawings.stop()
+    over_results.forget()

@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
 
 import bpy
 import numpy as np
 
+from ..drawing import Drawings
 from .arrows import legend_line
 from .colours import colours_at, srgb_from_linear
 from .legend import Legend
@@ -27,19 +27,6 @@ STEPS = 128
 GROUND = (0.10, 0.105, 0.115, 0.88)
 BRIGHT = (0.94, 0.94, 0.93, 1.0)
 FAINT = (0.66, 0.67, 0.68, 1.0)
-
-# What the host gave for the drawing that was added, to take it off again.
-_drawings: list[Any] = []
-
-
-def register() -> None:
-    if not bpy.app.background:
-        _drawings.append(bpy.types.SpaceView3D.draw_handler_add(_draw, (), "WINDOW", "POST_PIXEL"))
-
-
-def unregister() -> None:
-    while _drawings:
-        bpy.types.SpaceView3D.draw_handler_remove(_drawings.pop(), "WINDOW")
 
 
 def _draw() -> None:
@@ -154,3 +141,14 @@ def write(words: str, pixel: np.ndarray, size: float, colour: Sequence[float]) -
     blf.color(0, *colour)
     blf.position(0, *pixel, 0)
     blf.draw(0, words)
+
+
+drawings = Drawings(POST_PIXEL=_draw)
+
+
+def register() -> None:
+    drawings.start()
+
+
+def unregister() -> None:
+    drawings.stop()

@@ -14,17 +14,11 @@ from fluxface.addon.nearest import nearest_values  # noqa: E402
 from fluxface.addon.view.colours import NO_VALUE  # noqa: E402
 from fluxface.addon.view.result_object import COLOUR, local_surface, shown_values, temperatures  # noqa: E402
 from fluxface.addon.view.settings import scale_of, words_of  # noqa: E402
-from modelled import block, ready, side, tag  # noqa: E402
-
-HOT, COLD = 350.0, 300.0
+from modelled import COLD, HOT, ready, wall  # noqa: E402
 
 
-def wall(scene) -> bpy.types.Object:
-    """A block in which the temperature runs straight along x."""
-    part = block("wall")
-    for way, kelvin in (("+x", HOT), ("-x", COLD)):
-        end = tag(scene, part, way, side(part, way))
-        end.use_temperature, end.temperature = True, kelvin
+def solved_wall() -> bpy.types.Object:
+    part = wall("x")
     assert bpy.ops.fluxface.run() == {"FINISHED"}
     return part
 
@@ -52,7 +46,7 @@ def test_values_are_those_of_the_nearest_place():
 
 
 def test_a_hotter_run_is_shown_as_its_change_and_left_without_a_trace(scene):
-    part = wall(scene)
+    part = solved_wall()
     scene.fluxface.tags[0].temperature = HOT + 20.0
     bpy.ops.fluxface.run()
     before = things()
@@ -75,7 +69,7 @@ def test_a_hotter_run_is_shown_as_its_change_and_left_without_a_trace(scene):
 
 
 def test_what_was_not_there_is_grey_and_its_share_is_told(scene):
-    part = wall(scene)
+    part = solved_wall()
     far = np.array([vertex.co.y > 0 for vertex in part.data.vertices])
     for vertex in np.flatnonzero(far).tolist():
         part.data.vertices[vertex].co.y += 0.06
@@ -94,7 +88,7 @@ def test_what_was_not_there_is_grey_and_its_share_is_told(scene):
 
 
 def test_any_two_runs_are_compared_on_what_is_shown(scene):
-    part = wall(scene)
+    part = solved_wall()
     for kelvin in (HOT + 10.0, HOT + 40.0):
         scene.fluxface.tags[0].temperature = kelvin
         bpy.ops.fluxface.run()
@@ -107,7 +101,7 @@ def test_any_two_runs_are_compared_on_what_is_shown(scene):
 
 
 def test_a_dragged_load_ends_the_comparison(scene):
-    part = wall(scene)
+    part = solved_wall()
     bpy.ops.fluxface.run()
     ready()
     compared(part, 1)
@@ -117,7 +111,7 @@ def test_a_dragged_load_ends_the_comparison(scene):
 
 
 def test_one_range_for_all_runs(scene):
-    part = wall(scene)
+    part = solved_wall()
     scene.fluxface.tags[0].temperature = HOT - 20.0
     bpy.ops.fluxface.run()
     settings = view.settings_of(scene)

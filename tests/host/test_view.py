@@ -262,4 +262,4 @@ def test_a_saved_file_opens_with_its_result(scene, tmp_path: Path) -> None:
 
 def test_nothing_is_drawn_without_a_window() -> None:
     assert bpy.app.background
-    assert not legend_in_view._drawings
+    assert not legend_in_view.drawings.drawn
