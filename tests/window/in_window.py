@@ -114,7 +114,7 @@ def story():
     settings.size = 0.0011
     press(bpy.ops.fluxface.run)
     yield 1.5
-    press(bpy.ops.fluxface.cancel)
+    yield from command("fluxface cancel")
     yield from run_ends()
     seen["after cancel"] = told(part)
     settings.size = 0.0
@@ -124,10 +124,22 @@ def story():
     yield 1.0
     look("after an edit")
     seen["after edit"] = told(part)
+    picture = Path(FOLDER, "rendered.png")
+    window, area, region = view()
+    with bpy.context.temp_override(window=window, area=area, region=region):
+        bpy.ops.fluxface.render_picture(filepath=str(picture))
+    seen["rendered"] = picture.is_file()
     bpy.ops.preferences.addon_disable(module=MODULE)
     seen["left behind"] = [name for name in dir(bpy.types) if name.lower().startswith("fluxface")]
     bpy.ops.preferences.addon_enable(module=MODULE)
     seen["enabled again"] = hasattr(bpy.context.scene, "fluxface")
+    home = Path(sys.modules[MODULE].__file__).parent
+    repositories = bpy.context.preferences.extensions.repos
+    bpy.ops.extensions.package_uninstall(repo_index=repositories.find("User Default"), pkg_id="fluxface")
+    yield 1.0
+    seen["after removal"] = [str(home)] if home.exists() else []
+    seen["after removal"] += [name for name in dir(bpy.types) if name.lower().startswith("fluxface")]
+    look("removed")
 
 
 def tagged(part):

@@ -89,6 +89,14 @@ def test_results_follow_runs_and_edits(seen: dict[str, Any]) -> None:
     assert edited["children"] == 1
 
 
+def test_a_picture_is_rendered_beside_the_screen(seen: dict[str, Any]) -> None:
+    assert seen["rendered"]
+
+
+def test_removing_leaves_no_trace(seen: dict[str, Any]) -> None:
+    assert seen["after removal"] == []
+
+
 def test_disabling_leaves_nothing_and_enabling_again_works(seen: dict[str, Any]) -> None:
     assert seen["left behind"] == []
     assert seen["enabled again"]
