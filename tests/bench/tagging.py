@@ -1,4 +1,4 @@
-"""How quickly the add-on answers while a large part is tagged; prints medians and asserts nothing.
+"""How quickly the add-on answers while a large part is tagged and shown; prints medians and asserts nothing.
 
     python3 tests/bench/tagging.py [--faces 100000] [--times 7]
 
@@ -36,7 +36,7 @@ def main() -> None:
     rings = round(math.sqrt(options.faces / 1.6))
     bpy.ops.mesh.primitive_uv_sphere_add(segments=round(options.faces / rings), ring_count=rings, radius=0.05)
     print(f"{len(bpy.context.object.data.polygons)} faces, bpy {bpy.app.version_string}; median and slowest, ms")
-    tell(tagging() | choosing() | looking() | panels(), options.times)
+    tell(tagging() | choosing() | looking() | panels() | colouring(), options.times)
     addon.unregister()
 
 
@@ -118,6 +118,29 @@ def looking() -> dict[str, Callable[[], object]]:
         return act
 
     return {f"glance, {make.__name__}": looked(make) for make in (whole, opened, split)}
+
+
+def colouring() -> dict[str, Callable[[], object]]:
+    """A result of 200 000 vertices gets its colours: all that follows a run, and what a dragged load asks for."""
+    from fluxface.addon import view
+    from fluxface.addon.view.material import SHOWN
+    from fluxface.addon.view.result_object import MARK, TEMPERATURE, mesh_of, new_child, write_kelvin
+    from fluxface.addon.view.settings import refresh
+
+    side = 447
+    scene, part = bpy.context.scene, bpy.context.object
+    u, v = np.meshgrid(*[np.linspace(0.0, 0.1, side)] * 2, indexing="ij")
+    corner = (np.arange(side - 1)[:, None] * side + np.arange(side - 1)).ravel()
+    triangles = np.concatenate([corner[:, None] + (0, side, side + 1), corner[:, None] + (0, side + 1, 1)])
+    mesh = mesh_of("colours", np.stack([u, v, 0 * u], axis=-1).reshape(-1, 3), triangles)
+    temperature = (300.0 + 500.0 * u * np.cos(40.0 * v)).ravel()
+    for name in (TEMPERATURE, SHOWN):
+        write_kelvin(mesh, name, temperature)
+    new_child(part, mesh, MARK)
+    return {
+        f"colours of {side**2} vertices": lambda: refresh(scene),
+        f"other temperatures on {side**2} vertices": lambda: view.recolour(scene, [part], [temperature]),
+    }
 
 
 def panels() -> dict[str, Callable[[], object]]:
