@@ -50,8 +50,8 @@ def refresh(scene: bpy.types.Scene) -> None:
         remove_all(scene)
         return
     surfaces = [_flux_at_triangles(scene, object_) for object_ in shown.values()]
-    middles, areas = (np.concatenate([surface[i] for surface in surfaces]) for i in (0, 2))
-    chosen, apart = spread(middles, areas, settings.arrow_count)
+    middles, areas, normals = (np.concatenate([surface[i] for surface in surfaces]) for i in (0, 2, 3))
+    chosen, apart = spread(middles, areas, normals, settings.arrow_count)
     size = np.linalg.norm(np.concatenate([surface[1] for surface in surfaces]), axis=1)
     longest = settings.arrow_longest = float(size[chosen].max(initial=0.0))
     start = 0
@@ -85,19 +85,22 @@ def _flux_at_triangles(scene: bpy.types.Scene, shown: bpy.types.Object) -> tuple
     return corners.mean(axis=1), flux[triangles].mean(axis=1), 0.5 * twice, normals
 
 
-def spread(middles: np.ndarray, areas: np.ndarray, count: int) -> tuple[np.ndarray, float]:
+def spread(middles: np.ndarray, areas: np.ndarray, normals: np.ndarray, count: int) -> tuple[np.ndarray, float]:
     """About ``count`` of the places (T, 3), evenly over the areas (T,), and how far they are apart.
 
-    One in each cube of a grid that the surface passes, the nearest to the cube's middle; the cubes are made larger or
-    smaller a few times, as it is not known beforehand how many the surface passes.
+    One in each cube of a grid for each of the six ways that surfaces of ``normals`` (T, 3) look there, as both sides of
+    a fin and a cut between them do: the nearest to the cube's middle. The cubes are made larger or smaller a few times,
+    as it is not known beforehand how many the surface passes.
     """
     apart = float(np.sqrt(areas.sum() / count))
     places, chosen = middles[areas > 0], np.flatnonzero(areas > 0)
     lowest = places.min(axis=0)
+    axis = np.abs(normals[chosen]).argmax(axis=1)
+    way = 2 * axis + (np.take_along_axis(normals[chosen], axis[:, None], axis=1)[:, 0] > 0)
     for _ in range(4):
         cubes = np.floor((places - lowest) / apart + 0.5)
         off = np.linalg.norm((places - lowest) / apart - cubes, axis=1)
-        numbers = cubes.astype(np.int64) @ (np.array((1, 2**20, 2**40), np.int64))
+        numbers = 6 * (cubes.astype(np.int64) @ np.array((1, 2**20, 2**40), np.int64)) + way
         order = np.lexsort((off, numbers))
         first = np.concatenate([[True], np.diff(numbers[order]) != 0])
         found = order[first]

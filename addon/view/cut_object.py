@@ -5,6 +5,7 @@ from __future__ import annotations
 import bpy
 import numpy as np
 
+from .lines import CREASE
 from .material import SHOWN
 from .result_object import (
     CUT,
@@ -43,6 +44,7 @@ def show(
     for name in (TEMPERATURE, SHOWN):
         write_kelvin(mesh, name, temperature)
     write_vectors(mesh, FLUX, flux)
+    mesh.set_sharp_from_angle(angle=CREASE)
     return cut
 
 

@@ -8,6 +8,7 @@ import pytest
 bpy = pytest.importorskip("bpy")
 
 from fluxface.addon import cutting, view  # noqa: E402
+from fluxface.addon.view.arrows import spread  # noqa: E402
 from fluxface.addon.view.over_result import over_result  # noqa: E402
 from fluxface.addon.view.result_object import local_surface, places_and_triangles, temperatures  # noqa: E402
 from fluxface.addon.view.settings import levels_of  # noqa: E402
@@ -141,3 +142,13 @@ def local_arrows(scene, part: bpy.types.Object) -> np.ndarray:
     """(A, 5, 8, 3) the rings of each arrow, in the world."""
     places, _ = places_and_triangles(view.arrows_of(part))
     return places.reshape(-1, 5, 8, 3)
+
+
+def test_arrows_stand_on_both_sides_of_a_thin_wall() -> None:
+    across = np.stack(np.meshgrid(*[np.linspace(0.0, 1.0, 40)] * 2), axis=-1).reshape(-1, 2)
+    middles = np.concatenate([np.column_stack([across, np.full(len(across), z)]) for z in (0.02, 0.03)])
+    normals = np.repeat([(0.0, 0.0, -1.0), (0.0, 0.0, 1.0)], len(across), axis=0)
+    chosen, apart = spread(middles, np.full(len(middles), 1.0 / len(across)), normals, 50)
+    below = int((chosen < len(across)).sum())
+    assert below == len(chosen) - below and 40 <= len(chosen) <= 60
+    assert 0.1 < apart < 0.3
