@@ -9,7 +9,7 @@ from __future__ import annotations
 import json
 import secrets
 from collections.abc import Iterable
-from itertools import compress
+from itertools import compress, repeat
 from typing import Any
 
 import bmesh
@@ -169,8 +169,8 @@ def give(mesh: bpy.types.Mesh, faces: np.ndarray, uid: int | np.ndarray) -> None
     if mesh.is_editmode:
         edited = bmesh.from_edit_mesh(mesh)
         layer = edited.faces.layers.int.get(ATTRIBUTE) or edited.faces.layers.int.new(ATTRIBUTE)
-        given = np.broadcast_to(uid, int(faces.sum())).tolist()
-        for face, its in zip(compress(edited.faces, faces.tolist()), given, strict=True):
+        given = repeat(int(uid)) if np.ndim(uid) == 0 else uid.tolist()
+        for face, its in zip(compress(edited.faces, faces.tolist()), given, strict=False):
             face[layer] = its
         bmesh.update_edit_mesh(mesh, loop_triangles=False, destructive=False)
         return
